@@ -1,0 +1,40 @@
+"""A probability with all that is known about it."""
+
+from dataclasses import dataclass
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class Probability:
+    """Probability that the demand of one demand interval lies beyond a level.
+
+    Parameters
+    ----------
+    value : float
+        Predictive probability, the figure that criteria use. [-]
+    lower, upper : float
+        Arithmetic bracket: the probability of the model lies between them whatever the lattice rounded;
+        equal to ``value`` where the lattice holds every reading exactly. [-]
+    low, high : float or None
+        Interval for the long-run probability by resampling weeks; None where none was asked for. [-]
+    floor : float
+        Smallest probability that the record supports; below it the report prints "< floor". [-]
+    method : str
+        How it was computed, in words.
+    """
+
+    value: float
+    lower: float
+    upper: float
+    low: float | None = None
+    high: float | None = None
+    floor: float = 0.0
+    method: str = "exact convolution with common component"
+
+    def __post_init__(self) -> None:
+        if not 0.0 <= self.lower <= self.value <= self.upper <= 1.0 + 1e-12:
+            raise ValueError(f"need 0 <= lower <= value <= upper <= 1, got {self.lower}, {self.value}, {self.upper}")
+
+    @property
+    def supported(self) -> bool:
+        """Whether the record supports a figure this small."""
+        return self.value >= self.floor

@@ -1,0 +1,34 @@
+"""Which parts of the demand model are on, and how they are set."""
+
+from dataclasses import dataclass
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class ModelSettings:
+    """Settings of the demand model, each a switch or a number that hold-out may choose.
+
+    Parameters
+    ----------
+    temperature, common_component, shrinkage, mean_uncertainty : bool
+        Parts of the model that are on.
+    borrowed_days : float
+        Weight of the customer class in each customer's distribution. [d]
+    neighbour_hours : int
+        Intervals on each side over which variances of the common component are smoothed. [-]
+    lattice_kw : float
+        Step of the lattice; 0 takes it from the meters' resolution. [kW]
+    correlation : float or None
+        Mean correlation between customers where they were never metered together; None takes the class's.
+    resamples : int
+        Resamples of whole weeks behind each interval; 0 makes no interval. [-]
+    """
+
+    temperature: bool = True
+    common_component: bool = True
+    shrinkage: bool = True
+    mean_uncertainty: bool = True
+    borrowed_days: float = 7.0
+    neighbour_hours: int = 1
+    lattice_kw: float = 0.0
+    correlation: float | None = None
+    resamples: int = 0
