@@ -98,6 +98,10 @@ class HourDemand:
         """Probability above a level by the normal law with the model's mean and variance; for comparison only. [-]"""
         return float(norm.sf(level_kw, self.mean_kw(), np.sqrt(self.variance_kw2())))
 
+    def normal_independent_exceedance(self, level_kw: float) -> float:
+        """Probability above a level by the normal law of independent customers; for comparison only. [-]"""
+        return float(norm.sf(level_kw, self.independent.mean_kw(), np.sqrt(self.independent.central_moment(2))))
+
 
 @dataclass(frozen=True, slots=True, kw_only=True, eq=False)
 class GroupDemand:

@@ -1,0 +1,98 @@
+"""The command: arguments in, exit status out."""
+
+import argparse
+import logging
+import sys
+from collections.abc import Sequence
+from pathlib import Path
+
+from loadsum import __version__
+from loadsum.errors import LoadsumError
+from loadsum.progress import TerminalLine, silent
+
+EPILOG = """\
+exit status:
+  0  done
+  1  the machine is at fault: a library is missing, the disk is full
+  2  the input is at fault; every fault is named with its place and what to do
+
+A first study:
+  loadsum draft meters/                  look at a folder of meter files and write a study file to fill in
+  loadsum inspect study.toml             read the files and list every doubt about the readings
+  loadsum study study.toml --out out/    make the study: out/report.pdf, out/results.json, out/hours.csv, out/figures/
+
+Results are a draft until a licensed engineer has reviewed and signed them where the law requires it.
+"""
+
+
+def parser() -> argparse.ArgumentParser:
+    """The arguments of every command."""
+    top = argparse.ArgumentParser(
+        prog="loadsum",
+        description="From metered load profiles to the probability and the expected hours above each transformer rating.",
+        epilog=EPILOG,
+        formatter_class=argparse.RawDescriptionHelpFormatter,
+    )
+    top.add_argument("--version", action="version", version=f"loadsum {__version__}")
+    commands = top.add_subparsers(dest="command", required=True, metavar="COMMAND")
+
+    def command(name: str, help_text: str) -> argparse.ArgumentParser:
+        sub = commands.add_parser(name, help=help_text, description=help_text)
+        how_much = sub.add_mutually_exclusive_group()
+        how_much.add_argument("--quiet", action="store_true", help="say nothing but faults")
+        how_much.add_argument("--verbose", action="store_true", help="say when each stage begins and ends")
+        return sub
+
+    study = command("study", "make a study: PDF report, results, hourly table and figures")
+    study.add_argument("file", type=Path, metavar="FILE", help="study file (TOML)")
+    study.add_argument("--out", type=Path, required=True, metavar="DIR", help="folder for the results")
+
+    inspect = command("inspect", "read the meter files and list every finding, without running the study")
+    inspect.add_argument("file", type=Path, metavar="FILE", help="study file (TOML)")
+    inspect.add_argument("--out", type=Path, metavar="DIR", help="folder for findings.csv")
+    return top
+
+
+def main(argv: Sequence[str] | None = None) -> int:
+    """Run one command and return its exit status.
+
+    Parameters
+    ----------
+    argv : sequence of str or None
+        Arguments without the program's name; those of the process when None.
+
+    Returns
+    -------
+    int
+        0 done, 1 the machine is at fault, 2 the input is at fault.
+    """
+    args = parser().parse_args(argv)
+    logging.basicConfig(
+        level=logging.INFO if args.verbose else logging.ERROR if args.quiet else logging.WARNING,
+        format="loadsum: %(message)s",
+        stream=sys.stderr,
+        force=True,
+    )
+    line = TerminalLine()
+    progress = silent if args.quiet else line
+    try:
+        # The pipeline is imported here so that --help answers at once.
+        from loadsum import pipeline
+
+        if args.command == "inspect":
+            text = pipeline.inspect(args.file, out=args.out, progress=progress)
+        else:
+            text = pipeline.study(args.file, out=args.out, progress=progress)
+    except LoadsumError as error:
+        line.clear()
+        print(f"loadsum: {error}", file=sys.stderr)
+        return error.exit_status
+    line.clear()
+    if not args.quiet:
+        print(text)
+    return 0
+
+
+def entry() -> None:
+    """Entry point of the installed command."""
+    sys.exit(main())
