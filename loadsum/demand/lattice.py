@@ -1,12 +1,19 @@
 """Probability mass on an equally spaced grid, with floor and ceiling roundings that bracket the truth."""
 
+from collections.abc import Callable, Sequence
 from dataclasses import dataclass
 from typing import Literal
 
 import numpy as np
 from numpy.typing import NDArray
+from scipy.special import ndtr
 
+Rounding = Literal["down", "up", "exact"]
+
+CUT = 1e-25  # probability at which the tail of a continuous term is cut, on the outward side
 ALIGNED = 1e-6  # a reading this close to a lattice point, in steps, lies on it (float noise of the file's decimals)
+
+NORMAL_REACH = 10.5  # standard deviations beyond which a normal law has less than CUT
 
 
 @dataclass(frozen=True, slots=True, kw_only=True, eq=False)
@@ -21,11 +28,16 @@ class LatticeMass:
         Index of the first point; negative where demand can be negative. [-]
     mass : (n,) float64
         Probability at each point. [-]
+    beyond_below, beyond_above : float
+        Probability cut off a tail on the outward side and counted as minus or plus infinity: it is in no point, and
+        counts below, or above, every level. Zero but for continuous terms, and there at most `CUT`. [-]
     """
 
     step_kw: float
     offset: int
     mass: NDArray[np.float64]
+    beyond_below: float = 0.0
+    beyond_above: float = 0.0
 
     def __post_init__(self) -> None:
         if self.step_kw <= 0.0 or self.mass.ndim != 1 or self.mass.size == 0:
@@ -49,17 +61,52 @@ class LatticeMass:
         """Probability of demand strictly above a level, summed from the top. [-]"""
         first = int(np.floor(level_kw / self.step_kw + ALIGNED)) + 1 - self.offset
         if first >= self.mass.size:
-            return 0.0
-        return float(self.mass[max(first, 0) :][::-1].sum())
+            return self.beyond_above
+        return float(self.mass[max(first, 0) :][::-1].sum()) + self.beyond_above
 
     def below(self, level_kw: float) -> float:
         """Probability of demand strictly below a level, summed from the bottom. [-]"""
         last = int(np.ceil(level_kw / self.step_kw - ALIGNED)) - self.offset
-        return float(self.mass[: max(last, 0)].sum())
+        return float(self.mass[: max(last, 0)].sum()) + self.beyond_below
+
+    def shifted(self, shift_kw: float, rounding: Rounding) -> "LatticeMass":
+        """The demand with a constant added, the constant rounded to the lattice. [kW]"""
+        (steps,) = lattice_index(np.array([shift_kw]), self.step_kw, rounding)
+        return LatticeMass(
+            step_kw=self.step_kw,
+            offset=self.offset + int(steps),
+            mass=self.mass,
+            beyond_below=self.beyond_below,
+            beyond_above=self.beyond_above,
+        )
+
+    def scaled(self, factor: float, rounding: Rounding) -> "LatticeMass":
+        """The demand times a factor that is not negative, each point rounded to the lattice. [-]"""
+        if factor < 0.0:
+            raise ValueError(f"factor must not be negative, got {factor}")
+        index = lattice_index(self.points_kw * factor, self.step_kw, rounding)
+        return _gathered(index, self.mass, self.step_kw, self.beyond_below, self.beyond_above)
+
+
+def lattice_index(kw: NDArray[np.float64], step_kw: float, rounding: Rounding) -> NDArray[np.int64]:
+    """Index of the lattice point of each demand, rounded in one direction, (n,) int64.
+
+    Raises
+    ------
+    ValueError
+        A demand lies off the lattice and the rounding is "exact".
+    """
+    steps = kw / step_kw
+    near = np.rint(steps)
+    off = np.abs(steps - near) > ALIGNED
+    if rounding == "exact" and np.any(off):
+        raise ValueError(f"{int(off.sum())} demands lie off the lattice of {step_kw} kW, first {kw[off][0]} kW")
+    rounded = np.ceil(steps) if rounding == "up" else np.floor(steps)
+    return np.where(off, rounded, near).astype(np.int64)
 
 
 def lattice_mass(
-    kw: NDArray[np.float64], step_kw: float, rounding: Literal["down", "up"], weights: NDArray[np.float64] | None = None
+    kw: NDArray[np.float64], step_kw: float, rounding: Rounding, weights: NDArray[np.float64] | None = None
 ) -> LatticeMass:
     """Empirical distribution of readings, each rounded to the lattice in one direction.
 
@@ -69,18 +116,136 @@ def lattice_mass(
         Readings, finite. [kW]
     step_kw : float
         Step of the lattice. [kW]
-    rounding : {"down", "up"}
+    rounding : {"down", "up", "exact"}
         Sums of demands rounded down lie at or below the truth, sums rounded up at or above it.
     weights : (n,) float64 or None
-        Weight of each reading; equal when None. [-]
+        Weight of each reading, not negative; equal when None. [-]
     """
     if kw.size == 0 or not np.all(np.isfinite(kw)):
         raise ValueError(f"need finite readings, got {kw.size} of which {int(np.isfinite(kw).sum())} finite")
-    steps = kw / step_kw
-    near = np.rint(steps)
-    rounded = np.floor(steps) if rounding == "down" else np.ceil(steps)
-    index = np.where(np.abs(steps - near) <= ALIGNED, near, rounded).astype(np.int64)
+    index = lattice_index(kw, step_kw, rounding)
+    if weights is None:
+        low = int(index.min())
+        return LatticeMass(step_kw=step_kw, offset=low, mass=np.bincount(index - low).astype(np.float64) / kw.size)
+    if weights.shape != kw.shape or weights.min() < 0.0 or not weights.sum() > 0.0:
+        raise ValueError(f"need a weight of at least 0 for each of {kw.size} readings, got {weights.shape}")
+    return _gathered(index, weights / weights.sum(), step_kw, 0.0, 0.0)
+
+
+def continuous_mass(
+    cdf: Callable[[NDArray[np.float64]], NDArray[np.float64]],
+    survival: Callable[[NDArray[np.float64]], NDArray[np.float64]],
+    low_kw: float,
+    high_kw: float,
+    step_kw: float,
+    rounding: Literal["down", "up"],
+) -> LatticeMass:
+    """A continuous demand rounded to the lattice in one direction, its tails cut on the outward side.
+
+    Rounded down, the demand of each cell goes to the cell's lower end, what lies above ``high_kw`` to that end
+    and what lies below ``low_kw`` to minus infinity; rounded up, the other way round. Either way the rounded demand is
+    ordered against the true one at every level, tails included.
+
+    Parameters
+    ----------
+    cdf, survival : callable
+        Probability at or below, and above, each demand; each accurate in its own tail. [kW -> -]
+    low_kw, high_kw : float
+        Range that is kept; beyond it lies no more than `CUT` as a rule. [kW]
+    step_kw : float
+        Step of the lattice. [kW]
+    rounding : {"down", "up"}
+        Direction of rounding.
+    """
+    first, last = int(np.floor(low_kw / step_kw)), int(np.ceil(high_kw / step_kw))
+    edges: NDArray[np.float64] = np.arange(first, last + 1, dtype=np.float64) * step_kw
+    below, above = cdf(edges), survival(edges)
+    middle = int(np.searchsorted(below, 0.5))
+    mass = np.where(np.arange(edges.size - 1) < middle, np.diff(below), -np.diff(above))
+    if rounding == "down":
+        mass = np.append(mass, above[-1])
+        return LatticeMass(step_kw=step_kw, offset=first, mass=mass, beyond_below=float(below[0]))
+    mass = np.insert(mass, 0, below[0])
+    return LatticeMass(step_kw=step_kw, offset=first, mass=mass, beyond_above=float(above[-1]))
+
+
+def normal_mass(mean_kw: float, spread_kw: float, step_kw: float, rounding: Literal["down", "up"]) -> LatticeMass:
+    """A normal term rounded to the lattice in one direction.
+
+    Parameters
+    ----------
+    mean_kw, spread_kw : float
+        Mean and standard deviation; a standard deviation of 0 makes a constant. [kW]
+    step_kw : float
+        Step of the lattice. [kW]
+    rounding : {"down", "up"}
+        Direction of rounding.
+    """
+    return kernel_mass(np.array([mean_kw]), np.ones(1), spread_kw, step_kw, rounding)
+
+
+def kernel_mass(
+    centres_kw: NDArray[np.float64],
+    weights: NDArray[np.float64],
+    bandwidth_kw: float,
+    step_kw: float,
+    rounding: Literal["down", "up"],
+) -> LatticeMass:
+    """A mixture of normal laws of one width (a kernel-smoothed shape) rounded to the lattice in one direction.
+
+    Parameters
+    ----------
+    centres_kw, weights : (n,) float64
+        Centres and their weights. [kW, -]
+    bandwidth_kw : float
+        Standard deviation of each part; 0 leaves the centres as they are. [kW]
+    step_kw : float
+        Step of the lattice. [kW]
+    rounding : {"down", "up"}
+        Direction of rounding.
+    """
+    if bandwidth_kw == 0.0:
+        return lattice_mass(centres_kw, step_kw, rounding, weights)
+    share = weights / weights.sum()
+    reach = NORMAL_REACH * bandwidth_kw
+
+    def cdf(kw: NDArray[np.float64]) -> NDArray[np.float64]:
+        return np.asarray(ndtr((kw[:, None] - centres_kw) / bandwidth_kw) @ share, dtype=np.float64)
+
+    def survival(kw: NDArray[np.float64]) -> NDArray[np.float64]:
+        return np.asarray(ndtr((centres_kw - kw[:, None]) / bandwidth_kw) @ share, dtype=np.float64)
+
+    low, high = float(centres_kw.min()) - reach, float(centres_kw.max()) + reach
+    return continuous_mass(cdf, survival, low, high, step_kw, rounding)
+
+
+def mixture(parts: Sequence[LatticeMass], weights: Sequence[float]) -> LatticeMass:
+    """Mixture of demands on one lattice: each part with its weight.
+
+    Parameters
+    ----------
+    parts : sequence of LatticeMass
+        Parts, on one lattice step.
+    weights : sequence of float
+        Weight of each part, not negative; scaled to sum to one. [-]
+    """
+    if len({part.step_kw for part in parts}) != 1 or min(weights) < 0.0 or not sum(weights) > 0.0:
+        raise ValueError(f"need parts on one step and weights of at least 0, got {len(parts)} parts, {list(weights)}")
+    low = min(part.offset for part in parts)
+    high = max(part.offset + part.mass.size for part in parts)
+    mass, total = np.zeros(high - low), float(sum(weights))
+    below = above = 0.0
+    for part, weight in zip(parts, weights, strict=True):
+        start = part.offset - low
+        mass[start : start + part.mass.size] += part.mass * (weight / total)
+        below += part.beyond_below * weight / total
+        above += part.beyond_above * weight / total
+    return LatticeMass(step_kw=parts[0].step_kw, offset=low, mass=mass, beyond_below=below, beyond_above=above)
+
+
+def _gathered(
+    index: NDArray[np.int64], share: NDArray[np.float64], step_kw: float, below: float, above: float
+) -> LatticeMass:
     low = int(index.min())
-    share = np.full(kw.size, 1.0 / kw.size) if weights is None else weights / weights.sum()
     mass = np.bincount(index - low, weights=share).astype(np.float64)
-    return LatticeMass(step_kw=step_kw, offset=low, mass=mass)
+    return LatticeMass(step_kw=step_kw, offset=low, mass=mass, beyond_below=below, beyond_above=above)
