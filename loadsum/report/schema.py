@@ -1,0 +1,73 @@
+"""JSON schema of results.json, made from the result types themselves."""
+
+import collections.abc
+import dataclasses
+import types
+import typing
+from enum import Enum
+from typing import Any
+
+import numpy as np
+
+from loadsum.report.results import SCHEMA_VERSION, StudyResults
+
+
+def results_schema() -> dict[str, Any]:
+    """JSON schema (2020-12) that every results.json of this version satisfies."""
+    definitions: dict[str, Any] = {}
+    body = _schema_of(StudyResults, definitions)
+    return {
+        "$schema": "https://json-schema.org/draft/2020-12/schema",
+        "title": f"loadsum results, version {SCHEMA_VERSION}",
+        **body,
+        "$defs": dict(sorted(definitions.items())),
+    }
+
+
+def _schema_of(kind: Any, definitions: dict[str, Any]) -> dict[str, Any]:
+    """Schema of one type; dataclasses are collected under their names."""
+    if isinstance(kind, typing.TypeAliasType) if hasattr(typing, "TypeAliasType") else False:
+        kind = kind.__value__
+    origin, arguments = typing.get_origin(kind), typing.get_args(kind)
+    if kind is Any:
+        return {}
+    if dataclasses.is_dataclass(kind) and isinstance(kind, type):
+        return _object_of(kind, definitions)
+    if origin is np.ndarray:
+        return {"type": "array"}
+    if origin in (tuple, list, frozenset, set, collections.abc.Sequence):
+        return {"type": "array", "items": _schema_of(arguments[0], definitions) if arguments else {}}
+    if origin in (dict, collections.abc.Mapping):
+        return {"type": "object", "additionalProperties": _schema_of(arguments[1], definitions)}
+    if origin is typing.Literal:
+        return {"enum": list(arguments)}
+    if origin in (types.UnionType, typing.Union):
+        return {"anyOf": [_schema_of(part, definitions) for part in arguments]}
+    if isinstance(kind, type) and issubclass(kind, Enum):
+        return {"enum": [member.value for member in kind]}
+    plain = {
+        bool: {"type": "boolean"},
+        int: {"type": "integer"},
+        float: {"type": ["number", "null"]},
+        str: {"type": "string"},
+        types.NoneType: {"type": "null"},
+    }
+    if kind in plain:
+        return dict(plain[kind])
+    raise TypeError(f"results.json cannot describe {kind!r}")
+
+
+def _object_of(kind: type, definitions: dict[str, Any]) -> dict[str, Any]:
+    name = kind.__name__
+    if name not in definitions:
+        definitions[name] = {}  # stands while its own fields are walked
+        hints = typing.get_type_hints(kind)
+        names = [field.name for field in dataclasses.fields(kind)]
+        definitions[name] = {
+            "type": "object",
+            "description": (kind.__doc__ or "").strip().split("\n")[0],
+            "properties": {field: _schema_of(hints[field], definitions) for field in names},
+            "required": names,
+            "additionalProperties": False,
+        }
+    return {"$ref": f"#/$defs/{name}"}
