@@ -1,0 +1,172 @@
+"""The report: results in, PDF out; nothing is computed here."""
+
+import re
+from collections.abc import Mapping, Sequence
+from pathlib import Path
+from typing import Any
+
+from loadsum.errors import InputError
+from loadsum.report import figures
+from loadsum.report.archive import Attachment, fixed_time, manifest
+from loadsum.report.cleantext import CleanResults, clean
+from loadsum.report.material import Material, Section
+from loadsum.report.notation import NO_BREAK, Notation
+from loadsum.report.sections import first_page, sections
+from loadsum.report.standards import meet_both_standards
+from loadsum.report.templates import Catalogue, catalogue, environment, logo, marked_up, templates_digest
+from loadsum.report.typeface import FALLBACK_FAMILY, TEXT_FAMILY
+from loadsum.report.typesetting import typeset
+
+PAPERS = {"A4": "210mm 297mm", "letter": "215.9mm 279.4mm"}
+LONGEST_RUNNING_TITLE = 72
+
+
+def render(
+    results: Mapping[str, Any], *, attachments: Sequence[Attachment] = (), overrides: Path | None = None
+) -> bytes:
+    """The report as a PDF that is an archive file (PDF/A-3a) and accessible (PDF/UA-1) at once.
+
+    Parameters
+    ----------
+    results : mapping
+        Results as read from results.json.
+    attachments : sequence of Attachment
+        Files to put into the PDF; a manifest with their digests is added.
+    overrides : Path or None
+        Folder with the utility's own templates, texts and logo.
+
+    Raises
+    ------
+    InputError
+        A character cannot be printed, or a template or text of the utility is at fault.
+    MachineError
+        The text-layout libraries are missing.
+    """
+    html, assets, listed = compose(results, attachments=attachments, overrides=overrides)
+    return typeset(
+        html,
+        assets=assets,
+        attachments=listed,
+        finisher=meet_both_standards,
+        iso_date=str((results.get("study") or {}).get("date") or ""),
+    )
+
+
+def material(results: Mapping[str, Any], overrides: Path | None = None) -> tuple[Material, CleanResults]:
+    """Cleaned results with the words and notation of their language and region.
+
+    Raises
+    ------
+    InputError
+        A character of the results is in no font of the report.
+    """
+    cleaned = clean(results)
+    if cleaned.faults:
+        raise InputError("results", cleaned.faults[:50])
+    study = cleaned.results.get("study") or {}
+    t = catalogue(study.get("language") or "en", overrides)
+    return Material(results=cleaned.results, t=t, n=notation(t, study.get("region") or "")), cleaned
+
+
+def notation(t: Catalogue, region: str) -> Notation:
+    """Numbers and dates as a region prints them."""
+    forms = t.entry("notation")
+    return Notation.from_catalogue(forms.get(region) or forms["international"], forms["months"], forms["none"])
+
+
+def compose(
+    results: Mapping[str, Any], *, attachments: Sequence[Attachment], overrides: Path | None
+) -> tuple[str, dict[str, tuple[str, bytes]], list[Attachment]]:
+    """HTML of the report, the pieces it refers to, and everything to attach."""
+    m, cleaned = material(results, overrides)
+    listed = [*attachments, manifest(results, attachments, templates_digest(overrides))]
+    drawn = figures.drawn(m)
+    assets = {f"{name}.svg": ("image/svg+xml", figures.svg(figure.figure)) for name, figure in drawn.items()}
+    own_logo = logo(overrides)
+    if own_logo is not None:
+        assets["logo"] = own_logo
+    made = sections(m)
+    env = environment(overrides)
+    env.filters["css_string"] = css_string
+    env.filters["strong"] = marked_up
+    study = m.study
+    html = env.get_template("report.html.j2").render(
+        t=m.t,
+        n=m.n,
+        results=m.results,
+        study={"title": "", "reference": "", "place": "", **study},
+        title=study.get("title") or m.t("document_kind"),
+        authors=", ".join(str(p["name"]) for p in m.rows("people") if p.get("name")),
+        program=_program(m),
+        created=fixed_time(str(study.get("date") or "")).strftime("%Y-%m-%dT%H:%M:%SZ"),
+        paper=PAPERS.get(study.get("page") or "A4", PAPERS["A4"]),
+        families=f'"{TEXT_FAMILY}", "{FALLBACK_FAMILY}"',
+        first=first_page.content(m),
+        sections=made,
+        figures=drawn,
+        numbers=Numbers(made),
+        terms=_terms(m),
+        attached=sorted(a.name for a in listed),
+        changes=[m.t(f"changed.{c.what}", where=c.where[:120], count=c.count) for c in cleaned.changes],
+        logo=own_logo is not None,
+        **_running(m),
+    )
+    return html, assets, listed
+
+
+class Numbers:
+    """Numbers of figures and tables, in the order they are printed."""
+
+    def __init__(self, made: Sequence[Section]) -> None:
+        self._figures: dict[str, int] = {}
+        self._tables = 0
+
+    def figure(self, name: str) -> int:
+        """Number of a figure; the same each time it is asked."""
+        return self._figures.setdefault(name, len(self._figures) + 1)
+
+    def table(self) -> int:
+        """Number of the next table."""
+        self._tables += 1
+        return self._tables
+
+
+def css_string(text: str) -> Any:
+    """A text as a CSS string in which every sign that could end it is a numeric escape."""
+    from markupsafe import Markup
+
+    return Markup('"' + re.sub(r"[^ A-Za-z0-9.,:-]", lambda c: f"\\{ord(c[0]):06x}", str(text)) + '"')
+
+
+def _program(m: Material) -> str:
+    program = m.part("program") or {}
+    return f"{program.get('name', 'loadsum')} {program.get('version', '')}".strip()
+
+
+def _terms(m: Material) -> list[tuple[str, str]]:
+    interval = f"{m.interval_min}{NO_BREAK}min"
+    return [(term, meaning.replace("{interval}", interval)) for term, meaning in m.t.entry("contents.terms")]
+
+
+def _running(m: Material) -> dict[str, Any]:
+    """Running title, reference, status and the words around the page number."""
+    study = m.study
+    title = study.get("title") or m.t("document_kind")
+    if len(title) > LONGEST_RUNNING_TITLE:
+        title = title[: LONGEST_RUNNING_TITLE - 1] + "…"
+    reference = " · ".join(
+        str(part)[:30]
+        for part in (
+            study.get("reference"),
+            f"{m.t('fact.revision')} {study['revision']}" if study.get("revision") else "",
+        )
+        if part
+    )
+    before, middle, after = re.split(r"\{pages?\}", m.t.entry("word.page"))
+    status = m.t(f"status.{study.get('status') or 'draft'}.word")
+    return {
+        "running_title": title,
+        "running_reference": reference,
+        "running_status": f"{_program(m)} · {status}",
+        "page_words": (before, middle, after),
+    }

@@ -1,0 +1,239 @@
+"""An invented study in the form of results.json, for tests of layout and wording; no figure in it means anything."""
+
+import math
+from typing import Any
+
+import numpy as np
+from scipy.stats import gamma, norm
+
+SEASONS = {"winter": 90.25, "spring": 92.0, "summer": 92.0, "autumn": 91.0}
+RATINGS_KVA = (15.0, 25.0, 37.5, 50.0)
+POWER_FACTOR = 0.95
+
+
+def _mean_kw(season: str, day_type: str, hour: int) -> float:
+    level = {"winter": 14.0, "spring": 9.0, "summer": 7.5, "autumn": 10.0}[season]
+    evening = math.exp(-((hour - 19.0) ** 2) / 6.0)
+    morning = math.exp(-((hour - (7.5 if day_type == "workday" else 10.0)) ** 2) / 4.0)
+    return level * (0.45 + 0.85 * evening + 0.45 * morning)
+
+
+def hours() -> list[dict[str, Any]]:
+    """Every hour of four seasons and two day types."""
+    rows = []
+    for season, days in SEASONS.items():
+        for day_type, share in (("workday", 5 / 7), ("weekend or holiday", 2 / 7)):
+            for hour in range(24):
+                mean = _mean_kw(season, day_type, hour)
+                sd = 0.22 * mean + 0.6
+                a, scale = (mean / sd) ** 2, sd * sd / mean
+                n_days = round(days * share)
+                rows.append(
+                    {
+                        "season": season,
+                        "day_type": day_type,
+                        "interval": hour,
+                        "starts": f"{hour:02d}:00",
+                        "hours_per_year": days * share,
+                        "n_days": n_days,
+                        "mean_kw": mean,
+                        "sd_kw": sd,
+                        "skewness": 2 / math.sqrt(a),
+                        **{
+                            name: float(gamma.isf(p, a, scale=scale))
+                            for name, p in (("q50_kw", 0.5), ("q90_kw", 0.1), ("q99_kw", 0.01), ("q999_kw", 0.001))
+                        },
+                        "floor": 1 / (n_days + 1),
+                        "above": [float(gamma.sf(r * POWER_FACTOR, a, scale=scale)) for r in RATINGS_KVA],
+                    }
+                )
+    return rows
+
+
+def curve(rows: list[dict[str, Any]]) -> dict[str, Any]:
+    """Year-averaged exceedance by the gamma law of each hour, and by normal laws beside it."""
+    levels = np.linspace(5.0, 55.0, 120)
+    weight = np.array([r["hours_per_year"] for r in rows])
+    mean, sd = (np.array([r[k] for r in rows]) for k in ("mean_kw", "sd_kw"))
+    a, scale = (mean / sd) ** 2, sd**2 / mean
+    share = weight / weight.sum()
+    adopted = gamma.sf(levels[:, None], a, scale=scale) @ share
+    normal = norm.sf(levels[:, None], mean, sd) @ share
+    independent = gamma.sf(levels[:, None], (mean / (0.7 * sd)) ** 2, scale=(0.7 * sd) ** 2 / mean) @ share
+    return {
+        "levels_kw": levels.tolist(),
+        "adopted": adopted.tolist(),
+        "lower": (0.97 * adopted).tolist(),
+        "upper": (1.03 * adopted).clip(max=1.0).tolist(),
+        "normal": normal.tolist(),
+        "normal_independent": (norm.sf(levels[:, None], mean, 0.7 * sd) @ share).tolist(),
+        "independent": independent.tolist(),
+        "observed": np.where(adopted > 2e-4, adopted * 1.04, 0.0).clip(max=1.0).tolist(),
+        "floor": 1e-4,
+    }
+
+
+def results() -> dict[str, Any]:
+    """A whole study of nine homes."""
+    rows = hours()
+    above = [sum(r["hours_per_year"] * r["above"][i] for r in rows) for i in range(4)]
+    highest = [max(r["above"][i] for r in rows) for i in range(4)]
+    exceedance = [
+        {
+            "rating_kva": rating,
+            "of": "allowed loading, normal",
+            "level_kva": rating,
+            "hours_per_year": above[i],
+            "hours_low": 0.6 * above[i],
+            "hours_high": 1.7 * above[i],
+            "highest_probability": highest[i],
+            "highest_low": 0.5 * highest[i],
+            "highest_high": min(1.9 * highest[i], 1.0),
+            "floor": 1 / 66,
+            "highest_at": {"season": "winter", "day_type": "workday", "interval": 19, "starts": "19:00"},
+            "normal_factor": [0.93, 0.61, 0.08, 0.0004][i],
+        }
+        for i, rating in enumerate(RATINGS_KVA)
+    ]
+    return {
+        "schema_version": 1,
+        "program": {
+            "name": "loadsum",
+            "version": "0.1.0",
+            "dependencies": {"numpy": "2.4.6", "scipy": "1.17.1", "weasyprint": "70.0", "matplotlib": "3.11.2"},
+        },
+        "study": {
+            "title": "Pole transformer at Mill Lane",
+            "reference": "DP-0117",
+            "revision": "A",
+            "status": "for review",
+            "date": "2031-05-04",
+            "question": "Which rating should replace the 25 kVA unit that serves nine homes at Mill Lane?",
+            "place": "Mill Lane, Exampleton",
+            "region": "international",
+            "time_zone": "Europe/Oslo",
+            "demand_interval_min": 60,
+            "page": "A4",
+            "temperature_unit": "C",
+            "language": "en",
+        },
+        "people": [
+            {"role": "prepared", "name": "A. Planner", "registration": ""},
+            {"role": "checked", "name": "B. Checker", "registration": ""},
+            {"role": "responsible engineer", "name": "C. Engineer", "registration": "PE 00000"},
+        ],
+        "inputs": [
+            {
+                "name": name,
+                "sha256": f"{index:064x}",
+                "bytes": 123456 + index,
+                "format": "delimited text, one row a reading",
+                "choices": ["stamps taken as interval start", "clock: local, with daylight saving"],
+            }
+            for index, name in enumerate(("study.toml", "meters.csv", "weather.csv"), start=10)
+        ],
+        "coverage": {
+            "first_day": "2030-01-01",
+            "last_day": "2030-12-31",
+            "days": 363,
+            "hours_in_year": 8766.0,
+            "covered_hours": 8766.0,
+            "uncovered": [],
+            "whole_year": True,
+        },
+        "customers": [
+            {
+                "id": f"C-{n:02d}",
+                "customer_class": "home, electric heating" if n % 3 else "home",
+                "role": "existing",
+                "readings": 8700 - 11 * n,
+                "days": 363 - n // 2,
+                "mean_kw": 0.8 + 0.13 * n,
+                "max_kw": 5.1 + 0.4 * n,
+                "annual_kwh": 8766 * (0.8 + 0.13 * n),
+            }
+            for n in range(1, 10)
+        ],
+        "findings": [
+            {
+                "rule": "gap",
+                "severity": "caution",
+                "customer": "C-04",
+                "place": "2030-03-12 02:00",
+                "count": 26,
+                "excluded": 0,
+                "message": "26 readings are missing, the longest run 14 intervals",
+                "effect": "the hours concerned rest on one day less",
+            },
+            {
+                "rule": "stuck run",
+                "severity": "excluded",
+                "customer": "C-07",
+                "place": "meters.csv:41210",
+                "count": 31,
+                "excluded": 31,
+                "message": "31 equal readings in a row at 1.24 kW",
+                "effect": "not used",
+            },
+        ],
+        "hours": rows,
+        "transformers": [
+            {
+                "id": "T-204",
+                "installed_kva": 25.0,
+                "phases": 1,
+                "power_factor": POWER_FACTOR,
+                "exceedance": exceedance,
+                "curve": curve(rows),
+                "selection": {
+                    "verdict": "chosen",
+                    "rating_kva": 37.5,
+                    "criteria": [
+                        {
+                            "quantity": "exceedance hours per year",
+                            "of": "allowed loading, normal",
+                            "limit": 10.0,
+                            "statistic": "predictive value",
+                            "source": "invented loading standard, clause 4.2",
+                            "by_rating": [
+                                {
+                                    "rating_kva": rating,
+                                    "value": above[i],
+                                    "limit": 10.0,
+                                    "margin": 10.0 - above[i],
+                                    "meets": above[i] <= 10.0,
+                                    "governs": True,
+                                }
+                                for i, rating in enumerate(RATINGS_KVA)
+                            ],
+                        }
+                    ],
+                },
+            }
+        ],
+        "assumptions": [
+            {
+                "name": "power factor of the group",
+                "value": "0.95",
+                "unit": "",
+                "source": "stated in the study file, no measurement",
+                "decided_by": "A. Planner",
+                "effect": "0.90 raises the expected hours above 37.5 kVA from 1.2 to 3.4; the verdict stands",
+            },
+            {
+                "name": "losses between meters and transformer",
+                "value": "0",
+                "unit": "%",
+                "source": "not given",
+                "decided_by": "program default",
+                "effect": "each per cent raises every level by one per cent",
+            },
+        ],
+        "references": [
+            {
+                "text": "Esscher, F. On the probability function in the collective theory of risk. 1932.",
+                "provenance": "memory",
+            }
+        ],
+        "seed": 1,
+    }

@@ -1,0 +1,59 @@
+import copy
+import io
+from collections.abc import Sequence
+from typing import Any
+
+import pikepdf
+import pytest
+
+from loadsum.report.archive import Attachment
+from loadsum.report.document import render
+from tests.report.pdf_structure import elements, structure_faults
+
+
+def test_a_report_on_a4_meets_the_structure_of_both_standards(report: bytes) -> None:
+    assert structure_faults(report) == []
+
+
+def test_a_report_on_letter_meets_the_structure_of_both_standards(
+    results: dict[str, Any], attachments: Sequence[Attachment]
+) -> None:
+    letter = copy.deepcopy(results)
+    letter["study"]["page"] = "letter"
+    content = render(letter, attachments=attachments)
+    assert structure_faults(content) == []
+    with pikepdf.open(io.BytesIO(content)) as pdf:
+        assert [float(x) for x in pdf.pages[0].MediaBox] == pytest.approx([0, 0, 612, 792], abs=0.1)
+
+
+def test_every_attachment_comes_back_byte_for_byte(report: bytes, attachments: Sequence[Attachment]) -> None:
+    with pikepdf.open(io.BytesIO(report)) as pdf:
+        found = {name: pdf.attachments[name].get_file().read_bytes() for name in pdf.attachments}
+    manifest = found.pop("manifest.json")
+    assert found == {a.name: a.content for a in attachments}
+    for attachment in attachments:
+        assert attachment.digest().encode() in manifest
+
+
+def test_a_study_without_results_still_gives_a_report_that_says_what_is_missing() -> None:
+    content = render({"study": {"title": "Empty"}})
+    assert structure_faults(content) == []
+
+
+def test_there_is_an_empty_signature_field_for_each_person(report: bytes) -> None:
+    with pikepdf.open(io.BytesIO(report)) as pdf:
+        fields = {str(f.T): f for f in pdf.Root.AcroForm.Fields}
+        assert sorted(fields) == ["signature-checked", "signature-prepared", "signature-responsible-engineer"]
+        for field in fields.values():
+            assert str(field.FT) == "/Sig"
+            assert "/V" not in field
+
+
+def test_running_titles_are_outside_the_reading_order(report: bytes) -> None:
+    with pikepdf.open(io.BytesIO(report)) as pdf:
+        kinds = {str(e.S) for e, _ in elements(pdf) if "/S" in e}
+        owners = pdf.Root.StructTreeRoot.ParentTree.Nums
+        assert any(owner is None for owner in owners[1])
+        stream = pdf.pages[1].Contents.read_bytes()
+    assert b"/Pagination" in stream
+    assert {"/H1", "/P", "/Table", "/Figure", "/Form"} <= kinds
