@@ -11,6 +11,10 @@ from typing import Any
 import numpy as np
 from numpy.typing import NDArray
 
+from loadsum.intake.findings import Finding
+from loadsum.intake.load import InputFile
+from loadsum.study.tables import Heading, Person
+
 SCHEMA_VERSION = 1
 
 
@@ -106,6 +110,102 @@ class Curve:
     normal_independent: NDArray[np.float64]
     observed: NDArray[np.float64]
     floor: float
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class Program:
+    """What made the results, to the version."""
+
+    name: str
+    version: str
+    python: str
+    dependencies: Mapping[str, str]
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class Place:
+    """A demand interval of a class of days."""
+
+    season: str
+    day_type: str
+    interval: int
+    starts: str
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class ExceedanceRow:
+    """One rating under one of its limits, as page 1 and the table of ratings print it.
+
+    Parameters
+    ----------
+    rating_kva : float
+        Nameplate rating. [kVA]
+    of : str
+        Limit that the exceedance is of: nameplate, or allowed loading.
+    level_kva : float
+        The limit; the lowest of the seasons' where they differ. [kVA]
+    hours_per_year, hours_low, hours_high : float
+        Expected exceedance hours in the covered hours of a year, and their interval. [h]
+    highest_probability, highest_low, highest_high : float
+        Largest probability of any demand interval, and its interval. [-]
+    floor : float
+        Smallest probability that the record supports there. [-]
+    highest_at : Place or None
+        Where it is largest.
+    normal_factor : float
+        The normal law's answer over the year divided by the adopted model's. [-]
+    """
+
+    rating_kva: float
+    of: str
+    level_kva: float
+    hours_per_year: float
+    hours_low: float
+    hours_high: float
+    highest_probability: float
+    highest_low: float
+    highest_high: float
+    floor: float
+    highest_at: Place | None
+    normal_factor: float
+
+
+@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
+class TransformerResults:
+    """What was found for one transformer; a part that was not computed is null.
+
+    Parameters
+    ----------
+    id : str
+        Asset number.
+    reason : str
+        Why there are no results, where the transformer could not be studied; empty otherwise.
+    """
+
+    id: str
+    reason: str = ""
+    installed_kva: float = 0.0
+    phases: int = 1
+    power_factor: float = 1.0
+    coverage: Coverage | None = None
+    customers: tuple[CustomerRow, ...] = ()
+    hours: tuple[HourRow, ...] = ()
+    curve: Curve | None = None
+    exceedance: tuple[ExceedanceRow, ...] = ()
+
+
+@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
+class StudyResults:
+    """Everything a study found."""
+
+    schema_version: int
+    program: Program
+    study: Heading
+    people: tuple[Person, ...]
+    seed: int
+    inputs: tuple[InputFile, ...]
+    findings: tuple[Finding, ...]
+    transformers: tuple[TransformerResults, ...]
 
 
 def encode(value: Any) -> Any:

@@ -26,8 +26,6 @@ def results_schema() -> dict[str, Any]:
 
 def _schema_of(kind: Any, definitions: dict[str, Any]) -> dict[str, Any]:
     """Schema of one type; dataclasses are collected under their names."""
-    if isinstance(kind, typing.TypeAliasType) if hasattr(typing, "TypeAliasType") else False:
-        kind = kind.__value__
     origin, arguments = typing.get_origin(kind), typing.get_args(kind)
     if kind is Any:
         return {}
@@ -45,15 +43,15 @@ def _schema_of(kind: Any, definitions: dict[str, Any]) -> dict[str, Any]:
         return {"anyOf": [_schema_of(part, definitions) for part in arguments]}
     if isinstance(kind, type) and issubclass(kind, Enum):
         return {"enum": [member.value for member in kind]}
-    plain = {
-        bool: {"type": "boolean"},
-        int: {"type": "integer"},
-        float: {"type": ["number", "null"]},
-        str: {"type": "string"},
-        types.NoneType: {"type": "null"},
+    plain: dict[Any, str | list[str]] = {
+        bool: "boolean",
+        int: "integer",
+        float: ["number", "null"],
+        str: "string",
+        types.NoneType: "null",
     }
     if kind in plain:
-        return dict(plain[kind])
+        return {"type": plain[kind]}
     raise TypeError(f"results.json cannot describe {kind!r}")
 
 

@@ -9,7 +9,8 @@ from numpy.typing import NDArray
 from loadsum.demand.hourly import GroupDemand, HourDemand
 from loadsum.intake.hourclass import EPOCH
 from loadsum.intake.readings import Readings
-from loadsum.report.results import Coverage, Curve, CustomerRow, HourRow
+from loadsum.peak.exceedance import exceedance_hours
+from loadsum.report.results import Coverage, Curve, CustomerRow, ExceedanceRow, HourRow, Place
 from loadsum.study.tables import Customer
 
 CURVE_POINTS = 120
@@ -146,3 +147,39 @@ def curve_levels(demand: GroupDemand, highest_kw: float) -> NDArray[np.float64]:
     low = min(hour.quantile_kw(0.5) for hour in present)
     high = max(max(hour.quantile_kw(1e-4) for hour in present), 1.05 * highest_kw)
     return np.linspace(low, high, CURVE_POINTS)
+
+
+def exceedance_rows(demand: GroupDemand, ratings_kva: Sequence[float]) -> tuple[ExceedanceRow, ...]:
+    """Exceedance of each rating's nameplate over the covered hours of the year."""
+    hours = demand.hours_in_year()
+    rows = []
+    for rating in ratings_kva:
+        found = exceedance_hours(demand, [rating] * len(demand.blocks), "both")
+        b, i = np.unravel_index(int(np.nanargmax(found.probability)), found.probability.shape)
+        normal = 0.0
+        for bb, row in enumerate(demand.hours):
+            for ii, hour in enumerate(row):
+                if hour is not None:
+                    normal += hours[bb, ii] * hour.normal_exceedance(rating * hour.power_factor)
+        rows.append(
+            ExceedanceRow(
+                rating_kva=rating,
+                of="nameplate",
+                level_kva=rating,
+                hours_per_year=found.hours_per_year,
+                hours_low=float("nan"),
+                hours_high=float("nan"),
+                highest_probability=float(found.probability[b, i]),
+                highest_low=float("nan"),
+                highest_high=float("nan"),
+                floor=float(found.floor[b, i]),
+                highest_at=Place(
+                    season=demand.blocks[b].season,
+                    day_type=demand.blocks[b].day_type,
+                    interval=int(i),
+                    starts=clock_text(int(i), demand.interval_min),
+                ),
+                normal_factor=normal / found.hours_per_year if found.hours_per_year > 0.0 else float("nan"),
+            )
+        )
+    return tuple(rows)
