@@ -13,7 +13,18 @@ ROOT = Path(__file__).resolve().parents[1]
 @pytest.fixture(scope="module")
 def wheel(tmp_path_factory: pytest.TempPathFactory) -> Path:
     folder = tmp_path_factory.mktemp("wheel")
-    command = [sys.executable, "-m", "pip", "wheel", "--quiet", "--disable-pip-version-check", "--no-deps", "-w", folder, ROOT]
+    command = [
+        sys.executable,
+        "-m",
+        "pip",
+        "wheel",
+        "--quiet",
+        "--disable-pip-version-check",
+        "--no-deps",
+        "-w",
+        folder,
+        ROOT,
+    ]
     subprocess.run([str(part) for part in command], check=True, capture_output=True)
     (built,) = folder.glob("loadsum-*.whl")
     return built
@@ -30,7 +41,12 @@ def test_the_wheel_carries_templates_demo_and_licence_and_one_package(wheel: Pat
 def _templates_found(folder: Path, path: str) -> str:
     code = "import loadsum.report.document as d; print(d.__file__); print(d.templates_folder())"
     done = subprocess.run(
-        [sys.executable, "-c", code], cwd=folder, env={"PYTHONPATH": path, "PATH": ""}, check=True, capture_output=True, text=True
+        [sys.executable, "-c", code],
+        cwd=folder,
+        env={"PYTHONPATH": path, "PATH": ""},
+        check=True,
+        capture_output=True,
+        text=True,
     )
     module, templates = done.stdout.splitlines()
     assert module.startswith(path)

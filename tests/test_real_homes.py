@@ -116,7 +116,9 @@ def test_the_mean_of_each_hour_is_the_mean_of_the_observed_sum(results: dict, cl
 def test_variances_over_the_year_agree_with_the_observed_sums(results: dict, classes: dict) -> None:
     (unit,) = results["transformers"]
     model = np.array([row["sd_kw"] ** 2 for row in unit["hours"]])
-    observed = np.array([classes[r["season"], r["day_type"], r["interval"]].sum(axis=0).var(ddof=1) for r in unit["hours"]])
+    observed = np.array(
+        [classes[r["season"], r["day_type"], r["interval"]].sum(axis=0).var(ddof=1) for r in unit["hours"]]
+    )
     assert model.mean() / observed.mean() == pytest.approx(1.0, abs=0.10)
 
 
