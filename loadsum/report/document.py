@@ -9,9 +9,10 @@ from loadsum.errors import InputError
 from loadsum.report import figures
 from loadsum.report.archive import Attachment, fixed_time, manifest
 from loadsum.report.cleantext import CleanResults, clean
-from loadsum.report.material import Material, Section
+from loadsum.report.material import Material
 from loadsum.report.notation import NO_BREAK, Notation
 from loadsum.report.sections import first_page, sections
+from loadsum.report.sections.overview import units_in_detail
 from loadsum.report.standards import meet_both_standards
 from loadsum.report.templates import Catalogue, catalogue, environment, logo, marked_up, templates_digest
 from loadsum.report.typeface import FALLBACK_FAMILY, TEXT_FAMILY
@@ -80,12 +81,13 @@ def compose(
     """HTML of the report, the pieces it refers to, and everything to attach."""
     m, cleaned = material(results, overrides)
     listed = [*attachments, manifest(results, attachments, templates_digest(overrides))]
-    drawn = figures.drawn(m)
+    units = units_in_detail(m)
+    drawn = figures.drawn(m, units)
     assets = {f"{name}.svg": ("image/svg+xml", figures.svg(figure.figure)) for name, figure in drawn.items()}
     own_logo = logo(overrides)
     if own_logo is not None:
         assets["logo"] = own_logo
-    made = sections(m)
+    made = sections(m, units)
     env = environment(overrides)
     env.filters["css_string"] = css_string
     env.filters["strong"] = marked_up
@@ -104,7 +106,7 @@ def compose(
         first=first_page.content(m),
         sections=made,
         figures=drawn,
-        numbers=Numbers(made),
+        numbers=Numbers(),
         terms=_terms(m),
         attached=sorted(a.name for a in listed),
         changes=[m.t(f"changed.{c.what}", where=c.where[:120], count=c.count) for c in cleaned.changes],
@@ -117,7 +119,7 @@ def compose(
 class Numbers:
     """Numbers of figures and tables, in the order they are printed."""
 
-    def __init__(self, made: Sequence[Section]) -> None:
+    def __init__(self) -> None:
         self._figures: dict[str, int] = {}
         self._tables = 0
 
@@ -135,7 +137,7 @@ def css_string(text: str) -> Any:
     """A text as a CSS string in which every sign that could end it is a numeric escape."""
     from markupsafe import Markup
 
-    return Markup('"' + re.sub(r"[^ A-Za-z0-9.,:-]", lambda c: f"\\{ord(c[0]):06x}", str(text)) + '"')
+    return Markup('"' + re.sub(r"[^ A-Za-z0-9.,:-]", lambda c: f"\\{ord(c[0]):06x} ", str(text)) + '"')
 
 
 def _program(m: Material) -> str:

@@ -14,20 +14,64 @@ class Section:
 
     Parameters
     ----------
-    anchor : str
-        Name of the section inside the document and of its block template.
+    block : str
+        Name of the block template that prints it.
     title : str
         Heading.
     content : mapping
         What the block template prints.
     figures : tuple of str
         Names of the figures it shows.
+    unit : int
+        Transformer it is about, from 0; -1 where it is about the whole study. [-]
     """
 
-    anchor: str
+    block: str
     title: str
     content: Mapping[str, Any]
     figures: tuple[str, ...] = ()
+    unit: int = -1
+
+    @property
+    def anchor(self) -> str:
+        """Name of the section inside the document."""
+        return self.block if self.unit < 0 else f"{self.block}-{self.unit + 1}"
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class Unit:
+    """One transformer of the study.
+
+    Parameters
+    ----------
+    index : int
+        Position in the study, from 0. [-]
+    several : bool
+        Whether the study has more than one.
+    results : mapping
+        Results of this transformer over those that are common to the study.
+    """
+
+    index: int
+    several: bool
+    results: Mapping[str, Any]
+
+    @property
+    def id(self) -> str:
+        """Asset number as printed."""
+        return str(self.results.get("id") or f"no. {self.index + 1}")
+
+    def part(self, name: str) -> Any:
+        """A part of the results; None where it is missing or empty."""
+        return self.results.get(name) or None
+
+    def rows(self, name: str) -> Sequence[Mapping[str, Any]]:
+        """A list of the results; empty where it is missing."""
+        return self.results.get(name) or ()
+
+    def figure(self, name: str) -> str:
+        """Name of a figure of this transformer."""
+        return f"{name}-{self.index + 1}" if self.several else name
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -62,10 +106,18 @@ class Material:
         return self.results.get("study") or {}
 
     @property
-    def transformers(self) -> Sequence[Mapping[str, Any]]:
+    def units(self) -> Sequence[Unit]:
         """Every transformer of the study; one made of the top level where none is listed apart."""
-        listed = self.results.get("transformers")
-        return listed or (self.results,)
+        listed = self.results.get("transformers") or [{}]
+        common = {name: value for name, value in self.results.items() if name != "transformers"}
+        return tuple(
+            Unit(
+                index=index,
+                several=len(listed) > 1,
+                results={**common, **{name: value for name, value in one.items() if value is not None}},
+            )
+            for index, one in enumerate(listed)
+        )
 
     @property
     def interval_min(self) -> int:

@@ -1,5 +1,6 @@
 """An invented study in the form of results.json, for tests of layout and wording; no figure in it means anything."""
 
+import itertools
 import math
 from typing import Any
 
@@ -43,8 +44,7 @@ def hours() -> list[dict[str, Any]]:
                             name: float(gamma.isf(p, a, scale=scale))
                             for name, p in (("q50_kw", 0.5), ("q90_kw", 0.1), ("q99_kw", 0.01), ("q999_kw", 0.001))
                         },
-                        "floor": 1 / (n_days + 1),
-                        "above": [float(gamma.sf(r * POWER_FACTOR, a, scale=scale)) for r in RATINGS_KVA],
+                        "floor": 0.1 / (n_days + 1),
                     }
                 )
     return rows
@@ -73,23 +73,57 @@ def curve(rows: list[dict[str, Any]]) -> dict[str, Any]:
     }
 
 
+def above(row: dict[str, Any], level_kva: float) -> float:
+    """Probability above a level in one hour."""
+    a, scale = (row["mean_kw"] / row["sd_kw"]) ** 2, row["sd_kw"] ** 2 / row["mean_kw"]
+    return float(gamma.sf(level_kva * POWER_FACTOR, a, scale=scale))
+
+
+def hour_map(rows: list[dict[str, Any]]) -> dict[str, Any]:
+    """Exceedance by rating, class of days and hour."""
+    return {
+        "ratings_kva": list(RATINGS_KVA),
+        "season": [rows[i]["season"] for i in range(0, len(rows), 24)],
+        "day_type": [rows[i]["day_type"] for i in range(0, len(rows), 24)],
+        "level_kva": [[r] * 8 for r in RATINGS_KVA],
+        "probability": [
+            [[above(row, r) for row in rows[i : i + 24]] for i in range(0, len(rows), 24)] for r in RATINGS_KVA
+        ],
+        "floor": [[row["floor"] for row in rows[i : i + 24]] for i in range(0, len(rows), 24)],
+    }
+
+
+def quality() -> dict[str, Any]:
+    """State of the readings by customer and day."""
+    signs = {}
+    for n in range(1, 10):
+        row = ["f"] * 365
+        row[70 + 13 * n : 70 + 15 * n] = ["p"] * (2 * n)
+        if n == 4:
+            row[200:214] = ["-"] * 14
+        if n == 7:
+            row[300:330] = ["e"] * 30
+        signs[f"C-{n:02d}"] = [[len(list(run)), sign] for sign, run in itertools.groupby(row)]
+    return {"first_day": 21915, "days": 365, "customers": signs}
+
+
 def results() -> dict[str, Any]:
     """A whole study of nine homes."""
     rows = hours()
-    above = [sum(r["hours_per_year"] * r["above"][i] for r in rows) for i in range(4)]
-    highest = [max(r["above"][i] for r in rows) for i in range(4)]
+    total = [sum(r["hours_per_year"] * above(r, rating) for r in rows) for rating in RATINGS_KVA]
+    highest = [max(above(r, rating) for r in rows) for rating in RATINGS_KVA]
     exceedance = [
         {
             "rating_kva": rating,
             "of": "allowed loading, normal",
             "level_kva": rating,
-            "hours_per_year": above[i],
-            "hours_low": 0.6 * above[i],
-            "hours_high": 1.7 * above[i],
+            "hours_per_year": total[i],
+            "hours_low": 0.6 * total[i],
+            "hours_high": 1.7 * total[i],
             "highest_probability": highest[i],
             "highest_low": 0.5 * highest[i],
             "highest_high": min(1.9 * highest[i], 1.0),
-            "floor": 1 / 66,
+            "floor": 0.1 / 66,
             "highest_at": {"season": "winter", "day_type": "workday", "interval": 19, "starts": "19:00"},
             "normal_factor": [0.93, 0.61, 0.08, 0.0004][i],
         }
@@ -176,7 +210,7 @@ def results() -> dict[str, Any]:
                 "effect": "not used",
             },
         ],
-        "hours": rows,
+        "quality": quality(),
         "transformers": [
             {
                 "id": "T-204",
@@ -185,6 +219,8 @@ def results() -> dict[str, Any]:
                 "power_factor": POWER_FACTOR,
                 "exceedance": exceedance,
                 "curve": curve(rows),
+                "hour_map": hour_map(rows),
+                "hours": rows,
                 "selection": {
                     "verdict": "chosen",
                     "rating_kva": 37.5,
@@ -198,10 +234,10 @@ def results() -> dict[str, Any]:
                             "by_rating": [
                                 {
                                     "rating_kva": rating,
-                                    "value": above[i],
+                                    "value": total[i],
                                     "limit": 10.0,
-                                    "margin": 10.0 - above[i],
-                                    "meets": above[i] <= 10.0,
+                                    "margin": 10.0 - total[i],
+                                    "meets": total[i] <= 10.0,
                                     "governs": True,
                                 }
                                 for i, rating in enumerate(RATINGS_KVA)

@@ -3,20 +3,37 @@
 from collections.abc import Callable, Mapping, Sequence
 from typing import Any
 
-from loadsum.report.figures import demand_by_hour, exceedance_curve, exceedance_map
+from loadsum.report.figures import (
+    demand_by_hour,
+    exceedance_curve,
+    exceedance_map,
+    normal_factor,
+    quality_calendar,
+)
 from loadsum.report.figures.plate import DrawnFigure, png, svg
-from loadsum.report.material import Material
+from loadsum.report.material import Material, Unit
 
-FIGURES: Sequence[Callable[[Material], DrawnFigure | None]] = (
+OF_A_TRANSFORMER: Sequence[Callable[[Material, Unit], DrawnFigure | None]] = (
     exceedance_map.figure,
     demand_by_hour.figure,
     exceedance_curve.figure,
+    normal_factor.figure,
 )
+OF_THE_STUDY: Sequence[Callable[[Material], DrawnFigure | None]] = (quality_calendar.figure,)
 
 
-def drawn(m: Material) -> dict[str, DrawnFigure]:
-    """Every figure that the results can fill, by name."""
-    made = [make(m) for make in FIGURES]
+def drawn(m: Material, units: Sequence[Unit]) -> dict[str, DrawnFigure]:
+    """Every figure that the results can fill, by name.
+
+    Parameters
+    ----------
+    m : Material
+        Results and words.
+    units : sequence of Unit
+        Transformers whose figures are wanted.
+    """
+    made = [make(m, unit) for unit in units for make in OF_A_TRANSFORMER]
+    made += [make(m) for make in OF_THE_STUDY]
     return {figure.name: figure for figure in made if figure is not None}
 
 
@@ -27,12 +44,18 @@ def draw(results: Mapping[str, Any]) -> dict[str, bytes]:
     ----------
     results : mapping
         Results as read from results.json.
+
+    Raises
+    ------
+    InputError
+        A character of the results is in no font of the report.
     """
     from loadsum.report.document import material
+    from loadsum.report.sections.overview import units_in_detail
 
     m, _ = material(results)
     files: dict[str, bytes] = {}
-    for name, figure in drawn(m).items():
+    for name, figure in drawn(m, units_in_detail(m)).items():
         files[f"{name}.svg"] = svg(figure.figure)
         files[f"{name}.png"] = png(figure.figure)
     return files

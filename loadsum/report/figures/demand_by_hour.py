@@ -5,50 +5,64 @@ from typing import Any
 
 import numpy as np
 
-from loadsum.report.figures.plate import GREY, INK, DrawnFigure, axes_mm, plate
-from loadsum.report.material import Material
-from loadsum.report.sections.verdict import exceedance_rows
+from loadsum.report.figures.plate import GREY, INK, DrawnFigure, axes_mm, clock_axis, plate
+from loadsum.report.material import Material, Unit
+from loadsum.report.notation import NO_BREAK
 
 NAME = "demand-by-hour"
+# Level of each band's upper edge, the probability above it, and the band's tone.
+BANDS = (("q90_kw", 0.1, "#8f8f8f"), ("q99_kw", 0.01, "#bdbdbd"), ("q999_kw", 0.001, "#e2e2e2"))
 
 
-def figure(m: Material) -> DrawnFigure | None:
-    """The class of days with the highest 99.9 % level, and beside it the one with the lowest."""
-    rows = m.rows("hours")
+def figure(m: Material, unit: Unit) -> DrawnFigure | None:
+    """The class of days with the highest 99 % level, and beside it the one with the lowest."""
+    rows = [row for row in unit.rows("hours") if row.get("q50_kw") is not None]
     if not rows:
         return None
     by_class: dict[tuple[str, str], list[Mapping[str, Any]]] = {}
     for row in rows:
         by_class.setdefault((row["season"], row["day_type"]), []).append(row)
-    top = {name: max(r.get("q999_kw") or 0.0 for r in group) for name, group in by_class.items()}
+    top = {name: max(r["q99_kw"] for r in group) for name, group in by_class.items()}
     shown = list(dict.fromkeys([max(top, key=lambda k: top[k]), min(top, key=lambda k: top[k])]))
-    ratings = _ratings(m, m.transformers[0])
-    highest = max([top[name] for name in shown] + [kw for _, kw in ratings[:1]])
+    drawn_rows = [row for name in shown for row in by_class[name]]
+    highest = max(row["q999_kw" if _supports(by_class[shown[0]], 0.001) else "q99_kw"] for row in drawn_rows)
+    ratings = [(m.kva(rating), kw) for rating, kw in ratings_kw(unit)]
+    above = [kw for _, kw in ratings if kw > highest]
+    limit = 1.06 * max([highest, *above[:1]])
     with plate(62.0) as fig:
+        width = 60.0 if len(shown) == 2 else 132.0
         for place, name in enumerate(shown):
-            ax = axes_mm(fig, 12.0 + 77.0 * place, 9.0, 166.0 - 89.0 - 77.0 * place + 14.0, 6.0)
-            _panel(m, ax, by_class[name], ratings, highest * 1.08, label_ratings=place == len(shown) - 1)
-            ax.set_title(f"{name[0]}, {name[1]}", loc="left", pad=3)
+            left = 13.0 + place * (width + 13.0)
+            ax = axes_mm(fig, left, 8.0, 166.0 - left - width, 7.0)
+            _panel(m, ax, by_class[name], ratings, limit, last=place == len(shown) - 1)
+            ax.set_title(", ".join(name), loc="left", pad=4)
             if place == 0:
                 ax.set_ylabel(m.t(f"figure.{NAME}.axis"))
-    peak = max(by_class[shown[0]], key=lambda r: r.get("q999_kw") or 0.0)
-    alt = m.t(
-        f"figure.{NAME}.alt",
-        where=m.hour_class(peak),
-        median=m.n.fixed(peak.get("q50_kw"), 1),
-        q90=m.n.fixed(peak.get("q90_kw"), 1),
-        q99=m.n.fixed(peak.get("q99_kw"), 1),
-        q999=m.n.fixed(peak.get("q999_kw"), 1),
-    )
+    peak = max(by_class[shown[0]], key=lambda r: float(r["q99_kw"]))
     return DrawnFigure(
-        name=NAME, title=m.t(f"figure.{NAME}.title"), note=m.t(f"figure.{NAME}.note"), alt=alt, figure=fig
+        name=unit.figure(NAME),
+        title=m.t(f"figure.{NAME}.title"),
+        note=m.t(f"figure.{NAME}.note"),
+        alt=m.t(
+            f"figure.{NAME}.alt",
+            where=m.hour_class(peak),
+            median=m.n.fixed(peak.get("q50_kw"), 1),
+            q90=m.n.fixed(peak.get("q90_kw"), 1),
+            q99=m.n.fixed(peak.get("q99_kw"), 1),
+        ),
+        figure=fig,
     )
 
 
-def _ratings(m: Material, transformer: Mapping[str, Any]) -> list[tuple[str, float]]:
-    pf = transformer.get("power_factor") or 1.0
-    rows = {row["rating_kva"]: row["rating_kva"] * pf for row in exceedance_rows(transformer) if row.get("rating_kva")}
-    return [(m.kva(rating), kw) for rating, kw in rows.items()]
+def ratings_kw(unit: Unit) -> list[tuple[float, float]]:
+    """Each rating of the study, and its nameplate at the group's power factor. [kVA, kW]"""
+    pf = unit.results.get("power_factor") or 1.0
+    ratings = (unit.part("hour_map") or {}).get("ratings_kva") or unit.rows("ratings_kva")
+    return [(float(rating), float(rating) * pf) for rating in ratings]
+
+
+def _supports(rows: Sequence[Mapping[str, Any]], probability: float) -> bool:
+    return all((row.get("floor") or 0.0) <= probability for row in rows)
 
 
 def _panel(
@@ -58,28 +72,47 @@ def _panel(
     ratings: Sequence[tuple[str, float]],
     top: float,
     *,
-    label_ratings: bool,
+    last: bool,
 ) -> None:
     length_h = m.interval_min / 60.0
     x = np.array([(row["interval"] + 0.5) * length_h for row in rows])
-    q50, q90, q99, q999 = (
-        np.array([row.get(k) or np.nan for row in rows]) for k in ("q50_kw", "q90_kw", "q99_kw", "q999_kw")
-    )
-    ax.fill_between(x, q50, q90, color="#9a9a9a", linewidth=0)
-    ax.fill_between(x, q90, q99, color="#c4c4c4", linewidth=0)
-    ax.fill_between(x, q99, q999, color="#e4e4e4", linewidth=0)
-    ax.plot(x, q50, color=INK, linewidth=1.4)
-    ax.plot(x, q999, color=INK, linewidth=0.6, linestyle=(0, (4, 2)))
-    at = int(np.nanargmax(q999))
-    for values, text in ((q50, "50 %"), (q90, "90 %"), (q99, "99 %"), (q999, "99.9 %")):
-        ax.annotate(
-            text, (x[at], values[at]), xytext=(-3, 1), textcoords="offset points", ha="right", va="bottom", fontsize=7
-        )
+    below = np.array([row["q50_kw"] for row in rows], dtype=np.float64)
+    at = int(np.argmax(below))
+    ax.plot(x, below, color=INK, linewidth=1.4)
+    labels = [(float(below[at]), "50" + NO_BREAK + "%")]
+    for name, probability, tone in BANDS:
+        if not _supports(rows, probability):
+            break
+        edge = np.array([row[name] for row in rows], dtype=np.float64)
+        ax.fill_between(x, below, edge, color=tone, linewidth=0, zorder=0)
+        labels.append((float(edge[at]), m.plain(100.0 * (1.0 - probability), 2) + NO_BREAK + "%"))
+        below = edge
+    ax.plot(x, below, color=INK, linewidth=0.5, linestyle=(0, (4, 2)))
+    _label_levels(ax, x[at], labels, top)
     for text, kw in ratings:
         if kw < top:
-            ax.axhline(kw, color=GREY, linewidth=0.7, linestyle=(0, (1, 1.5)))
-            if label_ratings:
-                ax.text(24.3, kw, text, va="center", ha="left", clip_on=False)
-    ax.set_xlim(0, 24)
+            ax.axhline(kw, color=GREY, linewidth=0.8, linestyle=(0, (1, 1.6)), zorder=3)
+            if last:
+                ax.text(24.4, kw, text, va="center", ha="left", clip_on=False)
     ax.set_ylim(0, top)
-    ax.set_xticks(range(0, 25, 6), [f"{h:02d}:00" for h in range(0, 25, 6)])
+    clock_axis(ax)
+
+
+def _label_levels(ax: Any, x: float, labels: Sequence[tuple[float, str]], top: float) -> None:
+    """Names of the levels to the left of the highest hour, never closer than a line of text, with a thin leader."""
+    to_left = x > 12.0
+    x_text = x - 4.5 if to_left else x + 4.5
+    y_text = -1.0
+    for y, text in labels:
+        y_text = max(y, y_text + 0.062 * top)
+        ax.annotate(
+            text,
+            (x, y),
+            xytext=(x_text, y_text + 0.02 * top),
+            ha="right" if to_left else "left",
+            va="center",
+            fontsize=7.0,
+            arrowprops={"arrowstyle": "-", "linewidth": 0.35, "color": INK, "shrinkA": 1, "shrinkB": 0},
+            bbox={"facecolor": "white", "edgecolor": "none", "pad": 0.6, "alpha": 1.0},
+            zorder=4,
+        )

@@ -1,116 +1,134 @@
 """Exceedance against level: the adopted model beside the customary ones."""
 
-from collections.abc import Mapping
+from collections.abc import Mapping, Sequence
 from typing import Any
 
 import numpy as np
+from numpy.typing import NDArray
 
-from loadsum.report.figures.plate import BLUE, GREEN, GREY, INK, ORANGE, DrawnFigure, axes_mm, plate
-from loadsum.report.material import Material
+from loadsum.report.figures.demand_by_hour import ratings_kw
+from loadsum.report.figures.plate import DOTTED, GREY, INK, MODELS, DrawnFigure, axes_mm, decades, plate
+from loadsum.report.material import Material, Unit
 from loadsum.report.sections.verdict import exceedance_rows
 
 NAME = "exceedance-curve"
-STYLES = {
-    "normal": (BLUE, (0, (6, 2)), 0.9),
-    "independent": (ORANGE, (0, (2, 1.2)), 0.9),
-    "normal_independent": (GREEN, (0, (6, 1.5, 1, 1.5)), 0.8),
-}
 
 
-def figure(m: Material) -> DrawnFigure | None:
-    """The curve of the first transformer."""
-    transformer = m.transformers[0]
-    curve = transformer.get("curve")
+def figure(m: Material, unit: Unit) -> DrawnFigure | None:
+    """The curve of one transformer."""
+    curve = unit.part("curve")
     if not curve or not curve.get("levels_kw"):
         return None
-    levels = _array(curve, "levels_kw")
-    adopted = _array(curve, "adopted")
+    levels, adopted = values(curve, "levels_kw"), values(curve, "adopted")
     floor = curve.get("floor") or 1e-6
-    lowest = max(floor / 30.0, 1e-9)
-    with plate(78.0) as fig:
-        ax = axes_mm(fig, 16.0, 11.0, 30.0, 10.0)
+    lowest = 10.0 ** np.floor(np.log10(floor / 12.0))
+    lines = {name: values(curve, name) for name in MODELS if curve.get(name)}
+    right = _right_edge(levels, lines, lowest, [kw for _, kw in ratings_kw(unit)])
+    with plate(80.0) as fig:
+        ax = axes_mm(fig, 19.0, 11.0, 40.0, 7.0)
         if curve.get("lower") and curve.get("upper"):
-            lower, upper = _array(curve, "lower"), _array(curve, "upper")
-            ax.fill_between(
-                levels, np.clip(lower, lowest / 10, 1), np.clip(upper, lowest / 10, 1), color="#c9c9c9", lw=0
-            )
-        ends = [(_seen(levels, adopted, lowest), m.t(f"figure.{NAME}.adopted"))]
-        for name, (colour, dashes, width) in STYLES.items():
-            if curve.get(name):
-                values = _array(curve, name)
-                ax.plot(levels, values, color=colour, linestyle=dashes, linewidth=width)
-                ends.append((_seen(levels, values, lowest), m.t(f"figure.{NAME}.{name}")))
-        ax.plot(levels, adopted, color=INK, linewidth=1.6)
+            low, high = (np.clip(values(curve, name), lowest / 100.0, 1.0) for name in ("lower", "upper"))
+            ax.fill_between(levels, low, high, color="#bdbdbd", linewidth=0)
+        for name, line in lines.items():
+            colour, dashes, width = MODELS[name]
+            ax.plot(levels, line, color=colour, linestyle=dashes, linewidth=width)
         if curve.get("observed"):
-            observed = _array(curve, "observed")
-            ax.plot(levels[observed > 0][::4], observed[observed > 0][::4], ".", color=INK, markersize=2.5)
-        ax.axhline(floor, color=GREY, linewidth=0.5)
-        ax.text(levels[0], floor, " " + m.t(f"figure.{NAME}.floor"), va="bottom", ha="left", fontsize=7, color=GREY)
-        ax.set_yscale("log")
+            observed = values(curve, "observed")
+            some = np.flatnonzero(observed > 0)[::3]
+            ax.plot(levels[some], observed[some], "o", markersize=1.8, color=INK, fillstyle="none", markeredgewidth=0.5)
+        decades(ax, "y", lowest, 1.0, lambda share: m.n.percent(share, 1))
         ax.set_ylim(lowest, 1.0)
-        right = levels[-1]
         ax.set_xlim(levels[0], right)
-        _label_ends(ax, ends, lowest)
-        pf = transformer.get("power_factor") or 1.0
-        for row in exceedance_rows(transformer):
-            kw = row["rating_kva"] * pf
-            if levels[0] < kw < right:
-                ax.axvline(kw, color=GREY, linewidth=0.7, linestyle=(0, (1, 1.5)))
+        ax.axhspan(lowest, floor, color="#f0f0f0", zorder=-1)
+        ax.text(levels[0], floor * 0.8, " " + m.t(f"figure.{NAME}.floor"), va="top", ha="left", fontsize=7)
+        for rating, kw in ratings_kw(unit):
+            if levels[0] < kw <= right:
+                ax.axvline(kw, color=GREY, linewidth=0.8, linestyle=DOTTED)
                 ax.annotate(
-                    m.kva(row["rating_kva"]),
-                    (kw, 1.0),
-                    xytext=(0, 2),
-                    textcoords="offset points",
-                    ha="center",
-                    va="bottom",
+                    m.kva(rating), (kw, 1.0), xytext=(0, 2), textcoords="offset points", ha="center", va="bottom"
                 )
+        _intervals(ax, unit, lowest)
+        _name_lines(m, ax, levels, lines, lowest, right)
         ax.set_xlabel(m.t(f"figure.{NAME}.axis_level"))
-        ax.set_ylabel(m.t(f"figure.{NAME}.axis_share"))
+        ax.set_ylabel(m.t(f"figure.{NAME}.axis_share", interval=f"{m.interval_min} min"))
     return DrawnFigure(
-        name=NAME,
+        name=unit.figure(NAME),
         title=m.t(f"figure.{NAME}.title"),
         note=m.t(f"figure.{NAME}.note"),
-        alt=_alt(m, transformer, levels, curve, adopted),
+        alt=_alt(m, unit, levels, lines, adopted),
         figure=fig,
     )
 
 
-def _array(curve: Mapping[str, Any], name: str) -> Any:
+def values(curve: Mapping[str, Any], name: str) -> NDArray[np.float64]:
+    """One line of the curve; NaN where it holds nothing."""
     return np.array([np.nan if v is None else v for v in curve[name]], dtype=np.float64)
 
 
-def _seen(levels: Any, values: Any, lowest: float) -> tuple[float, float]:
-    """Where a curve leaves the plate."""
-    inside = np.flatnonzero(values > lowest)
-    last = inside[-1] if inside.size else 0
-    return float(levels[last]), float(max(values[last], lowest))
+def _right_edge(
+    levels: NDArray[np.float64], lines: Mapping[str, NDArray[np.float64]], lowest: float, ratings: Sequence[float]
+) -> float:
+    """Just past where the last curve leaves the plate, and not before the rating beyond it."""
+    ends = [float(levels[np.flatnonzero(line > lowest)[-1]]) for line in lines.values() if (line > lowest).any()]
+    end = max(ends, default=float(levels[-1]))
+    beyond = [kw for kw in ratings if kw > end]
+    return min(float(levels[-1]), 1.03 * max([end, *beyond[:1]]))
 
 
-def _label_ends(ax: Any, ends: list[tuple[tuple[float, float], str]], lowest: float) -> None:
-    """Names at the ends of the curves; those that leave below stand side by side above the axis."""
-    for (x, y), text in ends:
+def _intervals(ax: Any, unit: Unit, lowest: float) -> None:
+    """Interval of the long-run share at each rating, as a bar."""
+    hours = (unit.part("coverage") or {}).get("covered_hours") or 8766.0
+    pf = unit.results.get("power_factor") or 1.0
+    for row in exceedance_rows(unit.results):
+        low, high = row.get("hours_low"), row.get("hours_high")
+        if low is not None and high is not None and high / hours > lowest:
+            kw = row["level_kva"] * pf
+            ax.plot([kw, kw], [max(low / hours, lowest), high / hours], color=INK, linewidth=2.6, solid_capstyle="butt")
+
+
+def _name_lines(
+    m: Material,
+    ax: Any,
+    levels: NDArray[np.float64],
+    lines: Mapping[str, NDArray[np.float64]],
+    lowest: float,
+    right: float,
+) -> None:
+    """Name each line at the right edge, with a leader from a dot on the line itself."""
+    order = sorted(lines, key=lambda name: float(np.interp(-np.log(lowest * 3), -_log(lines[name]), levels)))
+    for place, name in enumerate(reversed(order)):
+        share = lowest * 10.0 ** (0.35 + 0.42 * place)
+        x = float(np.interp(-np.log(share), -_log(lines[name]), levels))
+        ax.plot([x, right], [share, share], color=GREY, linewidth=0.35)
+        ax.plot([x], [share], "o", markersize=2.6, color=MODELS[name][0])
         ax.annotate(
-            text, (x, y), xytext=(3, 3), textcoords="offset points", ha="left", va="bottom", fontsize=7.5, rotation=0
+            m.t(f"model.{name}"),
+            (right, share),
+            xytext=(3, 0),
+            textcoords="offset points",
+            va="center",
+            ha="left",
+            annotation_clip=False,
         )
 
 
-def _alt(m: Material, transformer: Mapping[str, Any], levels: Any, curve: Mapping[str, Any], adopted: Any) -> str:
-    pf = transformer.get("power_factor") or 1.0
+def _log(line: NDArray[np.float64]) -> NDArray[np.float64]:
+    """Logarithm of a line that only falls, fit for reading the level off the share."""
+    safe = np.where(np.isfinite(line) & (line > 0), line, 1e-300)
+    return np.asarray(np.log(np.minimum.accumulate(safe)))
+
+
+def _alt(
+    m: Material,
+    unit: Unit,
+    levels: NDArray[np.float64],
+    lines: Mapping[str, NDArray[np.float64]],
+    adopted: NDArray[np.float64],
+) -> str:
     parts = []
-    for row in exceedance_rows(transformer):
-        kw = row["rating_kva"] * pf
-        if not levels[0] <= kw <= levels[-1]:
-            continue
-        shares = {
-            name: m.n.percent(float(np.interp(kw, levels, _array(curve, name))), 2)
-            for name in ("adopted", "normal", "independent")
-            if curve.get(name)
-        }
-        parts.append(
-            m.t(
-                f"figure.{NAME}.alt_part",
-                rating=m.kva(row["rating_kva"]),
-                **{"normal": m.n.none, "independent": m.n.none, **shares},
-            )
-        )
+    for rating, kw in ratings_kw(unit):
+        if levels[0] <= kw <= levels[-1]:
+            shares = {name: m.n.percent(float(np.interp(kw, levels, line)), 2) for name, line in lines.items()}
+            known = {name: shares.get(name, m.n.none) for name in MODELS}
+            parts.append(m.t(f"figure.{NAME}.alt_part", rating=m.kva(rating), **known))
     return m.t(f"figure.{NAME}.alt", parts=" ".join(parts))

@@ -1,100 +1,133 @@
 """Map of exceedance probability by hour of the day and class of days."""
 
-import math
-from collections.abc import Mapping, Sequence
+from collections.abc import Iterator, Mapping, Sequence
 from typing import Any
 
 import numpy as np
+from numpy.typing import NDArray
 
-from loadsum.report.figures.plate import INK, DrawnFigure, axes_mm, plate
-from loadsum.report.material import Material
+from loadsum.report.figures.plate import GREY, DrawnFigure, axes_mm, clock_axis, plate
+from loadsum.report.material import Material, Unit
 
 NAME = "exceedance-map"
-# Decades of probability, each with its tone and hatch: dark is likely, white is not seen.
-STEPS = ((0.1, "#3b3b3b", ""), (0.01, "#7d7d7d", ""), (0.001, "#b9b9b9", "////"), (0.0, "#e6e6e6", ""))
+# Decades of probability, each with its tone and hatch; dark is likely.
+STEPS = ((0.1, "#303030", ""), (0.01, "#6f6f6f", ""), (0.001, "#a6a6a6", "//////"), (0.0, "#dedede", ""))
+RARE, UNSEEN = len(STEPS), len(STEPS) + 1
+LOOKS = (*((tone, hatch) for _, tone, hatch in STEPS), ("#ffffff", ""), ("#ffffff", "xxxxx"))
 
 
-def figure(m: Material) -> DrawnFigure | None:
-    """The map for the recommended rating, or for the first where none is recommended."""
-    rows = [row for row in m.rows("hours") if row.get("above")]
-    if not rows:
+def figure(m: Material, unit: Unit) -> DrawnFigure | None:
+    """The map for the rating that the study is about and, beside it, for the next smaller one."""
+    found = unit.part("hour_map")
+    if not found or not found.get("ratings_kva"):
         return None
-    transformer = m.transformers[0]
-    levels = [row.get("rating_kva") for row in transformer.get("exceedance") or ()]
-    chosen = (transformer.get("selection") or {}).get("rating_kva")
-    index = levels.index(chosen) if chosen in levels else 0
-    rating = m.kva(levels[index])
-    return _draw(m, rows, index, rating)
-
-
-def _draw(m: Material, rows: Sequence[Mapping[str, Any]], index: int, rating: str) -> DrawnFigure:
-    classes = list(dict.fromkeys((row["season"], row["day_type"]) for row in rows))
-    length_h = m.interval_min / 60.0
-    with plate(14.0 + 5.6 * len(classes) + 10.0) as fig:
-        ax = axes_mm(fig, 45.0, 9.0, 26.0, 8.0)
-        for row in rows:
-            y = classes.index((row["season"], row["day_type"]))
-            p, floor = row["above"][index], row.get("floor") or 0.0
-            tone, hatch = _tone(p, floor)
-            ax.fill_between(
-                [row["interval"] * length_h, (row["interval"] + 1) * length_h],
-                y + 0.04,
-                y + 0.96,
-                facecolor=tone,
-                edgecolor="#555555" if hatch else tone,
-                hatch=hatch or None,
-                linewidth=0.0,
-            )
-        ax.set_xlim(0, 24)
-        ax.set_ylim(len(classes), 0)
-        ax.set_yticks(np.arange(len(classes)) + 0.5, [f"{s}, {d}" for s, d in classes])
-        ax.set_xticks(range(0, 25, 3), [f"{h:02d}:00" for h in range(0, 25, 3)])
-        ax.tick_params(axis="y", length=0)
-        for side in ("left", "bottom"):
-            ax.spines[side].set_visible(False)
-        _key(m, ax, len(classes))
-    worst = max(rows, key=lambda row: row["above"][index])
-    hours = sum((row.get("hours_per_year") or 0.0) * row["above"][index] for row in rows)
-    alt = m.t(
-        f"figure.{NAME}.alt",
-        rating=rating,
-        classes=len(classes),
-        highest=m.n.probability(worst["above"][index], worst.get("floor")),
-        where=m.hour_class(worst),
-        hours=m.hours(hours),
-    )
+    shown = ratings_shown(unit, found["ratings_kva"])
+    probability = _array(found["probability"])
+    floor = _array(found["floor"])
+    names = [", ".join(pair) for pair in zip(found["season"], found["day_type"], strict=True)]
+    with plate(12.0 + 5.2 * len(names) + 6.0) as fig:
+        width = (166.0 - 44.0 - 36.0 - 4.0 * (len(shown) - 1)) / len(shown)
+        for place, index in enumerate(shown):
+            left = 44.0 + place * (width + 4.0)
+            ax = axes_mm(fig, left, 7.0, 166.0 - left - width, 7.0)
+            _panel(m, ax, _states(probability[index], floor), names if place == 0 else None)
+            ax.set_title(m.kva(found["ratings_kva"][index]), loc="left", pad=3)
+        states = {int(s) for index in shown for s in np.unique(_states(probability[index], floor))}
+        _key(m, fig, states, floor)
     return DrawnFigure(
-        name=NAME,
-        title=m.t(f"figure.{NAME}.title", rating=rating),
+        name=unit.figure(NAME),
+        title=m.t(f"figure.{NAME}.title"),
         note=m.t(f"figure.{NAME}.note"),
-        alt=alt,
+        alt=" ".join(_alt(m, found, index, probability[index], floor, names) for index in shown),
         figure=fig,
     )
 
 
-def _tone(p: float | None, floor: float) -> tuple[str, str]:
-    if p is None or not math.isfinite(p) or (p < floor and p < 0.001):
-        return "#ffffff", ""
-    for limit, tone, hatch in STEPS:
-        if p >= limit:
-            return tone, hatch
-    return "#ffffff", ""
+def ratings_shown(unit: Unit, ratings: Sequence[float]) -> list[int]:
+    """Index of the next smaller rating and of the recommended one; the rating in service where none is."""
+    chosen = (unit.part("selection") or {}).get("rating_kva") or unit.results.get("installed_kva")
+    index = ratings.index(chosen) if chosen in ratings else len(ratings) // 2
+    return [index - 1, index] if index > 0 else [index]
 
 
-def _key(m: Material, ax: Any, classes: int) -> None:
-    labels = [*m.t.entry(f"figure.{NAME}.steps"), m.t(f"figure.{NAME}.below")]
-    tones = [*STEPS, (0.0, "#ffffff", "")]
-    height = classes / 8.0
-    for place, (label, (_, tone, hatch)) in enumerate(zip(labels, tones, strict=True)):
-        y = 0.1 * classes + place * 1.15 * height
-        ax.fill_between(
-            [24.8, 25.8],
-            y,
-            y + 0.8 * height,
-            facecolor=tone,
-            edgecolor="#555555",
-            hatch=hatch or None,
-            linewidth=0.4,
-            clip_on=False,
-        )
-        ax.text(26.1, y + 0.4 * height, label, va="center", ha="left", color=INK, clip_on=False)
+def _array(values: Any) -> NDArray[np.float64]:
+    return np.array(values, dtype=np.float64)
+
+
+def _states(probability: NDArray[np.float64], floor: NDArray[np.float64]) -> NDArray[np.int64]:
+    state = np.full(probability.shape, len(STEPS) - 1, dtype=np.int64)
+    for index in reversed(range(len(STEPS))):
+        state[probability >= STEPS[index][0]] = index
+    state[probability < floor] = RARE
+    state[~np.isfinite(probability)] = UNSEEN
+    return state
+
+
+def _runs(row: NDArray[np.int64]) -> Iterator[tuple[int, int, int]]:
+    """State, first place and length of each run of equal states."""
+    edges = np.flatnonzero(np.diff(row)) + 1
+    for first, last in zip(np.append(0, edges), np.append(edges, row.size), strict=True):
+        yield int(row[first]), int(first), int(last - first)
+
+
+def _panel(m: Material, ax: Any, states: NDArray[np.int64], names: Sequence[str] | None) -> None:
+    length_h = m.interval_min / 60.0
+    for y, row in enumerate(states):
+        for state, first, count in _runs(row):
+            tone, hatch = LOOKS[state]
+            ax.broken_barh(
+                [(first * length_h, count * length_h)],
+                (y + 0.04, 0.92),
+                facecolor=tone,
+                edgecolor="#4a4a4a" if hatch else "none",
+                hatch=hatch or None,
+                linewidth=0.0,
+            )
+    ax.set_ylim(len(states), 0)
+    clock_axis(ax, last=False)
+    ax.set_yticks(np.arange(len(states)) + 0.5, names if names is not None else [""] * len(states))
+    ax.tick_params(axis="y", length=0)
+    for side in ("left", "right", "top", "bottom"):
+        ax.spines[side].set_visible(True)
+        ax.spines[side].set_color(GREY)
+
+
+def _key(m: Material, fig: Any, states: set[int], floor: NDArray[np.float64]) -> None:
+    height = 25.4 * float(fig.get_size_inches()[1])
+    ax = axes_mm(fig, 133.0, 0.0, 0.0, 0.0)
+    ax.set_xlim(0, 33)
+    ax.set_ylim(height, 0)
+    ax.axis("off")
+    seen = floor[np.isfinite(floor)]
+    labels = [
+        *m.t.entry(f"figure.{NAME}.steps"),
+        m.t(f"figure.{NAME}.rare", floor=m.n.percent(float(seen.max()) if seen.size else None, 1)),
+        m.t(f"figure.{NAME}.unseen"),
+    ]
+    y = 9.0
+    for state in sorted(states):
+        tone, hatch = LOOKS[state]
+        ax.broken_barh([(0, 4)], (y, 3.2), facecolor=tone, edgecolor="#4a4a4a", hatch=hatch or None, linewidth=0.4)
+        ax.text(5.2, y + 1.6, labels[state], va="center", ha="left", linespacing=1.1)
+        y += 5.0 + 3.0 * labels[state].count("\n")
+
+
+def _alt(
+    m: Material,
+    found: Mapping[str, Any],
+    index: int,
+    probability: NDArray[np.float64],
+    floor: NDArray[np.float64],
+    names: Sequence[str],
+) -> str:
+    block, interval = np.unravel_index(int(np.nanargmax(probability)), probability.shape)
+    states = _states(probability, floor)
+    starts = int(interval) * m.interval_min
+    return m.t(
+        f"figure.{NAME}.alt",
+        rating=m.kva(found["ratings_kva"][index]),
+        highest=m.n.probability(float(probability[block, interval]), float(floor[block, interval])),
+        where=f"{names[int(block)]}, {starts // 60:02d}:{starts % 60:02d}",
+        above=int((states <= 1).sum()),
+        all=int((states != UNSEEN).sum()),
+    )

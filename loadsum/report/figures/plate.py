@@ -2,6 +2,7 @@
 
 import functools
 import io
+import math
 from collections.abc import Iterator
 from contextlib import contextmanager
 from dataclasses import dataclass
@@ -18,8 +19,16 @@ WIDTH_MM = 166.0
 INK = "#111111"
 GREY = "#6b6b6b"
 PALE = "#d9d9d9"
-# Okabe and Ito's palette, told apart in grey by line style and width.
+DOTTED = (0, (1, 1.6))
+# Okabe and Ito's palette; in grey the lines are told apart by their dashes.
 BLUE, ORANGE, GREEN, PURPLE = "#0072b2", "#d55e00", "#009e73", "#cc79a7"
+# One look for each model wherever it is drawn: colour, dashes, width.
+MODELS: dict[str, tuple[str, Any, float]] = {
+    "adopted": (INK, "solid", 1.7),
+    "normal": (BLUE, (0, (7, 2)), 1.0),
+    "independent": (ORANGE, (0, (2.2, 1.3)), 1.1),
+    "normal_independent": (GREEN, (0, (7, 1.6, 1.2, 1.6)), 0.9),
+}
 
 SETTINGS: Any = {
     "font.family": [TEXT_FAMILY, FALLBACK_FAMILY],
@@ -37,12 +46,17 @@ SETTINGS: Any = {
     "ytick.major.width": 0.5,
     "xtick.minor.width": 0.3,
     "ytick.minor.width": 0.3,
+    "xtick.major.size": 2.5,
+    "ytick.major.size": 2.5,
+    "xtick.minor.size": 1.5,
+    "ytick.minor.size": 1.5,
     "lines.linewidth": 1.0,
     "hatch.linewidth": 0.4,
     "svg.fonttype": "none",
     "svg.hashsalt": "loadsum",
     "axes.unicode_minus": True,
     "path.simplify": True,
+    "text.parse_math": False,
 }
 
 
@@ -86,11 +100,38 @@ def plate(height_mm: float, width_mm: float = WIDTH_MM) -> Iterator[Figure]:
 
 
 def axes_mm(figure: Figure, left: float, bottom: float, right: float, top: float, **options: Any) -> Axes:
-    """Axes with margins to the edges of the figure. [mm]"""
+    """Axes with margins to the edges of the figure; fixed margins need no trial layout. [mm]"""
     width, height = (25.4 * float(side) for side in figure.get_size_inches())
     return figure.add_axes(
         (left / width, bottom / height, (width - left - right) / width, (height - bottom - top) / height), **options
     )
+
+
+def clock_axis(ax: Any, *, last: bool = True) -> None:
+    """Hours of the day along the bottom; ``last`` labels midnight at the right end as well."""
+    ax.set_xlim(0, 24)
+    ax.set_xticks(range(0, 25, 6), [f"{h:02d}:00" if h < 24 or last else "" for h in range(0, 25, 6)])
+
+
+def decades(ax: Any, axis: str, lowest: float, highest: float, text: Any) -> None:
+    """A logarithmic axis with its decades labelled by ``text``."""
+    first, last = _decade(lowest, up=True), _decade(highest, up=False)
+    places = [10.0**power for power in range(first, last + 1)]
+    labels = [text(place) for place in places]
+    if axis == "x":
+        ax.set_xscale("log")
+        ax.set_xticks(places, labels)
+        ax.set_xticks([], minor=True)
+    else:
+        ax.set_yscale("log")
+        ax.set_yticks(places, labels)
+        ax.set_yticks([], minor=True)
+
+
+def _decade(value: float, *, up: bool) -> int:
+
+    power = math.log10(value)
+    return math.ceil(power - 1e-9) if up else math.floor(power + 1e-9)
 
 
 def svg(figure: Figure) -> bytes:

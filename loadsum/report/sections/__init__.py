@@ -2,13 +2,15 @@
 
 from collections.abc import Callable, Sequence
 
-from loadsum.report.material import Material, Section
-from loadsum.report.sections import data, demand, first_page, foundations, ratings, sign_off
+from loadsum.report.material import Material, Section, Unit
+from loadsum.report.sections import data, demand, first_page, foundations, overview, ratings, sign_off
 
-SECTIONS: Sequence[Callable[[Material], Section | None]] = (
+OF_A_TRANSFORMER: Sequence[Callable[[Material, Unit], Section | None]] = (
     ratings.section,
     demand.map_section,
     demand.curve_section,
+)
+OF_THE_STUDY: Sequence[Callable[[Material], Section | None]] = (
     data.section,
     foundations.method_section,
     foundations.assumptions_section,
@@ -20,9 +22,27 @@ SECTIONS: Sequence[Callable[[Material], Section | None]] = (
 )
 
 
-def sections(material: Material) -> tuple[Section, ...]:
-    """Every section that the results can fill."""
-    return tuple(s for s in (make(material) for make in SECTIONS) if s is not None)
+def sections(m: Material, units: Sequence[Unit]) -> tuple[Section, ...]:
+    """Every section that the results can fill.
+
+    Parameters
+    ----------
+    m : Material
+        Results and words.
+    units : sequence of Unit
+        Transformers that get sections of their own; with several in the study each gets one with parts.
+    """
+    made: list[Section | None] = []
+    if len(m.units) > 1:
+        made.append(overview.section(m))
+    for unit in units:
+        parts = [part for part in (make(m, unit) for make in OF_A_TRANSFORMER) if part is not None]
+        if unit.several:
+            made.append(overview.unit_section(m, unit, parts))
+        else:
+            made.extend(parts)
+    made.extend(make(m) for make in OF_THE_STUDY)
+    return tuple(section for section in made if section is not None)
 
 
 __all__ = ["first_page", "sections"]

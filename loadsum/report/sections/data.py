@@ -3,14 +3,14 @@
 from typing import Any
 
 from loadsum.report.material import Material, Section
-from loadsum.report.sections.first_page import coverage
+from loadsum.report.sections.first_page import all_customers, coverage
 
 LONGEST_TABLE = 24
 
 
 def section(m: Material) -> Section | None:
     """Customers, findings and coverage; long tables are cut and said to be in the attachment."""
-    customers, findings = m.rows("customers"), m.rows("findings")
+    customers, findings = all_customers(m), m.rows("findings")
     if not customers and not findings:
         return None
     content: dict[str, Any] = {
@@ -44,4 +44,4 @@ def section(m: Material) -> Section | None:
         "more_findings": max(len(findings) - LONGEST_TABLE, 0),
         "excluded": m.n.fixed(sum(row.get("excluded") or 0 for row in findings)),
     }
-    return Section(anchor="data", title=m.t("section.data"), content=content)
+    return Section(block="data", title=m.t("section.data"), content=content, figures=("quality-calendar",))

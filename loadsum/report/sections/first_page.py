@@ -1,11 +1,14 @@
 """Page 1: what was asked, what was found, what to do, what it rests on."""
 
-from collections.abc import Mapping
+from collections.abc import Mapping, Sequence
 from typing import Any
 
-from loadsum.report.material import Material
+from loadsum.report.material import Material, Unit
 from loadsum.report.notation import NO_BREAK
-from loadsum.report.sections.verdict import exceedance_of, verdict
+from loadsum.report.sections.overview import table
+from loadsum.report.sections.verdict import needs_attention, verdict
+
+MOST_ON_FIRST_PAGE = 8
 
 
 def content(m: Material) -> dict[str, Any]:
@@ -13,8 +16,8 @@ def content(m: Material) -> dict[str, Any]:
     return {
         "facts": _facts(m),
         "question": m.study.get("question") or m.t("first_page.no_question"),
-        "findings": [_finding(m, transformer) for transformer in m.transformers[:6]],
-        "more": _more(m),
+        "finding": _finding(m, m.units[0]) if len(m.units) == 1 else None,
+        "overview": _overview(m) if len(m.units) > 1 else None,
         "coverage": coverage(m),
         "rests_on": _rests_on(m),
         "warnings": _warnings(m),
@@ -32,29 +35,43 @@ def _facts(m: Material) -> list[tuple[str, str]]:
     ]
 
 
-def _finding(m: Material, transformer: Mapping[str, Any]) -> dict[str, Any]:
-    found = verdict(m, transformer)
-    lines = [found.sentence, *found.reasons]
+def _finding(m: Material, unit: Unit) -> dict[str, Any]:
+    found = verdict(m, unit)
+    reason = unit.results.get("reason")
     return {
-        "id": transformer.get("id") or "",
         "rating": found.headline,
-        "lines": lines,
+        "lines": [reason] if reason else [found.sentence, *found.reasons],
         "action": found.action,
-        "chosen": exceedance_of(transformer, found.rating_kva) is not None,
     }
 
 
-def _more(m: Material) -> str:
-    rest = len(m.transformers) - 6
-    return m.t("first_page.more_transformers", count=rest) if rest > 0 else ""
+def _overview(m: Material) -> dict[str, Any]:
+    """How many transformers need attention, and the first of them."""
+    units = [unit for unit in m.units if needs_attention(unit)]
+    return {
+        "headline": m.t("first_page.of_units", count=len(units), all=len(m.units)),
+        "rows": table(m, units[:MOST_ON_FIRST_PAGE]),
+        "more": m.t("first_page.more_units", count=len(units) - MOST_ON_FIRST_PAGE)
+        if len(units) > MOST_ON_FIRST_PAGE
+        else "",
+    }
+
+
+def all_customers(m: Material) -> Sequence[Mapping[str, Any]]:
+    """Customers of every transformer, each once."""
+    listed = list(m.rows("customers"))
+    if not listed:
+        for unit in m.units:
+            listed.extend(unit.rows("customers"))
+    return list({str(row.get("id")): row for row in listed}.values())
 
 
 def coverage(m: Material) -> str:
     """Whose readings, from when to when, and what part of the year they speak for."""
-    c = m.part("coverage")
+    c = m.part("coverage") or _worst_coverage(m)
     if not c:
         return m.t("first_page.no_coverage")
-    metered = [row for row in m.rows("customers") if row.get("readings")]
+    metered = [row for row in all_customers(m) if row.get("readings")]
     text = m.t(
         "first_page.coverage",
         customers=len(metered),
@@ -72,12 +89,18 @@ def coverage(m: Material) -> str:
     return text
 
 
+def _worst_coverage(m: Material) -> Mapping[str, Any] | None:
+    """Coverage of the transformer with the least of it."""
+    found = [unit.part("coverage") for unit in m.units if unit.part("coverage")]
+    return min(found, key=lambda c: c.get("covered_hours") or 0.0) if found else None
+
+
 def _rests_on(m: Material) -> list[str]:
     lines = [m.t("first_page.model", interval=f"{m.interval_min}{NO_BREAK}min")]
     count = len(m.rows("assumptions"))
     if count:
         lines.append(m.t("first_page.assumptions", count=count))
-    if m.part("evidence") is None:
+    if not any(unit.part("evidence") for unit in m.units):
         lines.append(m.t("first_page.no_hold_out"))
     return lines
 

@@ -12,7 +12,7 @@ def method_section(m: Material) -> Section:
         m.t(f"method.{name}", interval=f"{m.interval_min}{NO_BREAK}min", seed=m.results.get("seed"))
         for name in m.t.entry("method_order")
     ]
-    return Section(anchor="method", title=m.t("section.method"), content={"paragraphs": paragraphs})
+    return Section(block="method", title=m.t("section.method"), content={"paragraphs": paragraphs})
 
 
 def assumptions_section(m: Material) -> Section | None:
@@ -32,7 +32,7 @@ def assumptions_section(m: Material) -> Section | None:
             for row in rows
         ]
     }
-    return Section(anchor="assumptions", title=m.t("section.assumptions"), content=content)
+    return Section(block="assumptions", title=m.t("section.assumptions"), content=content)
 
 
 def _value(m: Material, row: Any) -> str:
@@ -50,7 +50,7 @@ def cautions_section(m: Material) -> Section:
         for item in m.t.entry("caution")
     ]
     return Section(
-        anchor="cautions",
+        block="cautions",
         title=m.t("section.cautions"),
         content={"items": items, "region": m.t.name("region", region.replace(" ", "_"))},
     )
@@ -61,11 +61,11 @@ def unchecked_section(m: Material) -> Section:
     items = list(m.t.entry("unchecked.always"))
     items += [m.t(f"unchecked.{part}") for part in m.t.entry("unchecked.parts") if not _present(m, part)]
     items += [str(text) for text in m.results.get("not_checked") or ()]
-    return Section(anchor="unchecked", title=m.t("section.unchecked"), content={"items": items})
+    return Section(block="unchecked", title=m.t("section.unchecked"), content={"items": items})
 
 
 def _present(m: Material, part: str) -> bool:
-    return bool(m.part(part)) or any(t.get(part) for t in m.transformers)
+    return bool(m.part(part)) or any(unit.part(part) for unit in m.units)
 
 
 def inputs_section(m: Material) -> Section | None:
@@ -88,7 +88,7 @@ def inputs_section(m: Material) -> Section | None:
         "versions": sorted((program.get("dependencies") or {}).items()),
         "seed": m.results.get("seed"),
     }
-    return Section(anchor="inputs", title=m.t("section.inputs"), content=content)
+    return Section(block="inputs", title=m.t("section.inputs"), content=content)
 
 
 def references_section(m: Material) -> Section | None:
@@ -105,4 +105,4 @@ def references_section(m: Material) -> Section | None:
             for row in rows
         ]
     }
-    return Section(anchor="references", title=m.t("section.references"), content=content)
+    return Section(block="references", title=m.t("section.references"), content=content)

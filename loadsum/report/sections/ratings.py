@@ -1,26 +1,25 @@
 """The ratings compared: hours, probability, criteria, margins."""
 
-from collections.abc import Mapping
 from typing import Any
 
-from loadsum.report.material import Material, Section
+from loadsum.report.material import Material, Section, Unit
 from loadsum.report.sections.verdict import exceedance_rows
 
 
-def section(m: Material) -> Section | None:
-    """Table of ratings and table of criteria for each transformer."""
-    tables = [_transformer(m, transformer) for transformer in m.transformers if exceedance_rows(transformer)]
-    if not tables:
+def section(m: Material, unit: Unit) -> Section | None:
+    """Table of ratings and table of criteria of one transformer."""
+    if not exceedance_rows(unit.results):
         return None
     return Section(
-        anchor="ratings",
+        block="ratings",
+        unit=unit.index if unit.several else -1,
         title=m.t("section.ratings"),
-        content={"transformers": tables, "several": len(m.transformers) > 1},
+        content=_tables(m, unit),
     )
 
 
-def _transformer(m: Material, transformer: Mapping[str, Any]) -> dict[str, Any]:
-    selection = transformer.get("selection") or {}
+def _tables(m: Material, unit: Unit) -> dict[str, Any]:
+    selection = unit.part("selection") or {}
     chosen = selection.get("rating_kva")
     rows = [
         {
@@ -34,7 +33,7 @@ def _transformer(m: Material, transformer: Mapping[str, Any]) -> dict[str, Any]:
             "where": m.hour_class(row.get("highest_at")),
             "normal": _factor(m, row.get("normal_factor")),
         }
-        for row in exceedance_rows(transformer)
+        for row in exceedance_rows(unit.results)
     ]
     criteria = [
         {
@@ -55,7 +54,7 @@ def _transformer(m: Material, transformer: Mapping[str, Any]) -> dict[str, Any]:
         }
         for criterion in selection.get("criteria") or ()
     ]
-    return {"id": transformer.get("id") or "", "rows": rows, "criteria": criteria}
+    return {"rows": rows, "criteria": criteria}
 
 
 def _factor(m: Material, factor: float | None) -> str:

@@ -49,4 +49,4 @@ def section(m: Material) -> Section:
         }
         for entry in history
     ]
-    return Section(anchor="sign-off", title=m.t("section.sign_off"), content={"rows": rows, "revisions": revisions})
+    return Section(block="sign-off", title=m.t("section.sign_off"), content={"rows": rows, "revisions": revisions})

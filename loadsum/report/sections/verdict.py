@@ -4,7 +4,7 @@ from collections.abc import Mapping, Sequence
 from dataclasses import dataclass
 from typing import Any
 
-from loadsum.report.material import Material
+from loadsum.report.material import Material, Unit
 from loadsum.report.notation import NO_BREAK
 
 
@@ -24,6 +24,8 @@ class Verdict:
         Probability, hours, what governs.
     action : str
         What to do.
+    hours : float or None
+        Expected hours above the loading allowed of the rating. [h]
     """
 
     headline: str
@@ -31,31 +33,41 @@ class Verdict:
     sentence: str
     reasons: tuple[str, ...]
     action: str
+    hours: float | None
 
 
-def exceedance_rows(transformer: Mapping[str, Any]) -> Sequence[Mapping[str, Any]]:
+def exceedance_rows(results: Mapping[str, Any]) -> Sequence[Mapping[str, Any]]:
     """Exceedance by rating."""
-    return transformer.get("exceedance") or ()
+    return results.get("exceedance") or ()
 
 
-def exceedance_of(transformer: Mapping[str, Any], rating_kva: float | None) -> Mapping[str, Any] | None:
+def exceedance_of(results: Mapping[str, Any], rating_kva: float | None) -> Mapping[str, Any] | None:
     """Exceedance of one rating's allowed loading; None where it is not among the results."""
-    for row in exceedance_rows(transformer):
+    for row in exceedance_rows(results):
         if rating_kva is not None and row.get("rating_kva") == rating_kva:
             return row
     return None
 
 
-def verdict(m: Material, transformer: Mapping[str, Any]) -> Verdict:
+def needs_attention(unit: Unit) -> bool:
+    """Whether a transformer of several gets a section of its own: no verdict, or another rating than the one there."""
+    if unit.results.get("reason"):
+        return True
+    selection = unit.part("selection") or {}
+    rating, installed = selection.get("rating_kva"), unit.results.get("installed_kva")
+    return selection.get("verdict") != "chosen" or not installed or (rating or 0.0) > installed
+
+
+def verdict(m: Material, unit: Unit) -> Verdict:
     """The verdict on one transformer in words."""
-    selection = transformer.get("selection") or {}
+    selection = unit.part("selection") or {}
     kind = selection.get("verdict") or "no criterion"
     rating = selection.get("rating_kva")
     key = kind.replace(" ", "_").replace(",", "")
-    headline = m.kva(rating) if rating is not None else m.t(f"verdict.{key}.headline")
-    row = exceedance_of(transformer, rating)
+    row = exceedance_of(unit.results, rating)
     reasons = []
     if row is not None:
+        minutes = f"{m.interval_min}{NO_BREAK}min"
         reasons.append(
             m.t(
                 "first_page.hours",
@@ -63,7 +75,7 @@ def verdict(m: Material, transformer: Mapping[str, Any]) -> Verdict:
                 of=m.t.name("loading", str(row.get("of"))),
                 hours=m.hours(row.get("hours_per_year")),
                 interval=m.between(row.get("hours_low"), row.get("hours_high"), m.hours),
-                minutes=f"{m.interval_min}{NO_BREAK}min",
+                minutes=minutes,
             )
         )
         reasons.append(
@@ -71,13 +83,14 @@ def verdict(m: Material, transformer: Mapping[str, Any]) -> Verdict:
                 "first_page.highest",
                 probability=m.n.probability(row.get("highest_probability"), row.get("floor")),
                 where=m.hour_class(row.get("highest_at")),
-                minutes=f"{m.interval_min}{NO_BREAK}min",
+                minutes=minutes,
             )
         )
     return Verdict(
-        headline=headline,
+        headline=m.kva(rating) if rating is not None else m.t(f"verdict.{key}.headline"),
         rating_kva=rating,
         sentence=m.t(f"verdict.{key}.sentence", rating=m.kva(rating)),
         reasons=tuple(reasons),
         action=m.t(f"verdict.{key}.action", rating=m.kva(rating)),
+        hours=row.get("hours_per_year") if row is not None else None,
     )
