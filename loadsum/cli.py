@@ -29,7 +29,7 @@ def parser() -> argparse.ArgumentParser:
     """The arguments of every command."""
     top = argparse.ArgumentParser(
         prog="loadsum",
-        description="From metered load profiles to the probability and the expected hours above each transformer rating.",
+        description="From metered load profiles to the probability and expected hours above each transformer rating.",
         epilog=EPILOG,
         formatter_class=argparse.RawDescriptionHelpFormatter,
     )
