@@ -4,6 +4,7 @@ import logging
 import platform
 from importlib import metadata
 from pathlib import Path
+from typing import Any
 
 from loadsum import __version__
 from loadsum.demand.hourly import group_demand
@@ -11,7 +12,9 @@ from loadsum.demand.settings import ModelSettings
 from loadsum.intake.hourclass import calendar, day_blocks
 from loadsum.intake.load import Loaded, load_readings
 from loadsum.progress import Progress
-from loadsum.report import document
+from loadsum.report import document, figures
+from loadsum.report.archive import RESULTS_FILE, STUDY_FILE, Attachment
+from loadsum.report.csvtables import csv_table
 from loadsum.report.outputs import write_outputs
 from loadsum.report.results import SCHEMA_VERSION, Program, StudyResults, TransformerResults, encode, to_json
 from loadsum.report.tables import coverage, curve, curve_levels, customer_rows, exceedance_rows, hour_rows
@@ -36,10 +39,50 @@ def study(path: Path, *, out: Path, progress: Progress) -> str:
     progress("reading the study file", 0.0)
     asked = load_study(path)
     results = encode(compute(asked, path.parent, progress=progress))
-    progress("drawing the report", 0.85)
-    text = to_json(results)
-    write_outputs(out, {"results.json": text.encode(), "report.pdf": document.render(results)})
+    progress("drawing the report", 0.8)
+    write_outputs(out, outputs(results, path.read_bytes()))
     return f"report: {out / 'report.pdf'}"
+
+
+def outputs(results: dict[str, Any], study_file: bytes) -> dict[str, bytes]:
+    """Everything that a study leaves behind, by name relative to its folder."""
+    tables = {
+        RESULTS_FILE: to_json(results).encode(),
+        "hours.csv": csv_table(
+            [{"transformer": unit["id"], **row} for unit in results["transformers"] for row in unit["hours"]]
+        ),
+        "findings.csv": csv_table(results["findings"]),
+    }
+    attached = [
+        Attachment(name=STUDY_FILE, content=study_file, description="Study file", relationship="Source"),
+        Attachment(name=RESULTS_FILE, content=tables[RESULTS_FILE], description="Results"),
+        Attachment(
+            name="hours.csv", content=tables["hours.csv"], description="Demand in every interval of every class"
+        ),
+        Attachment(name="findings.csv", content=tables["findings.csv"], description="Findings on the readings"),
+    ]
+    drawn = {f"figures/{name}": content for name, content in figures.draw(results).items()}
+    return {"report.pdf": document.render(results, attachments=attached), **tables, **drawn}
+
+
+def inspect(path: Path, *, out: Path | None, progress: Progress) -> str:
+    """Read the meter files of a study and tell every finding; writes findings.csv where a folder is given."""
+    progress("reading meter files", 0.1)
+    asked = load_study(path)
+    loaded = load_readings(asked, path.parent)
+    rows = encode(loaded.readings.findings)
+    if out is not None:
+        write_outputs(out, {"findings.csv": csv_table(rows)})
+    used = loaded.readings.rows_in - sum(row["excluded"] for row in rows)
+    lines = [f"{loaded.readings.rows_in} readings of {len(loaded.readings.customers)} customers, {used} used"]
+    for file in loaded.inputs:
+        lines.append(f"{file.name}: {file.format}, {file.layout}; {'; '.join(file.choices)}")
+    for row in rows:
+        place = ", ".join(part for part in (row["customer"], row["place"]) if part)
+        lines.append(
+            f"{row['severity']}: {row['rule']}{f' ({place})' if place else ''}: {row['message']}. {row['effect']}".rstrip()
+        )
+    return "\n".join(lines)
 
 
 def compute(asked: Study, folder: Path, *, progress: Progress) -> StudyResults:
