@@ -7,7 +7,7 @@ from pathlib import Path
 from typing import Any
 
 from loadsum import __version__
-from loadsum.demand.hourly import group_demand
+from loadsum.demand.group import group_demand
 from loadsum.demand.settings import ModelSettings
 from loadsum.intake.hourclass import calendar, day_blocks
 from loadsum.intake.load import Loaded, load_readings

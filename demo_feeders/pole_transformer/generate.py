@@ -45,7 +45,9 @@ def temperature(hours: int, rng: np.random.Generator) -> np.ndarray:
     return season + daily + np.interp(hour / 24, np.arange(fronts.size), fronts)
 
 
-def home(name: str, local: list[dt.datetime], outdoor: np.ndarray, mood: np.ndarray, rng: np.random.Generator) -> np.ndarray:
+def home(
+    name: str, local: list[dt.datetime], outdoor: np.ndarray, mood: np.ndarray, rng: np.random.Generator
+) -> np.ndarray:
     """Hourly energy of one home. [kWh]"""
     base, heating, cooling, morning, evening, peak, washing = HOMES[name]
     hours = len(local)

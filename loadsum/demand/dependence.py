@@ -1,34 +1,121 @@
-"""The common component: the part of demand that moves all customers together."""
+"""The common component: the part of demand that moves all customers together.
+
+Covariance between customers is the variance of their observed sum less the sum of their variances. It is noisy hour by
+hour, so it is turned into a mean correlation, smoothed along the day, and turned back.
+"""
+
+from dataclasses import dataclass
 
 import numpy as np
 from numpy.typing import NDArray
 
 
-def common_variance(kw: NDArray[np.float64], neighbours: int) -> NDArray[np.float64]:
-    """Covariance between customers summed over all pairs, for each interval of the day.
+@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
+class CommonComponent:
+    """Dependence between the customers of a group on one class of days.
 
-    The variance of the observed sum less the sum of the customers' variances, smoothed over neighbouring
-    intervals and then floored at zero.
+    Parameters
+    ----------
+    observed_variance_kw2 : (I,) float64
+        Variance of the observed time-aligned sum. [kW²]
+    independent_variance_kw2 : (I,) float64
+        Sum of the customers' variances. [kW²]
+    pairs_kw2 : (I,) float64
+        Products of the standard deviations of two customers, summed over all ordered pairs. [kW²]
+    correlation : (I,) float64
+        Mean correlation between customers, smoothed along the day; negative values as found. [-]
+    days : (I,) int64
+        Days on which every customer has a reading. [d]
+    """
+
+    observed_variance_kw2: NDArray[np.float64]
+    independent_variance_kw2: NDArray[np.float64]
+    pairs_kw2: NDArray[np.float64]
+    correlation: NDArray[np.float64]
+    days: NDArray[np.int64]
+
+    def __post_init__(self) -> None:
+        for array in (self.observed_variance_kw2, self.independent_variance_kw2, self.pairs_kw2, self.correlation):
+            array.flags.writeable = False
+        self.days.flags.writeable = False
+
+
+def common_component(kw: NDArray[np.float64], reach: float) -> CommonComponent:
+    """Covariance of time-aligned readings, as a mean correlation smoothed along the day.
 
     Parameters
     ----------
     kw : (C, D, I) float64
-        Time-aligned readings; rows of days with a missing customer are left out. [kW]
+        Readings; days on which a customer is missing are left out of the variance of the sum. [kW]
+    reach : float
+        Standard deviation of the smoothing along the day; 0 for none. [intervals]
+    """
+    intervals = kw.shape[2]
+    total, single, pairs = (np.zeros(intervals) for _ in range(3))
+    days = np.zeros(intervals, dtype=np.int64)
+    for i in range(intervals):
+        whole = kw[:, np.isfinite(kw[:, :, i]).all(axis=0), i]
+        days[i] = whole.shape[1]
+        if days[i] >= 2:
+            own = whole.var(axis=1, ddof=1)
+            total[i], single[i] = whole.sum(axis=0).var(ddof=1), own.sum()
+            pairs[i] = np.sqrt(own).sum() ** 2 - own.sum()
+    weight = smoothing_weights(intervals, reach)
+    smooth_pairs = weight @ pairs
+    smooth_covariance = weight @ (total - single)
+    correlation = np.divide(smooth_covariance, smooth_pairs, out=np.zeros(intervals), where=smooth_pairs > 0.0)
+    return CommonComponent(
+        observed_variance_kw2=total,
+        independent_variance_kw2=single,
+        pairs_kw2=pairs,
+        correlation=correlation,
+        days=days,
+    )
+
+
+def smoothing_weights(intervals: int, reach: float) -> NDArray[np.float64]:
+    """Weights of a normal kernel around the clock, each row summing to one, (I, I) float64. [-]"""
+    if reach <= 0.0:
+        return np.eye(intervals)
+    apart = np.abs(np.subtract.outer(np.arange(intervals), np.arange(intervals)))
+    apart = np.minimum(apart, intervals - apart)
+    weight = np.exp(-0.5 * (apart / reach) ** 2)
+    return np.asarray(weight / weight.sum(axis=1, keepdims=True), dtype=np.float64)
+
+
+def group_movement(sums_kw: NDArray[np.float64], interval: int, neighbours: int) -> NDArray[np.float64]:
+    """The group's own movement from day to day, standardised: its shape without its size.
+
+    Parameters
+    ----------
+    sums_kw : (D, I) float64
+        Observed time-aligned sums; NaN where a customer is missing. [kW]
+    interval : int
+        Interval of the day. [-]
     neighbours : int
-        Intervals on each side over which the covariance is averaged. [-]
+        Intervals on each side whose movement is pooled. [-]
 
     Returns
     -------
-    (I,) float64
-        Variance of the common component. [kW²]
+    (n,) float64
+        Zero mean, unit variance; a single 0 where there is no movement. [-]
     """
-    intervals = kw.shape[2]
-    covariance = np.zeros(intervals)
-    for i in range(intervals):
-        whole = kw[:, np.isfinite(kw[:, :, i]).all(axis=0), i]
-        if whole.shape[1] >= 2:
-            covariance[i] = whole.sum(axis=0).var(ddof=1) - whole.var(axis=1, ddof=1).sum()
-    smoothed = np.zeros(intervals)
-    for shift in range(-neighbours, neighbours + 1):
-        smoothed += np.roll(covariance, shift) / (2 * neighbours + 1)
-    return np.maximum(smoothed, 0.0)
+    intervals = sums_kw.shape[1]
+    moved = []
+    for step in range(-neighbours, neighbours + 1):
+        column = sums_kw[:, (interval + step) % intervals]
+        column = column[np.isfinite(column)]
+        spread = column.std() if column.size >= 3 else 0.0
+        if spread > 0.0:
+            moved.append((column - column.mean()) / spread)
+    return np.concatenate(moved) if moved else np.zeros(1)
+
+
+def kernel_bandwidth(shape: NDArray[np.float64]) -> float:
+    """Width of the smoothing kernel for a standardised shape of n values (Silverman's rule, 0.9 n^(-1/5)). [-]
+
+    References
+    ----------
+    .. [1] Silverman, Density Estimation for Statistics and Data Analysis, 1986, eq. 3.31 (from memory).
+    """
+    return 0.9 * float(shape.size) ** -0.2 if shape.size > 1 else 0.0

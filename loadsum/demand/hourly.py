@@ -1,21 +1,22 @@
 """The distribution of the coincident demand in each demand interval: what the later stages ask."""
 
-from collections.abc import Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from typing import Literal
 
 import numpy as np
 from numpy.typing import NDArray
 from scipy.stats import norm
 
-from loadsum.demand.convolution import sum_distribution
-from loadsum.demand.dependence import common_variance
-from loadsum.demand.lattice import LatticeMass, lattice_mass
+from loadsum.demand.convolution import BracketedSum, DemandSum
+from loadsum.demand.lattice import LatticeMass, kernel_mass, normal_mass
 from loadsum.demand.probability import Probability
 from loadsum.demand.settings import ModelSettings
+from loadsum.demand.temperature import TemperatureResponse
 from loadsum.intake.hourclass import DayBlock
 
 Direction = Literal["both", "delivered", "exported"]
+
+DEEP = 1e-5  # below this the whole distribution is not accurate enough and the tail is computed at its own tilt
 
 
 @dataclass(frozen=True, slots=True, kw_only=True, eq=False)
@@ -31,11 +32,19 @@ class HourDemand:
     interval_min : int
         Demand interval. [min]
     n_days : int
-        Days of readings behind the distribution. [d]
-    rounded_down, rounded_up : LatticeMass
-        The distribution with every term rounded down and up; the truth lies between.
+        Days of readings behind the distribution: those of the customer with fewest. [d]
+    total : BracketedSum
+        The adopted model, mixed over the temperatures of the record, every term rounded down and up.
+    whole_down, whole_up : LatticeMass
+        The same as whole distributions.
+    still : BracketedSum
+        The adopted model without the terms that depend on the day's temperature.
+    response : TemperatureResponse or None
+        Response of the group to temperature; None where it is not in the model.
     independent : LatticeMass
-        Exact convolution of the customers as if independent, rounded up, for comparison.
+        Exact convolution of the customers' own readings as if independent, for comparison.
+    covariance_variance_kw2 : float
+        Variance of the observed sum, smoothed along the day, for the normal law with covariance. [kW²]
     power_factor : float
         Power factor of the group. [-]
     """
@@ -45,62 +54,130 @@ class HourDemand:
     interval: int
     interval_min: int
     n_days: int
-    rounded_down: LatticeMass
-    rounded_up: LatticeMass
+    total: BracketedSum
+    whole_down: LatticeMass
+    whole_up: LatticeMass
+    still: BracketedSum
+    response: TemperatureResponse | None
     independent: LatticeMass
+    covariance_variance_kw2: float
     power_factor: float
+
+    @property
+    def floor(self) -> float:
+        """Smallest probability that the record supports. [-]"""
+        return 1.0 / (self.n_days + 1)
 
     def mean_kw(self) -> float:
         """Mean coincident demand. [kW]"""
-        return 0.5 * (self.rounded_down.mean_kw() + self.rounded_up.mean_kw())
+        return 0.5 * (self.whole_down.mean_kw() + self.whole_up.mean_kw())
 
     def variance_kw2(self) -> float:
         """Variance of the coincident demand. [kW²]"""
-        return 0.5 * (self.rounded_down.central_moment(2) + self.rounded_up.central_moment(2))
+        return 0.5 * (self.whole_down.central_moment(2) + self.whole_up.central_moment(2))
 
     def skewness(self) -> float:
         """Skewness of the coincident demand; 0 for a constant. [-]"""
-        variance = self.rounded_up.central_moment(2)
-        return self.rounded_up.central_moment(3) / variance**1.5 if variance > 0.0 else 0.0
+        variance = self.whole_up.central_moment(2)
+        return self.whole_up.central_moment(3) / variance**1.5 if variance > 0.0 else 0.0
 
     def exceedance(self, level_kw: float) -> Probability:
         """Probability that demand is strictly above a level. [kW -> -]"""
-        return _between(self.rounded_down.above(level_kw), self.rounded_up.above(level_kw), self.n_days)
+        lower, upper = self.whole_down.above(level_kw), self.whole_up.above(level_kw)
+        if upper < DEEP:
+            lower, upper = self.total.above(level_kw)
+        return self._probability(lower, upper)
 
     def below(self, level_kw: float) -> Probability:
         """Probability that demand is strictly below a level. [kW -> -]"""
-        return _between(self.rounded_up.below(level_kw), self.rounded_down.below(level_kw), self.n_days)
+        lower, upper = self.whole_up.below(level_kw), self.whole_down.below(level_kw)
+        if upper < DEEP:
+            lower, upper = self.total.below(level_kw)
+        return self._probability(lower, upper)
 
     def quantile_kw(self, exceeded_with: float) -> float:
-        """Smallest lattice level that demand exceeds with at most the probability given. [kW]"""
-        tail = np.cumsum(self.rounded_up.mass[::-1])[::-1]
-        index = int(np.searchsorted(-np.append(tail[1:], 0.0), -exceeded_with, side="left"))
-        return float(self.rounded_up.points_kw[min(index, tail.size - 1)])
+        """Smallest lattice level that demand exceeds with at most the probability given. [- -> kW]"""
+        return float(self.quantiles_kw(np.array([exceeded_with]))[0])
+
+    def quantiles_kw(self, exceeded_with: NDArray[np.float64]) -> NDArray[np.float64]:
+        """Levels that demand exceeds with at most each probability, (n,) float64. [- -> kW]"""
+        above = np.append(np.cumsum(self.whole_up.mass[::-1])[::-1][1:], 0.0)
+        index = np.searchsorted(-above, -np.asarray(exceeded_with), side="left")
+        return self.whole_up.points_kw[np.minimum(index, above.size - 1)]
 
     def exceedance_kva(self, level_kva: float, direction: Direction = "both") -> Probability:
         """Probability that the apparent power of the group is strictly above a level. [kVA -> -]"""
         limit_kw = level_kva * self.power_factor
-        above, below = self.exceedance(limit_kw), self.below(-limit_kw)
-        parts = {"delivered": [above], "exported": [below], "both": [above, below]}[direction]
-        value = min(sum(p.value for p in parts), 1.0)
-        lower, upper = min(sum(p.lower for p in parts), value), max(min(sum(p.upper for p in parts), 1.0), value)
-        return Probability(value=value, lower=lower, upper=upper, floor=parts[0].floor)
+        parts = []
+        if direction != "exported":
+            parts.append(self.exceedance(limit_kw))
+        if direction != "delivered":
+            parts.append(self.below(-limit_kw))
+        lower, upper = (min(sum(end), 1.0) for end in ([p.lower for p in parts], [p.upper for p in parts]))
+        return self._probability(lower, upper)
 
     def mean_square_kva2(self) -> float:
         """Mean of the squared apparent power, which load losses go by. [kVA²]"""
         return (self.variance_kw2() + self.mean_kw() ** 2) / self.power_factor**2
+
+    def at_temperature(self, temperature_c: float) -> "HourDemand":
+        """The distribution on a day of a given lagged daily mean; itself where temperature plays no part."""
+        if self.response is None:
+            return self
+        at = np.array([temperature_c])
+        shift, spread = float(self.response.shift_kw(at)[0]), float(np.sqrt(self.response.shift_variance_kw2(at)[0]))
+        total = with_term(self.still, np.array([shift]), np.ones(1), spread)
+        return replace(self, total=total, whole_down=total.down.distribution(), whole_up=total.up.distribution())
 
     def independent_exceedance(self, level_kw: float) -> float:
         """Probability above a level if the customers were independent; for comparison only. [-]"""
         return self.independent.above(level_kw)
 
     def normal_exceedance(self, level_kw: float) -> float:
-        """Probability above a level by the normal law with the model's mean and variance; for comparison only. [-]"""
-        return float(norm.sf(level_kw, self.mean_kw(), np.sqrt(self.variance_kw2())))
+        """Probability above a level by the normal law with the covariance of the customers; for comparison only. [-]"""
+        return _normal_above(level_kw, self.independent.mean_kw(), self.covariance_variance_kw2)
 
     def normal_independent_exceedance(self, level_kw: float) -> float:
         """Probability above a level by the normal law of independent customers; for comparison only. [-]"""
-        return float(norm.sf(level_kw, self.independent.mean_kw(), np.sqrt(self.independent.central_moment(2))))
+        return _normal_above(level_kw, self.independent.mean_kw(), self.independent.central_moment(2))
+
+    def _probability(self, lower: float, upper: float) -> Probability:
+        upper = min(upper, 1.0)
+        lower = min(lower, upper)
+        return Probability(value=0.5 * (lower + upper), lower=lower, upper=upper, floor=self.floor)
+
+
+def _normal_above(level_kw: float, mean_kw: float, variance_kw2: float) -> float:
+    if variance_kw2 <= 0.0:
+        return float(mean_kw > level_kw)
+    return float(norm.sf(level_kw, mean_kw, np.sqrt(variance_kw2)))
+
+
+def with_term(
+    total: BracketedSum, centres_kw: NDArray[np.float64], weights: NDArray[np.float64], spread_kw: float
+) -> BracketedSum:
+    """A sum with one more independent term: a mixture of normal laws of one width, discretised outward."""
+    if spread_kw == 0.0 and np.all(centres_kw == 0.0):
+        return total
+    step = total.up.step_kw
+    down, up = (kernel_mass(centres_kw, weights, spread_kw, step, way) for way in ("down", "up"))
+    return BracketedSum(
+        down=DemandSum(terms=(*total.down.terms, down), counts=(*total.down.counts, 1)),
+        up=DemandSum(terms=(*total.up.terms, up), counts=(*total.up.counts, 1)),
+    )
+
+
+def with_normal(total: BracketedSum, spread_kw: float) -> BracketedSum:
+    """A sum with one more independent zero-mean normal term, discretised outward."""
+    if spread_kw == 0.0:
+        return total
+    step = total.up.step_kw
+    return BracketedSum(
+        down=DemandSum(
+            terms=(*total.down.terms, normal_mass(0.0, spread_kw, step, "down")), counts=(*total.down.counts, 1)
+        ),
+        up=DemandSum(terms=(*total.up.terms, normal_mass(0.0, spread_kw, step, "up")), counts=(*total.up.counts, 1)),
+    )
 
 
 @dataclass(frozen=True, slots=True, kw_only=True, eq=False)
@@ -130,74 +207,8 @@ class GroupDemand:
     def hours_in_year(self) -> NDArray[np.float64]:
         """Hours per average year of each interval of each block, (B, I) float64. [h]"""
         length = self.interval_min / 60.0
-        return np.array(
-            [[block.days_per_year * length] * len(row) for block, row in zip(self.blocks, self.hours, strict=True)]
-        )
+        return np.array([[block.days_per_year * length] * block.kw.shape[2] for block in self.blocks])
 
     def covered(self) -> NDArray[np.bool_]:
         """Whether each interval of each block has readings, (B, I) bool."""
         return np.array([[hour is not None for hour in row] for row in self.hours])
-
-
-def _between(lower: float, upper: float, n_days: int) -> Probability:
-    lower, upper = min(lower, 1.0), min(max(lower, upper), 1.0)
-    return Probability(value=upper, lower=lower, upper=upper, floor=1.0 / (n_days + 1))
-
-
-def group_demand(
-    blocks: Sequence[DayBlock], *, interval_min: int, power_factor: float, settings: ModelSettings
-) -> GroupDemand:
-    """Demand model of a group of metered customers.
-
-    Parameters
-    ----------
-    blocks : sequence of DayBlock
-        Readings of the group's customers.
-    interval_min : int
-        Demand interval. [min]
-    power_factor : float
-        Power factor of the group. [-]
-    settings : ModelSettings
-        Parts of the model that are on.
-    """
-    hours, sums = [], []
-    for block in blocks:
-        sums.append(block.kw.sum(axis=0))
-        variance = common_variance(block.kw, settings.neighbour_hours)
-        row: list[HourDemand | None] = []
-        for i in range(block.kw.shape[2]):
-            columns = [customer[np.isfinite(customer)] for customer in block.kw[:, :, i]]
-            if any(column.size == 0 for column in columns):
-                row.append(None)
-                continue
-            step = settings.lattice_kw or 0.01
-            spread = float(np.sqrt(variance[i])) if settings.common_component else 0.0
-            down, up = ([lattice_mass(column, step, way) for column in columns] for way in ("down", "up"))
-            independent = sum_distribution(up)
-            row.append(
-                HourDemand(
-                    season=block.season,
-                    day_type=block.day_type,
-                    interval=i,
-                    interval_min=interval_min,
-                    n_days=min(column.size for column in columns),
-                    rounded_down=sum_distribution([*down, _normal(spread, step, 0.0)]),
-                    rounded_up=sum_distribution([*up, _normal(spread, step, 1.0)]),
-                    independent=independent,
-                    power_factor=power_factor,
-                )
-            )
-        hours.append(tuple(row))
-    return GroupDemand(
-        interval_min=interval_min, blocks=tuple(blocks), hours=tuple(hours), sums_kw=tuple(sums), settings=settings
-    )
-
-
-def _normal(spread_kw: float, step_kw: float, shift: float) -> LatticeMass:
-    """Zero-mean normal term, its mass between lattice points moved down (shift 0) or up (shift 1)."""
-    reach = int(np.ceil(8.0 * spread_kw / step_kw))
-    if reach == 0:
-        return LatticeMass(step_kw=step_kw, offset=0, mass=np.ones(1))
-    edges = norm.cdf(np.arange(-reach, reach + 1) * step_kw / spread_kw)
-    mass = np.diff(edges)
-    return LatticeMass(step_kw=step_kw, offset=-reach + int(shift), mass=mass / mass.sum())

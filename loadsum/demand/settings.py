@@ -14,7 +14,9 @@ class ModelSettings:
     borrowed_days : float
         Weight of the customer class in each customer's distribution. [d]
     neighbour_hours : int
-        Intervals on each side over which variances of the common component are smoothed. [-]
+        Intervals on each side whose movement shapes the common component. [-]
+    smoothing_h : float
+        Standard deviation of the smoothing of the correlation along the day. [h]
     lattice_kw : float
         Step of the lattice; 0 takes it from the meters' resolution. [kW]
     correlation : float or None
@@ -27,8 +29,9 @@ class ModelSettings:
     common_component: bool = True
     shrinkage: bool = True
     mean_uncertainty: bool = True
-    borrowed_days: float = 7.0
+    borrowed_days: float = 10.0
     neighbour_hours: int = 1
+    smoothing_h: float = 3.0
     lattice_kw: float = 0.0
     correlation: float | None = None
     resamples: int = 0
