@@ -5,11 +5,14 @@ import hashlib
 import json
 from collections.abc import Mapping, Sequence
 from dataclasses import dataclass
-from typing import Any, Literal
+from typing import Any, Literal, TypeAlias
+
+from loadsum.report import renderer
 
 MANIFEST = "manifest.json"
 STUDY_FILE = "study.toml"
 RESULTS_FILE = "results.json"
+Relationship: TypeAlias = Literal["Source", "Data", "Supplement"]
 EARLIEST = dt.datetime(1980, 1, 1, tzinfo=dt.UTC)
 
 
@@ -32,7 +35,7 @@ class Attachment:
     name: str
     content: bytes
     description: str
-    relationship: Literal["Source", "Data", "Supplement"] = "Data"
+    relationship: Relationship = "Data"
 
     def __post_init__(self) -> None:
         if not self.name or "/" in self.name or "\\" in self.name or self.name.startswith("."):
@@ -61,6 +64,7 @@ def manifest(results: Mapping[str, Any], attachments: Sequence[Attachment], temp
         },
         "inputs": {str(i.get("name")): i.get("sha256") for i in results.get("inputs") or []},
         "program": results.get("program") or {},
+        "renderer": renderer.versions(),
         "results_sha256": results_digest(results),
         "schema_version": 1,
         "templates_sha256": templates_digest,
@@ -85,8 +89,7 @@ def fixed_time(iso_date: str) -> dt.datetime:
 
 def embedded_files(attachments: Sequence[Attachment], iso_date: str) -> list[Any]:
     """Attachments in the renderer's own type, sorted by name as a PDF name tree must be."""
-    import weasyprint
-
+    weasyprint = renderer.load()
     when = fixed_time(iso_date)
     return [
         weasyprint.Attachment(

@@ -14,12 +14,22 @@ from loadsum.report.notation import NO_BREAK, Notation
 from loadsum.report.sections import first_page, sections
 from loadsum.report.sections.overview import units_in_detail
 from loadsum.report.standards import meet_both_standards
-from loadsum.report.templates import Catalogue, catalogue, environment, logo, marked_up, templates_digest
+from loadsum.report.templates import (
+    Catalogue,
+    catalogue,
+    environment,
+    logo,
+    marked_up,
+    templates_digest,
+    templates_folder,
+)
 from loadsum.report.typeface import FALLBACK_FAMILY, TEXT_FAMILY
 from loadsum.report.typesetting import typeset
 
 PAPERS = {"A4": "210mm 297mm", "letter": "215.9mm 279.4mm"}
 LONGEST_RUNNING_TITLE = 72
+
+__all__ = ["compose", "material", "render", "templates_folder"]
 
 
 def render(

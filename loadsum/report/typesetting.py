@@ -8,11 +8,11 @@ from collections.abc import Callable, Iterator, Mapping, Sequence
 from contextlib import contextmanager
 from typing import Any
 
-from loadsum.errors import Fault, InputError, MachineError
+from loadsum.errors import Fault, InputError
+from loadsum.report import renderer
 from loadsum.report.archive import Attachment, embedded_files
 from loadsum.report.typeface import character_name, missing_characters, shipped_fonts_only
 
-LIBRARIES = "apt-get install --no-install-recommends libpango-1.0-0 libpangoft2-1.0-0 libharfbuzz-subset0"
 Finisher = Callable[[Any, Any], None]
 
 
@@ -47,26 +47,27 @@ def typeset(
         A character is in no shipped font, or a template asks for something that is not there.
     """
     with shipped_fonts_only(), _collected_rarely():
-        try:
-            import weasyprint
-            from weasyprint.text.fonts import FontConfiguration
-        except OSError as error:
-            raise MachineError(
-                f"the PDF renderer needs system libraries ({error}); install them: {LIBRARIES}"
-            ) from error
+        weasyprint = renderer.load()
+        from weasyprint.text.fonts import FontConfiguration
+        from weasyprint.urls import FatalURLFetchingError
+
         with _complaints() as complaints, warnings.catch_warnings():
             # The renderer leaves the file of its colour profile to the garbage collector.
             warnings.filterwarnings("ignore", category=ResourceWarning, message=".*sRGB2014.icc.*")
             document = weasyprint.HTML(string=html, base_url="asset:", url_fetcher=_Shelf(assets))
             _every_character_known("".join(document.etree_element.itertext()))
+            _harmless_links_only(document.etree_element)
             target = io.BytesIO()
-            document.write_pdf(
-                target,
-                pdf_variant="pdf/a-3a",
-                font_config=FontConfiguration(),
-                finisher=finisher,
-                attachments=embedded_files(attachments, iso_date),
-            )
+            try:
+                document.write_pdf(
+                    target,
+                    pdf_variant="pdf/a-3a",
+                    font_config=FontConfiguration(),
+                    finisher=finisher,
+                    attachments=embedded_files(attachments, iso_date),
+                )
+            except FatalURLFetchingError as error:
+                raise InputError("report templates", [Fault("template", str(error))]) from error
     if complaints:
         raise InputError("report templates", [Fault("template", text) for text in complaints])
     return target.getvalue()
@@ -79,6 +80,17 @@ def _every_character_known(text: str) -> None:
             "report",
             [Fault("text", f"character {character_name(c)} is in no font of the report; replace it") for c in missing],
         )
+
+
+def _harmless_links_only(root: Any) -> None:
+    """A template may link inside the document, to https and to mail, and to nothing else."""
+    faults = [
+        Fault("template", f"a link to {href[:120]!r}; only #, https: and mailto: are allowed")
+        for href in (element.get("href") or "" for element in root.iter() if element.tag in ("a", "area", "link"))
+        if not href.startswith(("#", "https:", "mailto:"))
+    ]
+    if faults:
+        raise InputError("report templates", faults)
 
 
 class _Shelf:

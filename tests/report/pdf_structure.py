@@ -58,7 +58,7 @@ def _metadata(pdf: Any) -> Iterator[str]:
         (r'pdfaid:conformance="A"', "PDF/A conformance A"),
         (r'pdfuaid:part="1"', "PDF/UA part"),
         (r"pdfaExtension:schemas", "extension schema"),
-        (r"<dc:title>", "title"),
+        (r"<dc:title[ >]", "title"),
     ):
         if not re.search(wanted, body):
             yield f"metadata claims no {what}"

@@ -38,7 +38,7 @@ def figure(m: Material, unit: Unit) -> DrawnFigure | None:
             ax.set_title(", ".join(name), loc="left", pad=4)
             if place == 0:
                 ax.set_ylabel(m.t(f"figure.{NAME}.axis"))
-    peak = max(by_class[shown[0]], key=lambda r: float(r["q99_kw"]))
+    peak = sorted(by_class[shown[0]], key=lambda row: row["q99_kw"] or 0.0)[-1]
     return DrawnFigure(
         name=unit.figure(NAME),
         title=m.t(f"figure.{NAME}.title"),
@@ -57,7 +57,7 @@ def figure(m: Material, unit: Unit) -> DrawnFigure | None:
 def ratings_kw(unit: Unit) -> list[tuple[float, float]]:
     """Each rating of the study, and its nameplate at the group's power factor. [kVA, kW]"""
     pf = unit.results.get("power_factor") or 1.0
-    ratings = (unit.part("hour_map") or {}).get("ratings_kva") or unit.rows("ratings_kva")
+    ratings = (unit.part("hour_map") or {}).get("ratings_kva") or unit.part("ratings_kva") or ()
     return [(float(rating), float(rating) * pf) for rating in ratings]
 
 
