@@ -154,8 +154,9 @@ def exceedance_rows(demand: GroupDemand, ratings_kva: Sequence[float]) -> tuple[
     hours = demand.hours_in_year()
     rows = []
     for rating in ratings_kva:
-        found = exceedance_hours(demand, [rating] * len(demand.blocks), "both")
+        found = exceedance_hours(demand, {"nameplate": rating})["nameplate"]
         b, i = np.unravel_index(int(np.nanargmax(found.probability)), found.probability.shape)
+        year = found.year
         normal = 0.0
         for bb, row in enumerate(demand.hours):
             for ii, hour in enumerate(row):
@@ -166,12 +167,12 @@ def exceedance_rows(demand: GroupDemand, ratings_kva: Sequence[float]) -> tuple[
                 rating_kva=rating,
                 of="nameplate",
                 level_kva=rating,
-                hours_per_year=found.hours_per_year,
-                hours_low=float("nan"),
-                hours_high=float("nan"),
+                hours_per_year=year.expected_h,
+                hours_low=float("nan") if year.low_h is None else year.low_h,
+                hours_high=float("nan") if year.high_h is None else year.high_h,
                 highest_probability=float(found.probability[b, i]),
-                highest_low=float("nan"),
-                highest_high=float("nan"),
+                highest_low=float(found.low[b, i]),
+                highest_high=float(found.high[b, i]),
                 floor=float(found.floor[b, i]),
                 highest_at=Place(
                     season=demand.blocks[b].season,
@@ -179,7 +180,7 @@ def exceedance_rows(demand: GroupDemand, ratings_kva: Sequence[float]) -> tuple[
                     interval=int(i),
                     starts=clock_text(int(i), demand.interval_min),
                 ),
-                normal_factor=normal / found.hours_per_year if found.hours_per_year > 0.0 else float("nan"),
+                normal_factor=normal / year.expected_h if year.expected_h > 0.0 else float("nan"),
             )
         )
     return tuple(rows)
