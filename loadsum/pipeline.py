@@ -6,11 +6,15 @@ from importlib import metadata
 from pathlib import Path
 from typing import Any
 
+import numpy as np
+
 from loadsum import __version__
 from loadsum.demand.group import group_demand
 from loadsum.demand.settings import ModelSettings
 from loadsum.intake.hourclass import calendar, day_blocks
 from loadsum.intake.load import Loaded, load_readings
+from loadsum.intake.readings import Readings
+from loadsum.peak.exceedance import exceedance_hours
 from loadsum.progress import Progress
 from loadsum.report import document, figures
 from loadsum.report.archive import RESULTS_FILE, STUDY_FILE, Attachment
@@ -122,7 +126,12 @@ def one_transformer(asked: Study, unit: Transformer, loaded: Loaded) -> Transfor
         blocks,
         interval_min=readings.interval_min,
         power_factor=unit.power_factor,
-        settings=ModelSettings(),
+        settings=ModelSettings(resamples=asked.model.resamples),
+        resolution_kw=shared_resolution(readings),
+        rng=np.random.default_rng(asked.study.seed),
+    )
+    above = exceedance_hours(
+        demand, {f"{rating:g} kVA": [rating] * len(demand.blocks) for rating in unit.ratings_kva}, "both"
     )
     return TransformerResults(
         id=unit.id,
@@ -133,5 +142,11 @@ def one_transformer(asked: Study, unit: Transformer, loaded: Loaded) -> Transfor
         customers=customer_rows(readings, customers),
         hours=hour_rows(demand),
         curve=curve(demand, curve_levels(demand, max(unit.ratings_kva))),
-        exceedance=exceedance_rows(demand, unit.ratings_kva),
+        exceedance=exceedance_rows(demand, above, unit.ratings_kva, "nameplate"),
     )
+
+
+def shared_resolution(readings: Readings) -> float:
+    """Resolution that all meters share, as demand; 0 where they differ or one is unknown. [kW]"""
+    found = np.unique(readings.resolution_kw)
+    return float(found[0]) if found.size == 1 else 0.0

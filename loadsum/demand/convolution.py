@@ -5,6 +5,7 @@ from dataclasses import dataclass
 
 import numpy as np
 from numpy.typing import NDArray
+from scipy.fft import irfft, next_fast_len, rfft
 
 from loadsum.demand.lattice import ALIGNED, LatticeMass
 from loadsum.demand.tails import Tails, at_or_below
@@ -118,6 +119,24 @@ class DemandSum:
         bottom = sum(count * term.offset for term, count in zip(self.terms, self.counts, strict=True))
         first, mass = whole_law([term.mass for term in self.terms], self.counts)
         return LatticeMass(step_kw=self.step_kw, offset=bottom + first, mass=mass)
+
+    def plain_distribution(self) -> LatticeMass:
+        """Whole distribution by one product of transforms, an order of magnitude cheaper than :meth:`distribution`.
+
+        Cumulative probabilities are accurate to about 1e-15 absolute: enough for quantiles and for probabilities above
+        1e-5, and of no use below. Masses that the rounding of the transform leaves negative are set to zero, which
+        moves less than that.
+        """
+        bottom = sum(count * term.offset for term, count in zip(self.terms, self.counts, strict=True))
+        size = sum(count * (term.mass.size - 1) for term, count in zip(self.terms, self.counts, strict=True)) + 1
+        length = next_fast_len(size, real=True)
+        product = np.ones(length // 2 + 1, dtype=np.complex128)
+        for term, count in zip(self.terms, self.counts, strict=True):
+            product *= rfft(term.mass, length) ** count
+        mass = np.maximum(irfft(product, length)[:size], 0.0)
+        kept = np.flatnonzero(mass > 1e-19)
+        first, last = int(kept[0]), int(kept[-1])
+        return LatticeMass(step_kw=self.step_kw, offset=bottom + first, mass=mass[first : last + 1])
 
     def cumulants(self) -> tuple[float, float, float, float]:
         """First four cumulants of the sum. [kW, kW², kW³, kW⁴]"""

@@ -17,6 +17,7 @@ from loadsum.demand.dependence import (
 )
 from loadsum.demand.hourly import GroupDemand, HourDemand, with_normal, with_term
 from loadsum.demand.lattice import LatticeMass, lattice_mass
+from loadsum.demand.samplingerror import Resamples, resample_weeks
 from loadsum.demand.settings import ModelSettings
 from loadsum.demand.temperature import TemperatureResponse, take_out_temperature
 from loadsum.intake.hourclass import DayBlock
@@ -33,6 +34,7 @@ def group_demand(
     resolution_kw: float = 0.0,
     record_c: Mapping[tuple[str, str], NDArray[np.float64]] | None = None,
     reference: Sequence[NDArray[np.float64]] | None = None,
+    rng: np.random.Generator | None = None,
 ) -> GroupDemand:
     """Demand model of a group of metered customers.
 
@@ -52,12 +54,16 @@ def group_demand(
         Lagged daily means of the temperature record over which the year is mixed; the metered days when None. [°C]
     reference : sequence of (R, D, I) float64 or None
         Readings of further customers of the class that are not served, one array a block. [kW]
+    rng : numpy.random.Generator or None
+        Source of randomness of the intervals; needed where the settings ask for resamples.
     """
+    if settings.resamples and rng is None:
+        raise ValueError(f"{settings.resamples} resamples need a random generator")
     hours, sums = [], []
     for b, block in enumerate(blocks):
         others = None if reference is None else reference[b]
         record = None if record_c is None else record_c.get((block.season, block.day_type))
-        made, observed = _block(block, others, record, interval_min, power_factor, settings, resolution_kw)
+        made, observed = _block(block, others, record, interval_min, power_factor, settings, resolution_kw, rng)
         hours.append(made)
         sums.append(observed)
     return GroupDemand(
@@ -81,6 +87,7 @@ def _block(
     power_factor: float,
     settings: ModelSettings,
     resolution_kw: float,
+    rng: np.random.Generator | None,
 ) -> tuple[tuple[HourDemand | None, ...], NDArray[np.float64]]:
     """Every interval of one class of days, and the observed sums."""
     intervals = block.kw.shape[2]
@@ -97,6 +104,9 @@ def _block(
     week = _mean_variance(adjusted.kw.sum(axis=0), block.day)
     record = block.temperature_c if record_c is None else record_c
     sums = adjusted.kw.sum(axis=0)
+    resamples: tuple[Resamples | None, ...] = (None,) * intervals
+    if rng is not None:
+        resamples = resample_weeks(observed, block.day, settings.resamples, rng)
     return tuple(
         _hour(
             block,
@@ -112,6 +122,7 @@ def _block(
             power_factor,
             settings,
             resolution_kw,
+            resamples[i],
         )
         if enough[i]
         else None
@@ -172,6 +183,7 @@ def _hour(
     power_factor: float,
     settings: ModelSettings,
     resolution_kw: float,
+    resamples: Resamples | None,
 ) -> HourDemand:
     own = [row[np.isfinite(row)] for row in adjusted.kw[:, :, i]]
     raw = [row[np.isfinite(row)] for row in block.kw[:, :, i]]
@@ -182,6 +194,8 @@ def _hour(
         relative = [*relative, *relative_readings(others[:, :, i])]
     down, up, variance = [], [], 0.0
     for c, values in enumerate(own):
+        if adjusted.responses[i] is not None:
+            values = np.rint(values / step) * step
         low, high, part = _customer(values, relative, c, settings, step)
         down.append(low)
         up.append(high)
@@ -204,7 +218,7 @@ def _hour(
         shift, wide = response.shift_kw(days), float(response.shift_variance_kw2(days).mean()) ** 0.5
         total = with_term(still, shift, np.full(days.size, 1.0 / days.size), wide)
     nearest = DemandSum(terms=tuple(_nearest(values, step) for values in raw), counts=(1,) * len(raw))
-    whole_down = total.down.distribution()
+    whole_down = total.down.plain_distribution()
     return HourDemand(
         season=block.season,
         day_type=block.day_type,
@@ -213,12 +227,14 @@ def _hour(
         n_days=min(values.size for values in own),
         total=total,
         whole_down=whole_down,
-        whole_up=whole_down if total.exact else total.up.distribution(),
+        whole_up=whole_down if total.exact else total.up.plain_distribution(),
         still=still,
         response=response,
-        independent=nearest.distribution(),
+        independent=nearest.plain_distribution(),
         covariance_variance_kw2=target_raw_kw2,
         power_factor=power_factor,
+        mean_variance_kw2=mean_variance_kw2 if settings.mean_uncertainty else 0.0,
+        resamples=resamples,
     )
 
 
@@ -228,7 +244,8 @@ def _customer(
     """Predictive distribution of one customer rounded down and up (one object where exact), and its variance."""
     extra, share = borrowed(relative, c, float(values.mean())) if settings.shrinkage else (np.empty(0), np.empty(0))
     weight = settings.borrowed_days / (settings.borrowed_days + values.size) if extra.size else 0.0
-    points = np.concatenate([values, extra])
+    # a borrowed reading is stated to the lattice, as a meter would state it; only own readings are rounded outward
+    points = np.concatenate([values, np.rint(extra / step) * step])
     weights = np.concatenate([np.full(values.size, (1.0 - weight) / values.size), share * weight])
     variance = weighted_variance(points, weights)
     down = lattice_mass(points, step, "down", weights)
@@ -242,17 +259,19 @@ def _nearest(values: NDArray[np.float64], step: float) -> LatticeMass:
     return lattice_mass(np.rint(values / step) * step, step, "down")
 
 
-MOST_POINTS = 2**16
+MOST_POINTS = 2**14
 
 
 def lattice_step(readings: Sequence[NDArray[np.float64]], spread_kw: float, resolution_kw: float) -> float:
     """Step of the lattice on which a group's demands are summed. [kW]
 
-    The meters' resolution where they share one; else a step so fine that rounding every customer down or up moves the
-    sum by less than a third of a per cent of its standard deviation, as far as the number of points stays affordable.
+    A whole fraction of the meters' resolution, so that their readings need no rounding, or where they share none a
+    step so fine that rounding every customer outward hardly moves the sum; either as far as the number of points
+    stays affordable.
     """
-    if resolution_kw > 0.0:
-        return resolution_kw
     reach = sum(float(np.ptp(row)) for row in readings)
-    fine = 0.003 * spread_kw / len(readings) if spread_kw > 0.0 else 0.01
-    return max(fine, reach / MOST_POINTS, 1e-5)
+    coarsest = max(reach / MOST_POINTS, 1e-5)
+    if resolution_kw > 0.0:
+        fine = max(0.001 * spread_kw, coarsest)
+        return resolution_kw / max(int(np.ceil(resolution_kw / fine)), 1) if fine < resolution_kw else resolution_kw
+    return max(0.003 * spread_kw / len(readings), coarsest)

@@ -1,5 +1,6 @@
 """The distribution of the coincident demand in each demand interval: what the later stages ask."""
 
+from collections.abc import Callable
 from dataclasses import dataclass, replace
 from typing import Literal
 
@@ -10,6 +11,7 @@ from scipy.stats import norm
 from loadsum.demand.convolution import BracketedSum, DemandSum
 from loadsum.demand.lattice import LatticeMass, kernel_mass, normal_mass
 from loadsum.demand.probability import Probability
+from loadsum.demand.samplingerror import COVERS, Resamples
 from loadsum.demand.settings import ModelSettings
 from loadsum.demand.temperature import TemperatureResponse
 from loadsum.intake.hourclass import DayBlock
@@ -47,6 +49,10 @@ class HourDemand:
         Variance of the observed sum, smoothed along the day, for the normal law with covariance. [kW²]
     power_factor : float
         Power factor of the group. [-]
+    mean_variance_kw2 : float
+        Variance of the mean that the model carries. [kW²]
+    resamples : Resamples or None
+        What resampled weeks do to the distribution; None where no interval was asked for or weeks are too few.
     """
 
     season: str
@@ -62,6 +68,8 @@ class HourDemand:
     independent: LatticeMass
     covariance_variance_kw2: float
     power_factor: float
+    mean_variance_kw2: float
+    resamples: Resamples | None
 
     @property
     def floor(self) -> float:
@@ -86,14 +94,22 @@ class HourDemand:
         lower, upper = self.whole_down.above(level_kw), self.whole_up.above(level_kw)
         if upper < DEEP:
             lower, upper = self.total.above(level_kw)
-        return self._probability(lower, upper)
+        return self._probability(lower, upper, self._interval(level_kw, self.whole_up.above_many))
+
+    def exceedances(self, levels_kw: NDArray[np.float64]) -> tuple[NDArray[np.float64], NDArray[np.float64]]:
+        """Lower and upper probability of demand strictly above each level, (L,) float64 each. [kW -> -]
+
+        Accurate to 1e-15 absolute; for a figure in the far tail ask :meth:`exceedance`.
+        """
+        upper = self.whole_up.above_many(levels_kw)
+        return np.minimum(self.whole_down.above_many(levels_kw), upper), upper
 
     def below(self, level_kw: float) -> Probability:
         """Probability that demand is strictly below a level. [kW -> -]"""
         lower, upper = self.whole_up.below(level_kw), self.whole_down.below(level_kw)
         if upper < DEEP:
             lower, upper = self.total.below(level_kw)
-        return self._probability(lower, upper)
+        return self._probability(lower, upper, self._interval(level_kw, self._below_many))
 
     def quantile_kw(self, exceeded_with: float) -> float:
         """Smallest lattice level that demand exceeds with at most the probability given. [- -> kW]"""
@@ -114,7 +130,9 @@ class HourDemand:
         if direction != "delivered":
             parts.append(self.below(-limit_kw))
         lower, upper = (min(sum(end), 1.0) for end in ([p.lower for p in parts], [p.upper for p in parts]))
-        return self._probability(lower, upper)
+        ends = [(p.low, p.high) for p in parts if p.low is not None and p.high is not None]
+        interval = (min(sum(e[0] for e in ends), 1.0), min(sum(e[1] for e in ends), 1.0)) if ends else None
+        return self._probability(lower, upper, interval)
 
     def mean_square_kva2(self) -> float:
         """Mean of the squared apparent power, which load losses go by. [kVA²]"""
@@ -127,7 +145,9 @@ class HourDemand:
         at = np.array([temperature_c])
         shift, spread = float(self.response.shift_kw(at)[0]), float(np.sqrt(self.response.shift_variance_kw2(at)[0]))
         total = with_term(self.still, np.array([shift]), np.ones(1), spread)
-        return replace(self, total=total, whole_down=total.down.distribution(), whole_up=total.up.distribution())
+        return replace(
+            self, total=total, whole_down=total.down.plain_distribution(), whole_up=total.up.plain_distribution()
+        )
 
     def independent_exceedance(self, level_kw: float) -> float:
         """Probability above a level if the customers were independent; for comparison only. [-]"""
@@ -141,10 +161,26 @@ class HourDemand:
         """Probability above a level by the normal law of independent customers; for comparison only. [-]"""
         return _normal_above(level_kw, self.independent.mean_kw(), self.independent.central_moment(2))
 
-    def _probability(self, lower: float, upper: float) -> Probability:
+    def _interval(
+        self, level_kw: float, beyond: Callable[[NDArray[np.float64]], NDArray[np.float64]]
+    ) -> tuple[float, float] | None:
+        """Interval for the long-run probability beyond a level."""
+        if self.resamples is None:
+            return None
+        variance = self.variance_kw2()
+        share = np.sqrt(max(variance - self.mean_variance_kw2, 0.0) / variance) if variance > 0.0 else 1.0
+        found = beyond(self.resamples.levels_kw(level_kw, self.mean_kw(), max(share, 0.05)))
+        low, high = np.quantile(found, [0.5 - 0.5 * COVERS, 0.5 + 0.5 * COVERS])
+        return float(low), float(high)
+
+    def _below_many(self, levels_kw: NDArray[np.float64]) -> NDArray[np.float64]:
+        return 1.0 - self.whole_up.above_many(levels_kw - self.whole_up.step_kw)
+
+    def _probability(self, lower: float, upper: float, interval: tuple[float, float] | None) -> Probability:
         upper = min(upper, 1.0)
         lower = min(lower, upper)
-        return Probability(value=0.5 * (lower + upper), lower=lower, upper=upper, floor=self.floor)
+        low, high = interval if interval is not None else (None, None)
+        return Probability(value=0.5 * (lower + upper), lower=lower, upper=upper, low=low, high=high, floor=self.floor)
 
 
 def _normal_above(level_kw: float, mean_kw: float, variance_kw2: float) -> float:

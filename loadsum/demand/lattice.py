@@ -13,6 +13,8 @@ Rounding = Literal["down", "up", "exact"]
 CUT = 1e-25  # probability at which the tail of a continuous term is cut, on the outward side
 ALIGNED = 1e-6  # a reading this close to a lattice point, in steps, lies on it (float noise of the file's decimals)
 
+CELLS = 8192  # cells into which a continuous term is cut at least: 1/400 of a standard deviation or so
+
 NORMAL_REACH = 10.5  # standard deviations beyond which a normal law has less than CUT
 
 
@@ -63,6 +65,12 @@ class LatticeMass:
         if first >= self.mass.size:
             return self.beyond_above
         return float(self.mass[max(first, 0) :][::-1].sum()) + self.beyond_above
+
+    def above_many(self, levels_kw: NDArray[np.float64]) -> NDArray[np.float64]:
+        """Probability of demand strictly above each level, summed from the top, (L,) float64. [kW -> -]"""
+        tail = np.append(np.cumsum(self.mass[::-1])[::-1], 0.0) + self.beyond_above
+        first = np.floor(np.asarray(levels_kw) / self.step_kw + ALIGNED).astype(np.int64) + 1 - self.offset
+        return np.asarray(tail[np.clip(first, 0, self.mass.size)], dtype=np.float64)
 
     def below(self, level_kw: float) -> float:
         """Probability of demand strictly below a level, summed from the bottom. [-]"""
@@ -157,16 +165,20 @@ def continuous_mass(
     rounding : {"down", "up"}
         Direction of rounding.
     """
-    first, last = int(np.floor(low_kw / step_kw)), int(np.ceil(high_kw / step_kw))
-    edges: NDArray[np.float64] = np.arange(first, last + 1, dtype=np.float64) * step_kw
-    below, above = cdf(edges), survival(edges)
-    middle = int(np.searchsorted(below, 0.5))
-    mass = np.where(np.arange(edges.size - 1) < middle, np.diff(below), -np.diff(above))
+    stride = max(int((high_kw - low_kw) / (CELLS * step_kw)), 1)  # cells of whole steps, as fine as is of use
+    first, last = int(np.floor(low_kw / (stride * step_kw))), int(np.ceil(high_kw / (stride * step_kw)))
+    edges: NDArray[np.float64] = np.arange(first, last + 1, dtype=np.float64) * (stride * step_kw)
+    middle = edges.size // 2
+    below, above = cdf(edges[: middle + 1]), survival(edges[middle:])
+    mass = np.zeros((edges.size - 1) * stride + 1)
+    cells = np.concatenate([np.diff(below), -np.diff(above)])
     if rounding == "down":
-        mass = np.append(mass, above[-1])
-        return LatticeMass(step_kw=step_kw, offset=first, mass=mass, beyond_below=float(below[0]))
-    mass = np.insert(mass, 0, below[0])
-    return LatticeMass(step_kw=step_kw, offset=first, mass=mass, beyond_above=float(above[-1]))
+        mass[:-1:stride] = cells
+        mass[-1] = above[-1]
+        return LatticeMass(step_kw=step_kw, offset=first * stride, mass=mass, beyond_below=float(below[0]))
+    mass[stride::stride] = cells
+    mass[0] = below[0]
+    return LatticeMass(step_kw=step_kw, offset=first * stride, mass=mass, beyond_above=float(above[-1]))
 
 
 def normal_mass(mean_kw: float, spread_kw: float, step_kw: float, rounding: Literal["down", "up"]) -> LatticeMass:

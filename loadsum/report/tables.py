@@ -9,7 +9,7 @@ from numpy.typing import NDArray
 from loadsum.demand.hourly import GroupDemand, HourDemand
 from loadsum.intake.hourclass import EPOCH
 from loadsum.intake.readings import Readings
-from loadsum.peak.exceedance import exceedance_hours
+from loadsum.peak.exceedance import ExceedanceTable
 from loadsum.report.results import Coverage, Curve, CustomerRow, ExceedanceRow, HourRow, Place
 from loadsum.study.tables import Customer
 
@@ -117,7 +117,11 @@ def curve(demand: GroupDemand, levels_kw: NDArray[np.float64]) -> Curve:
     weight = np.array([hours[b, i] for b, i, _ in present])
     weight = weight / weight.sum()
 
-    def averaged(one: Callable[[HourDemand, float], float]) -> NDArray[np.float64]:
+    bracket = [hour.exceedances(levels_kw) for _, _, hour in present]
+    lower, upper = (np.array([pair[end] for pair in bracket]).T @ weight for end in (0, 1))
+    independent = np.array([hour.independent.above_many(levels_kw) for _, _, hour in present]).T @ weight
+
+    def normal(one: Callable[[HourDemand, float], float]) -> NDArray[np.float64]:
         by_hour = np.array([[one(hour, float(level)) for level in levels_kw] for _, _, hour in present])
         return np.asarray(by_hour.T @ weight, dtype=np.float64)
 
@@ -127,17 +131,16 @@ def curve(demand: GroupDemand, levels_kw: NDArray[np.float64]) -> Curve:
         sums = sums[np.isfinite(sums)]
         if sums.size:
             observed += share * (sums[:, None] > levels_kw).mean(axis=0)
-    probabilities = [[hour.exceedance(float(level)) for level in levels_kw] for _, _, hour in present]
     return Curve(
         levels_kw=levels_kw,
-        adopted=np.array([[p.value for p in row] for row in probabilities]).T @ weight,
-        lower=np.array([[p.lower for p in row] for row in probabilities]).T @ weight,
-        upper=np.array([[p.upper for p in row] for row in probabilities]).T @ weight,
-        independent=averaged(lambda hour, level: hour.independent_exceedance(level)),
-        normal=averaged(lambda hour, level: hour.normal_exceedance(level)),
-        normal_independent=averaged(lambda hour, level: hour.normal_independent_exceedance(level)),
+        adopted=0.5 * (lower + upper),
+        lower=lower,
+        upper=upper,
+        independent=independent,
+        normal=normal(lambda hour, level: hour.normal_exceedance(level)),
+        normal_independent=normal(lambda hour, level: hour.normal_independent_exceedance(level)),
         observed=observed,
-        floor=float(np.array([hour.exceedance(0.0).floor for _, _, hour in present]) @ weight),
+        floor=float(np.array([hour.floor for _, _, hour in present]) @ weight),
     )
 
 
@@ -149,38 +152,45 @@ def curve_levels(demand: GroupDemand, highest_kw: float) -> NDArray[np.float64]:
     return np.linspace(low, high, CURVE_POINTS)
 
 
-def exceedance_rows(demand: GroupDemand, ratings_kva: Sequence[float]) -> tuple[ExceedanceRow, ...]:
-    """Exceedance of each rating's nameplate over the covered hours of the year."""
+def exceedance_rows(
+    demand: GroupDemand, found: ExceedanceTable, ratings_kva: Sequence[float], of: str
+) -> tuple[ExceedanceRow, ...]:
+    """One row for each rating, from the exceedance of its level in ``found.levels``."""
     hours = demand.hours_in_year()
     rows = []
-    for rating in ratings_kva:
-        found = exceedance_hours(demand, {"nameplate": rating})["nameplate"]
-        b, i = np.unravel_index(int(np.nanargmax(found.probability)), found.probability.shape)
-        year = found.year
-        normal = 0.0
-        for bb, row in enumerate(demand.hours):
-            for ii, hour in enumerate(row):
-                if hour is not None:
-                    normal += hours[bb, ii] * hour.normal_exceedance(rating * hour.power_factor)
+    for rating, level in zip(ratings_kva, found.levels, strict=True):
+        normal = sum(
+            hours[b, i] * hour.normal_exceedance(float(level.level_kva[b]) * hour.power_factor)
+            for b, row in enumerate(demand.hours)
+            for i, hour in enumerate(row)
+            if hour is not None
+        )
+        largest = level.largest_probability
         rows.append(
             ExceedanceRow(
                 rating_kva=rating,
-                of="nameplate",
-                level_kva=rating,
-                hours_per_year=year.expected_h,
-                hours_low=float("nan") if year.low_h is None else year.low_h,
-                hours_high=float("nan") if year.high_h is None else year.high_h,
-                highest_probability=float(found.probability[b, i]),
-                highest_low=float(found.low[b, i]),
-                highest_high=float(found.high[b, i]),
-                floor=float(found.floor[b, i]),
+                of=of,
+                level_kva=float(level.level_kva.min()),
+                hours_per_year=level.year.expected_h,
+                hours_low=_or_nan(level.year.low_h),
+                hours_high=_or_nan(level.year.high_h),
+                highest_probability=_or_nan(largest.value if largest else None),
+                highest_low=_or_nan(largest.low if largest else None),
+                highest_high=_or_nan(largest.high if largest else None),
+                floor=_or_nan(largest.floor if largest else None),
                 highest_at=Place(
-                    season=demand.blocks[b].season,
-                    day_type=demand.blocks[b].day_type,
-                    interval=int(i),
-                    starts=clock_text(int(i), demand.interval_min),
-                ),
-                normal_factor=normal / year.expected_h if year.expected_h > 0.0 else float("nan"),
+                    season=level.largest_season,
+                    day_type=level.largest_day_type,
+                    interval=level.largest_interval,
+                    starts=clock_text(level.largest_interval, demand.interval_min),
+                )
+                if largest
+                else None,
+                normal_factor=normal / level.year.expected_h if level.year.expected_h > 0.0 else float("nan"),
             )
         )
     return tuple(rows)
+
+
+def _or_nan(value: float | None) -> float:
+    return float("nan") if value is None else value
