@@ -135,7 +135,8 @@ def test_no_socket_is_opened_and_no_stray_file_is_read(tmp_path: Path) -> None:
     script = """
 import sys
 opened = []
-sys.addaudithook(lambda event, args: opened.append((event, str(args[0]))) if event in ("open", "socket.connect") else None)
+kinds = ("open", "socket.connect")
+sys.addaudithook(lambda event, args: opened.append((event, str(args[0]))) if event in kinds else None)
 from loadsum.report.document import render
 render({"study": {"title": "x"}})
 del opened[:]
