@@ -101,10 +101,8 @@ def test_a_character_without_a_glyph_is_refused_by_name_before_anything_is_drawn
         render(_small(results, name))
 
 
-@pytest.mark.parametrize(
-    "name", ["Møllestræde Ærø", "Мельничный переулок", "Οδός Μύλου", "רחוב הטחנה", "شارع الطاحونة"]
-)
-def test_names_in_other_scripts_are_printed(results: dict[str, Any], name: str) -> None:
+def test_names_in_other_scripts_are_printed(results: dict[str, Any]) -> None:
+    name = "Møllestræde, Мельничный переулок, Οδός Μύλου, רחוב הטחנה, شارع الطاحونة"
     assert missing_characters(name) == ()
     assert structure_faults(render(_small(results, name))) == []
 
