@@ -99,8 +99,7 @@ def compose(
         assets["logo"] = own_logo
     made = sections(m, units)
     env = environment(overrides)
-    env.filters["css_string"] = css_string
-    env.filters["strong"] = marked_up
+    env.filters.update(css_string=css_string, strong=marked_up)
     study = m.study
     html = env.get_template("report.html.j2").render(
         t=m.t,

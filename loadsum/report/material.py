@@ -135,6 +135,18 @@ class Material:
         text = f"{value:.{most_places}f}".rstrip("0").rstrip(".")
         return self.n.fixed(value, len(text.partition(".")[2]))
 
+    @property
+    def fahrenheit(self) -> bool:
+        """Whether temperatures are printed in °F."""
+        return str(self.study.get("temperature_unit") or "C") == "F"
+
+    def temperature(self, celsius: float | None, places: int = 0) -> str:
+        """A temperature in the study's unit."""
+        if celsius is None:
+            return self.n.none
+        value = celsius * 1.8 + 32.0 if self.fahrenheit else celsius
+        return self.n.fixed(value, places) + NO_BREAK + ("°F" if self.fahrenheit else "°C")
+
     def hours(self, value: float | None) -> str:
         """Hours per year without the unit: two significant digits below 10, whole hours above."""
         if value is None:

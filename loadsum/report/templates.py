@@ -116,6 +116,7 @@ def catalogue(language: str, overrides: Path | None = None) -> Catalogue:
     return Catalogue(texts, language)
 
 
+@functools.cache
 def environment(overrides: Path | None = None) -> jinja2.Environment:
     """Template environment in which every value is escaped, and the utility's files go before the project's."""
     folders = [*([overrides] if overrides is not None else []), templates_folder()]

@@ -51,10 +51,8 @@ def typeset(
         from weasyprint.text.fonts import FontConfiguration
         from weasyprint.urls import FatalURLFetchingError
 
-        with _complaints() as complaints, warnings.catch_warnings():
-            # The renderer leaves the file of its colour profile to the garbage collector.
-            warnings.filterwarnings("ignore", category=ResourceWarning, message=".*sRGB2014.icc.*")
-            document = weasyprint.HTML(string=html, base_url="asset:", url_fetcher=_Shelf(assets))
+        with quiet_renderer() as complaints:
+            document = weasyprint.HTML(string=html, base_url="asset:", url_fetcher=Shelf(assets))
             _every_character_known("".join(document.etree_element.itertext()))
             _harmless_links_only(document.etree_element)
             target = io.BytesIO()
@@ -93,7 +91,7 @@ def _harmless_links_only(root: Any) -> None:
         raise InputError("report templates", faults)
 
 
-class _Shelf:
+class Shelf:
     """Serves the pieces it was given and refuses everything else."""
 
     def __init__(self, assets: Mapping[str, tuple[str, bytes]]) -> None:
@@ -121,14 +119,17 @@ class _Collector(logging.Handler):
 
 
 @contextmanager
-def _complaints() -> Iterator[list[str]]:
-    """Warnings of the renderer, which would otherwise leave a piece out and go on."""
+def quiet_renderer() -> Iterator[list[str]]:
+    """Collects the renderer's warnings, which mean that it left a piece out and went on, instead of printing them."""
     collector = _Collector()
     loggers = [logging.getLogger(name) for name in ("weasyprint", "fontTools")]
     for logger in loggers:
         logger.addHandler(collector)
     try:
-        yield collector.messages
+        with warnings.catch_warnings():
+            # The renderer leaves the file of its colour profile to the garbage collector.
+            warnings.filterwarnings("ignore", category=ResourceWarning, message=".*sRGB2014.icc.*")
+            yield collector.messages
     finally:
         for logger in loggers:
             logger.removeHandler(collector)

@@ -4,6 +4,7 @@ from collections.abc import Callable, Mapping, Sequence
 from typing import Any
 
 from loadsum.report.figures import (
+    criterion_margins,
     demand_by_hour,
     exceedance_curve,
     exceedance_map,
@@ -14,6 +15,7 @@ from loadsum.report.figures.plate import DrawnFigure, png, svg
 from loadsum.report.material import Material, Unit
 
 OF_A_TRANSFORMER: Sequence[Callable[[Material, Unit], DrawnFigure | None]] = (
+    criterion_margins.figure,
     exceedance_map.figure,
     demand_by_hour.figure,
     exceedance_curve.figure,

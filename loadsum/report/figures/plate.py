@@ -30,7 +30,11 @@ MODELS: dict[str, tuple[str, Any, float]] = {
     "normal_independent": (GREEN, (0, (7, 1.6, 1.2, 1.6)), 0.9),
 }
 
+# Settings that are about windows and not about what is drawn.
+WINDOWS = ("backend", "interactive", "toolbar", "webagg", "keymap", "tk.", "macosx", "date.epoch", "savefig.directory")
+# Every setting of the drawing library at its own default, whatever the user has set, and then ours.
 SETTINGS: Any = {
+    **{name: value for name, value in mpl.rcParamsDefault.items() if not name.startswith(WINDOWS)},
     "font.family": [TEXT_FAMILY, FALLBACK_FAMILY],
     "font.size": 8.0,
     "axes.linewidth": 0.5,

@@ -6,7 +6,8 @@ from typing import Any
 from loadsum.report.material import Material, Unit
 from loadsum.report.notation import NO_BREAK
 from loadsum.report.sections.overview import table
-from loadsum.report.sections.verdict import needs_attention, verdict
+from loadsum.report.sections.ratings import meets_text
+from loadsum.report.sections.verdict import exceedance_of, exceedance_rows, needs_attention, verdict
 
 MOST_ON_FIRST_PAGE = 8
 
@@ -42,7 +43,44 @@ def _finding(m: Material, unit: Unit) -> dict[str, Any]:
         "rating": found.headline,
         "lines": [reason] if reason else [found.sentence, *found.reasons],
         "action": found.action,
+        "ratings": _ratings(m, unit),
     }
+
+
+def _ratings(m: Material, unit: Unit) -> list[dict[str, Any]]:
+    """The few figures of each rating that answer the question at a glance."""
+    chosen = (unit.part("selection") or {}).get("rating_kva")
+    rows = []
+    for rating in dict.fromkeys(row.get("rating_kva") for row in exceedance_rows(unit.results)):
+        row = exceedance_of(unit.results, rating) or {}
+        rows.append(
+            {
+                "rating": m.plain(rating),
+                "chosen": rating == chosen,
+                "hours": m.hours(row.get("hours_per_year")),
+                "interval": m.between(row.get("hours_low"), row.get("hours_high"), m.hours),
+                "highest": m.n.probability(row.get("highest_probability"), row.get("floor")),
+                "meets": _meets_all(m, unit, rating),
+            }
+        )
+    return rows
+
+
+def _meets_all(m: Material, unit: Unit, rating: float | None) -> str:
+    """Whether a rating meets every criterion; empty where there is none."""
+    found = [
+        row.get("meets")
+        for criterion in (unit.part("selection") or {}).get("criteria") or ()
+        for row in criterion.get("by_rating") or ()
+        if row.get("rating_kva") == rating
+    ]
+    if not found:
+        return m.n.none
+    texts = {meets_text(m, meets) for meets in found}
+    for word in ("meets.no", "meets.undecided"):
+        if m.t(word) in texts:
+            return m.t(word)
+    return m.t("meets.yes")
 
 
 def _overview(m: Material) -> dict[str, Any]:

@@ -1,61 +1,112 @@
 """The ratings compared: hours, probability, criteria, margins."""
 
+from collections.abc import Mapping, Sequence
 from typing import Any
 
 from loadsum.report.material import Material, Section, Unit
+from loadsum.report.notation import NO_BREAK
 from loadsum.report.sections.verdict import exceedance_rows
 
 
 def section(m: Material, unit: Unit) -> Section | None:
     """Table of ratings and table of criteria of one transformer."""
-    if not exceedance_rows(unit.results):
+    rows = exceedance_rows(unit.results)
+    if not rows:
         return None
     return Section(
         block="ratings",
         unit=unit.index if unit.several else -1,
         title=m.t("section.ratings"),
-        content=_tables(m, unit),
+        content={
+            "rows": [_row(m, unit, row) for row in rows],
+            "several_loadings": len({row.get("of") for row in rows}) > 1,
+            "criteria": criteria(m, unit),
+            "ratings": [m.kva(rating) for rating in _ratings(unit)],
+        },
+        figures=(unit.figure("criterion-margins"),),
     )
 
 
-def _tables(m: Material, unit: Unit) -> dict[str, Any]:
-    selection = unit.part("selection") or {}
-    chosen = selection.get("rating_kva")
-    rows = [
-        {
-            "rating": m.plain(row.get("rating_kva")),
-            "chosen": row.get("rating_kva") == chosen,
-            "of": m.t.name("loading", str(row.get("of"))),
-            "level": m.plain(row.get("level_kva"), 1),
-            "hours": m.hours(row.get("hours_per_year")),
-            "interval": m.between(row.get("hours_low"), row.get("hours_high"), m.hours),
-            "highest": m.n.probability(row.get("highest_probability"), row.get("floor")),
-            "where": m.hour_class(row.get("highest_at")),
-            "normal": _factor(m, row.get("normal_factor")),
-        }
-        for row in exceedance_rows(unit.results)
-    ]
-    criteria = [
-        {
-            "name": m.t.name("criterion", criterion.get("quantity", "")),
-            "of": m.t.name("loading", criterion.get("of", "")),
-            "limit": m.n.significant(criterion.get("limit")),
-            "statistic": criterion.get("statistic", ""),
-            "source": criterion.get("source") or m.t("ratings.untraced"),
-            "by_rating": [
-                {
-                    "rating": m.plain(row.get("rating_kva")),
-                    "value": m.n.significant(row.get("value")),
-                    "margin": m.n.significant(row.get("margin")),
-                    "meets": m.t("word.yes" if row.get("meets") else "word.no"),
-                }
-                for row in criterion.get("by_rating") or ()
-            ],
-        }
-        for criterion in selection.get("criteria") or ()
-    ]
-    return {"rows": rows, "criteria": criteria}
+def _row(m: Material, unit: Unit, row: Mapping[str, Any]) -> dict[str, Any]:
+    return {
+        "rating": m.plain(row.get("rating_kva")),
+        "chosen": row.get("rating_kva") == (unit.part("selection") or {}).get("rating_kva"),
+        "of": m.t.name("loading", str(row.get("of"))),
+        "level": m.plain(row.get("level_kva"), 1),
+        "hours": m.hours(row.get("hours_per_year")),
+        "interval": m.between(row.get("hours_low"), row.get("hours_high"), m.hours),
+        "highest": m.n.probability(row.get("highest_probability"), row.get("floor")),
+        "where": m.hour_class(row.get("highest_at")),
+        "normal": _factor(m, row.get("normal_factor")),
+    }
 
 
 def _factor(m: Material, factor: float | None) -> str:
-    return m.n.none if factor is None else m.n.significant(factor, 2)
+    if factor is None:
+        return m.n.none
+    return m.n.significant(factor, 2) if factor >= 0.001 else "<" + NO_BREAK + m.n.fixed(0.001, 3)
+
+
+def _ratings(unit: Unit) -> Sequence[float]:
+    """Ratings that the criteria speak of."""
+    listed = [
+        row["rating_kva"]
+        for criterion in (unit.part("selection") or {}).get("criteria") or ()
+        for row in criterion.get("by_rating") or ()
+    ]
+    return list(dict.fromkeys(listed))
+
+
+def criteria(m: Material, unit: Unit) -> list[dict[str, Any]]:
+    """Every criterion with its value and margin for each rating."""
+    found = []
+    for criterion in (unit.part("selection") or {}).get("criteria") or ():
+        by_rating = {row["rating_kva"]: row for row in criterion.get("by_rating") or ()}
+        quantity = str(criterion.get("quantity", ""))
+        found.append(
+            {
+                "name": m.t.name("criterion", quantity),
+                "of": m.t.name("loading", str(criterion.get("of", ""))),
+                "limit": limit_text(m, quantity, criterion.get("limit")),
+                "statistic": m.t.name("statistic", str(criterion.get("statistic", ""))),
+                "source": criterion.get("source") or m.t("ratings.untraced"),
+                "cells": [_cell(m, quantity, by_rating.get(rating)) for rating in _ratings(unit)],
+            }
+        )
+    return found
+
+
+def _cell(m: Material, quantity: str, row: Mapping[str, Any] | None) -> dict[str, str]:
+    if row is None:
+        return {"value": m.n.none, "meets": ""}
+    return {
+        "value": quantity_text(m, quantity, row.get("value"), row.get("floor")),
+        "meets": meets_text(m, row.get("meets")) + (", " + m.t("ratings.governs") if row.get("governs") else ""),
+    }
+
+
+def meets_text(m: Material, meets: Any) -> str:
+    """Whether a criterion is met, in a word; None where the data do not decide."""
+    if isinstance(meets, str):
+        return m.t.name("meets", meets)
+    return m.t("meets.undecided" if meets is None else "meets.yes" if meets else "meets.no")
+
+
+def limit_text(m: Material, quantity: str, limit: float | None) -> str:
+    """A limit in its own unit, with the digits it was given with."""
+    if "probability" in quantity and limit is not None:
+        return m.plain(100.0 * limit) + NO_BREAK + "%"
+    if "hours" in quantity:
+        return m.plain(limit) + NO_BREAK + "h"
+    return m.temperature(limit) if "temperature" in quantity else m.plain(limit)
+
+
+def quantity_text(m: Material, quantity: str, value: float | None, floor: float | None = None) -> str:
+    """A criterion's figure in its own unit."""
+    if "probability" in quantity:
+        return m.n.probability(value, floor)
+    if "temperature" in quantity:
+        return m.temperature(value)
+    if "hours" in quantity:
+        return m.hours(value) + NO_BREAK + "h"
+    return m.n.significant(value)

@@ -42,11 +42,11 @@ def exceedance_rows(results: Mapping[str, Any]) -> Sequence[Mapping[str, Any]]:
 
 
 def exceedance_of(results: Mapping[str, Any], rating_kva: float | None) -> Mapping[str, Any] | None:
-    """Exceedance of one rating's allowed loading; None where it is not among the results."""
-    for row in exceedance_rows(results):
-        if rating_kva is not None and row.get("rating_kva") == rating_kva:
-            return row
-    return None
+    """Exceedance of one rating, of the loading that the criteria speak of; None where it is not among the results."""
+    rows = [row for row in exceedance_rows(results) if rating_kva is not None and row.get("rating_kva") == rating_kva]
+    wanted = [c.get("of") for c in (results.get("selection") or {}).get("criteria") or ()]
+    rows.sort(key=lambda row: (row.get("of") not in wanted, row.get("of") == "nameplate"))
+    return rows[0] if rows else None
 
 
 def needs_attention(unit: Unit) -> bool:
