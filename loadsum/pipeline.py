@@ -83,9 +83,8 @@ def inspect(path: Path, *, out: Path | None, progress: Progress) -> str:
         lines.append(f"{file.name}: {file.format}, {file.layout}; {'; '.join(file.choices)}")
     for row in rows:
         place = ", ".join(part for part in (row["customer"], row["place"]) if part)
-        lines.append(
-            f"{row['severity']}: {row['rule']}{f' ({place})' if place else ''}: {row['message']}. {row['effect']}".rstrip()
-        )
+        said = f"{row['message']}. {row['effect']}".rstrip()
+        lines.append(f"{row['severity']}: {row['rule']}{f' ({place})' if place else ''}: {said}")
     return "\n".join(lines)
 
 

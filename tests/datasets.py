@@ -8,7 +8,7 @@ import numpy as np
 import pytest
 from numpy.typing import NDArray
 
-# CityLearn 1.8.0 (MIT): 17 homes, hourly, one year. Its first row is hour 24 of a Sunday, 31 July (Month 7, Day Type 7);
+# CityLearn 1.8.0 (MIT): 17 homes, hourly, one year. Its first row is hour 24 of a Sunday, 31 July (Month 7, Day Type 7)
 # the readings were taken in 2016 and 2017, so the series starts on 2016-07-31 at 23:00.
 FIRST_STAMP = dt.datetime(2016, 7, 31, 23)
 

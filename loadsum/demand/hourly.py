@@ -121,12 +121,6 @@ class HourDemand:
         index = np.searchsorted(-above, -np.asarray(exceeded_with), side="left")
         return self.whole_up.points_kw[np.minimum(index, above.size - 1)]
 
-    def quantiles_kw(self, exceeded_with: NDArray[np.float64]) -> NDArray[np.float64]:
-        """Smallest lattice level that demand exceeds with at most each probability, (n,) float64. [- -> kW]"""
-        tail = np.cumsum(self.rounded_up.mass[::-1])[::-1]
-        index = np.searchsorted(-np.append(tail[1:], 0.0), -exceeded_with, side="left")
-        return np.asarray(self.rounded_up.points_kw[np.minimum(index, tail.size - 1)], dtype=np.float64)
-
     def exceedance_kva(self, level_kva: float, direction: Direction = "both") -> Probability:
         """Probability that the apparent power of the group is strictly above a level. [kVA -> -]"""
         limit_kw = level_kva * self.power_factor

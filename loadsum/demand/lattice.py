@@ -13,7 +13,7 @@ Rounding = Literal["down", "up", "exact"]
 CUT = 1e-25  # probability at which the tail of a continuous term is cut, on the outward side
 ALIGNED = 1e-6  # a reading this close to a lattice point, in steps, lies on it (float noise of the file's decimals)
 
-CELLS = 8192  # cells into which a continuous term is cut at least: 1/400 of a standard deviation or so
+CELLS = 4096  # cells into which a continuous term is cut at least: about 1/300 of a standard deviation each
 
 NORMAL_REACH = 10.5  # standard deviations beyond which a normal law has less than CUT
 

@@ -170,7 +170,7 @@ def margins(demand: GroupDemand, copula: DayCopula, *, temperature_c: NDArray[np
 
 
 def _at(hour: HourDemand, temperature_c: float) -> HourDemand:
-    given: HourDemand = hour.at_temperature(temperature_c)  # type: ignore[attr-defined]
+    given: HourDemand = hour.at_temperature(temperature_c)
     return given
 
 

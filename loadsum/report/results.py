@@ -12,7 +12,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from loadsum.intake.findings import Finding
-from loadsum.intake.load import InputFile
+from loadsum.intake.inputs import InputFile
 from loadsum.study.tables import Heading, Person
 
 SCHEMA_VERSION = 1

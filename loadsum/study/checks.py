@@ -1,6 +1,7 @@
 """What must hold between the keys of a study file."""
 
 import datetime as dt
+import itertools
 import re
 import zoneinfo
 from collections.abc import Iterator
@@ -75,7 +76,7 @@ def _transformers(study: Study) -> Iterator[Fault]:
             )
         if ratings and unit.series:
             yield Fault(f"{where}.series", "stands beside ratings_kva; keep one of the two")
-        if any(b <= a for a, b in zip(ratings, ratings[1:], strict=False)):
+        if any(b <= a for a, b in itertools.pairwise(ratings)):
             yield Fault(f"{where}.ratings_kva", f"must increase and not repeat, got {list(ratings)}")
 
 
