@@ -4,6 +4,7 @@ from collections.abc import Mapping
 from typing import Any
 
 from loadsum.report.material import Material, Section, Unit
+from loadsum.report.notation import NO_BREAK
 
 
 def section(m: Material, unit: Unit) -> Section | None:
@@ -28,7 +29,7 @@ def section(m: Material, unit: Unit) -> Section | None:
 
 def _row(m: Material, row: Mapping[str, Any]) -> dict[str, Any]:
     return {
-        "level": m.n.percent(row.get("expected_share"), 2),
+        "level": m.plain(100.0 * (row.get("expected_share") or 0.0)) + NO_BREAK + "%",
         "expected": m.n.fixed(row.get("expected_count"), 1),
         "found": m.n.fixed(row.get("observed_count")),
         "share": m.n.percent(row.get("observed_share"), 2),

@@ -6,6 +6,15 @@ from typing import Any
 from loadsum.report.material import Material, Section, Unit
 from loadsum.report.notation import NO_BREAK
 
+FACTORS = (
+    "coincidence_factor",
+    "diversity_factor",
+    "admd_kw",
+    "load_factor",
+    "loss_factor",
+    "utilisation_factor",
+)
+
 
 def section(m: Material, unit: Unit) -> Section | None:
     """Levels that days and years pass, and how often each rating is passed."""
@@ -66,17 +75,13 @@ def diversity_section(m: Material, unit: Unit) -> Section | None:
     found = unit.part("diversity")
     if not found:
         return None
-    forms = {
-        "coincidence_factor": (lambda v: m.n.fixed(v, 2), ""),
-        "diversity_factor": (lambda v: m.n.fixed(v, 2), ""),
-        "admd_kw": (lambda v: m.n.fixed(v, 2), "kW"),
-        "load_factor": (lambda v: m.n.fixed(v, 2), ""),
-        "loss_factor": (lambda v: m.n.fixed(v, 2), ""),
-        "utilisation_factor": (lambda v: m.n.fixed(v, 2), ""),
-    }
+    units = {"admd_kw": "kW"}
     rows = [
-        {"name": m.t(f"diversity.{name}"), "value": form(found[name]) + (NO_BREAK + unit_text if unit_text else "")}
-        for name, (form, unit_text) in forms.items()
+        {
+            "name": m.t(f"diversity.{name}"),
+            "value": m.n.fixed(found[name], 2) + (NO_BREAK + units[name] if name in units else ""),
+        }
+        for name in FACTORS
         if found.get(name) is not None
     ]
     return Section(
