@@ -11,6 +11,7 @@ from numpy.typing import NDArray
 
 from loadsum.demand.tilting import EPS, EndwiseTerms
 
+MOST_PARTS = 64
 Rows = list[tuple[NDArray[np.float64], int]]
 
 
@@ -92,6 +93,8 @@ def divided_at_gap(
     far[: edge + 1] = 0.0
     others = [pair for c, pair in enumerate(rows) if c != widest]
     weights = _binomial_weights(count, float(near.sum()), float(far.sum()))
+    if weights is None:
+        return None
     return _parts(weights, others, near / near.sum(), far / far.sum())
 
 
@@ -106,10 +109,17 @@ def _parts(
         yield float(weights[beyond]), float(left[place]), [m for m, _ in kept], [n for _, n in kept]
 
 
-def _binomial_weights(count: int, near: float, far: float) -> NDArray[np.float64]:
-    """``C(count, j) near**(count - j) far**j`` for each j, (count + 1,) float64, from the larger share downward."""
+def _binomial_weights(count: int, near: float, far: float) -> NDArray[np.float64] | None:
+    """``C(count, j) near**(count - j) far**j`` for each j, (count + 1,) float64, from the larger share downward.
+
+    None where more than `MOST_PARTS` of them matter: then no gap is left in the sum, and dividing would not help.
+    """
     if near > far:
-        return _binomial_weights(count, far, near)[::-1]
+        weights = _binomial_weights(count, far, near)
+        return None if weights is None else weights[::-1]
     steps = np.arange(count, dtype=np.float64)
-    ratios = (count - steps) / (steps + 1.0) * (near / far)
-    return np.append(1.0, np.cumprod(ratios))[::-1] * far**count
+    with np.errstate(over="ignore"):
+        relative = np.append(1.0, np.cumprod((count - steps) / (steps + 1.0) * (near / far)))
+    if not np.isfinite(relative).all() or (relative > 1e-13).sum() > MOST_PARTS:
+        return None
+    return np.asarray(relative[::-1] * far**count)

@@ -73,7 +73,7 @@ def spectrum(terms: EndwiseTerms, at: TiltedTerms, length: int, negligible: floa
                 values = values * np.multiply.reduce(_power(single, counts), axis=1)
             else:
                 values = values * np.multiply.reduce(single, axis=1)
-            noise = TERM_NOISE + EPS * (float(np.log2(length)) + (table.turn if table is not None else 0.0))
+            noise = TERM_NOISE + EPS * (float(np.log2(length)) if table is None else table.turn)
             modulus = np.maximum(modulus, SMALL)
             slopes = slopes + (counts * noise / modulus).sum(axis=1)
             sizes = sizes * np.multiply.reduce(modulus**counts if np.any(counts > 1) else modulus, axis=1)

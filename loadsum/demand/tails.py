@@ -16,7 +16,7 @@ from loadsum.demand.directsum import affordable, at_or_below_directly, divided_a
 from loadsum.demand.spectrum import Spectrum, spectrum
 from loadsum.demand.tilting import EPS, EndwiseTerms, endwise, saddlepoint, tilted, window
 
-ACCEPTED = 5e-11  # relative error estimate up to which a probability is taken
+ACCEPTED = 5e-11  # relative error estimate up to which a probability is taken, or what many copies make inevitable
 ALIAS = 1e-15  # tilted mass allowed outside the window, before scaling by the share of the tail in the tilted mass
 CHEAP = 4e6  # products up to which direct convolution is done at once
 AFFORDABLE = 4e8  # products up to which direct convolution is done when tilts have failed
@@ -69,6 +69,7 @@ def at_or_below(terms: EndwiseTerms, rho: NDArray[np.int64], depth: int = 0) -> 
         probability[pending], error[pending] = at_or_below_directly(terms, 0, rho[pending])
         return Tails(probability, error, tilts)
     error[pending] = np.inf
+    accepted = max(ACCEPTED, 16.0 * EPS * float(terms.copies.max()))
     attempt, pivot, spread = np.zeros(rho.shape[0], dtype=np.int64), _middle(rho, pending), np.zeros(rho.shape[0])
     while pending.any():
         busy = np.flatnonzero(pending.any(axis=1))
@@ -79,13 +80,13 @@ def at_or_below(terms: EndwiseTerms, rho: NDArray[np.int64], depth: int = 0) -> 
         error[busy] = np.where(better, estimate, error[busy])
         tilts[busy] += pending[busy]
         attempt[busy] += 1
-        done = error[busy, pivot[busy]] <= ACCEPTED
+        done = error[busy, pivot[busy]] <= accepted
         for g in busy[~done & (attempt[busy] == len(SHIFTS))]:
             _by_other_means(terms, int(g), rho, pending, (probability, error), pivot, depth)
             pending[g, pivot[g]] = False
             attempt[g] = 0
         attempt[busy[done]] = 0
-        pending &= error > ACCEPTED
+        pending &= error > accepted
         fresh = np.flatnonzero(attempt == 0)
         pivot[fresh] = _middle(rho[fresh], pending[fresh])
     return Tails(probability, error, tilts)

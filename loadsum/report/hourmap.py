@@ -1,18 +1,19 @@
 """Exceedance of each rating in every demand interval of every class of days: what the report's map shows."""
 
-from collections.abc import Mapping, Sequence
+from collections.abc import Sequence
 from dataclasses import dataclass
 
 import numpy as np
 from numpy.typing import NDArray
 
-from loadsum.demand.hourly import GroupDemand
+from loadsum.intake.hourclass import DayBlock
 from loadsum.intake.readings import read_only
+from loadsum.peak.exceedance import LevelExceedance
 
 
 @dataclass(frozen=True, slots=True, kw_only=True, eq=False)
 class HourMap:
-    """Exceedance of the loading allowed of each rating, for each class of days and interval of the day.
+    """Exceedance of one level of each rating, for each class of days and interval of the day.
 
     Parameters
     ----------
@@ -21,7 +22,7 @@ class HourMap:
     season, day_type : tuple of str
         Names of the B classes of days.
     level_kva : (R, B) float64
-        Loading allowed in normal service. [kVA]
+        Level of each rating in each class of days. [kVA]
     probability : (R, B, I) float64
         Predictive probability of exceedance; NaN where there are no readings. [-]
     floor : (B, I) float64
@@ -43,38 +44,25 @@ class HourMap:
             read_only(array)
 
 
-def hour_map(demand: GroupDemand, ratings_kva: Sequence[float], allowed_pu: Mapping[str, float]) -> HourMap:
-    """The map of a group's demand.
+def hour_map(blocks: Sequence[DayBlock], ratings_kva: Sequence[float], levels: Sequence[LevelExceedance]) -> HourMap:
+    """The map of exceedances that were computed already.
 
     Parameters
     ----------
-    demand : GroupDemand
-        Demand model.
+    blocks : sequence of DayBlock
+        Classes of days, in the order of the levels' first axis.
     ratings_kva : sequence of float
         Ratings. [kVA]
-    allowed_pu : mapping of str to float
-        Loading allowed in normal service by season, "all" for every season without its own; 1 where neither is
-        given. [pu of nameplate]
+    levels : sequence of LevelExceedance
+        Exceedance of the level of each rating, in the order of the ratings.
     """
-    ratings = np.array(ratings_kva, dtype=np.float64)
-    allowed = np.array([allowed_pu.get(block.season, allowed_pu.get("all", 1.0)) for block in demand.blocks])
-    level = ratings[:, None] * allowed[None, :]
-    intervals = 1440 // demand.interval_min
-    probability = np.full((ratings.size, len(demand.blocks), intervals), np.nan)
-    floor = np.full((len(demand.blocks), intervals), np.nan)
-    for b, row in enumerate(demand.hours):
-        for i, hour in enumerate(row):
-            if hour is None:
-                continue
-            for r in range(ratings.size):
-                found = hour.exceedance_kva(float(level[r, b]))
-                probability[r, b, i] = found.value
-                floor[b, i] = found.floor
+    if len(ratings_kva) != len(levels) or not levels:
+        raise ValueError(f"need one level for each rating, got {len(levels)} for {len(ratings_kva)}")
     return HourMap(
-        ratings_kva=ratings,
-        season=tuple(block.season for block in demand.blocks),
-        day_type=tuple(block.day_type for block in demand.blocks),
-        level_kva=level,
-        probability=probability,
-        floor=floor,
+        ratings_kva=np.array(ratings_kva, dtype=np.float64),
+        season=tuple(block.season for block in blocks),
+        day_type=tuple(block.day_type for block in blocks),
+        level_kva=np.array([level.level_kva for level in levels]),
+        probability=np.array([level.probability for level in levels]),
+        floor=np.array(levels[0].floor),
     )

@@ -4,12 +4,17 @@ from collections.abc import Callable, Mapping, Sequence
 from typing import Any
 
 from loadsum.report.figures import (
+    calibration,
     criterion_margins,
     demand_by_hour,
     exceedance_curve,
     exceedance_map,
+    hot_spot,
+    maximum_by_number,
     normal_factor,
     quality_calendar,
+    rare_levels,
+    scenarios,
 )
 from loadsum.report.figures.plate import DrawnFigure, png, svg
 from loadsum.report.material import Material, Unit
@@ -20,6 +25,11 @@ OF_A_TRANSFORMER: Sequence[Callable[[Material, Unit], DrawnFigure | None]] = (
     demand_by_hour.figure,
     exceedance_curve.figure,
     normal_factor.figure,
+    rare_levels.figure,
+    maximum_by_number.figure,
+    hot_spot.figure,
+    scenarios.figure,
+    calibration.figure,
 )
 OF_THE_STUDY: Sequence[Callable[[Material], DrawnFigure | None]] = (quality_calendar.figure,)
 

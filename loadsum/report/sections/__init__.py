@@ -3,12 +3,30 @@
 from collections.abc import Callable, Sequence
 
 from loadsum.report.material import Material, Section, Unit
-from loadsum.report.sections import data, demand, first_page, foundations, overview, ratings, sign_off
+from loadsum.report.sections import (
+    data,
+    demand,
+    evidence,
+    first_page,
+    foundations,
+    future,
+    overview,
+    peaks,
+    ratings,
+    sign_off,
+    thermal,
+)
 
 OF_A_TRANSFORMER: Sequence[Callable[[Material, Unit], Section | None]] = (
     ratings.section,
     demand.map_section,
     demand.curve_section,
+    peaks.section,
+    peaks.diversity_section,
+    thermal.section,
+    thermal.losses_section,
+    future.section,
+    evidence.section,
 )
 OF_THE_STUDY: Sequence[Callable[[Material], Section | None]] = (
     data.section,

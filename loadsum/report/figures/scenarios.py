@@ -1,0 +1,92 @@
+"""Scenarios side by side: expected hours above each rating."""
+
+import numpy as np
+
+from loadsum.report.figures.plate import GREY, INK, PALE, DrawnFigure, axes_mm, plate
+from loadsum.report.material import Material, Unit
+
+NAME = "scenarios"
+SIGNS = ("o", "s", "D", "^", "v")
+LOWEST = 0.01
+
+
+def figure(m: Material, unit: Unit) -> DrawnFigure | None:
+    """One row a scenario, one sign a rating; filled where the criteria are met."""
+    scenarios = [s for s in unit.rows("scenarios") if s.get("by_rating")]
+    if not scenarios:
+        return None
+    limit = next(
+        (
+            c.get("limit")
+            for c in (unit.part("selection") or {}).get("criteria") or ()
+            if "hours" in str(c.get("quantity"))
+        ),
+        None,
+    )
+    ratings = list(dict.fromkeys(row["rating_kva"] for s in scenarios for row in s["by_rating"]))
+    highest = max([10.0] + [row.get("hours_per_year") or 0.0 for s in scenarios for row in s["by_rating"]])
+    with plate(22.0 + 8.0 * len(scenarios)) as fig:
+        ax = axes_mm(fig, 58.0, 11.0, 6.0, 9.0)
+        for y, scenario in enumerate(scenarios):
+            ax.axhline(y, color=PALE, linewidth=0.5, zorder=0)
+            for row in scenario["by_rating"]:
+                if row.get("hours_per_year") is None:
+                    continue
+                hours = float(np.clip(row["hours_per_year"], LOWEST, None))
+                sign = SIGNS[ratings.index(row["rating_kva"]) % len(SIGNS)]
+                good = limit is None or row["hours_per_year"] <= limit
+                ax.plot(
+                    [hours],
+                    [y],
+                    sign,
+                    markersize=4.8,
+                    markeredgecolor=INK,
+                    markeredgewidth=0.8,
+                    markerfacecolor=INK if good else "white",
+                    zorder=3,
+                    clip_on=False,
+                )
+        first = [row for row in scenarios[0]["by_rating"] if row.get("hours_per_year") is not None]
+        for row in first:
+            ax.annotate(
+                m.kva(row["rating_kva"]),
+                (max(row["hours_per_year"], LOWEST), 0),
+                xytext=(0, 7),
+                textcoords="offset points",
+                ha="center",
+                va="bottom",
+                fontsize=7,
+                annotation_clip=False,
+            )
+        if limit is not None:
+            ax.axvline(limit, color=GREY, linewidth=0.8, linestyle=(0, (1, 1.6)))
+            ax.annotate(
+                m.t(f"figure.{NAME}.limit"),
+                (limit, len(scenarios) - 0.5),
+                xytext=(2, 2),
+                textcoords="offset points",
+                fontsize=7,
+            )
+        ax.set_xscale("log")
+        ax.set_xlim(LOWEST, 2.0 * highest)
+        ticks = [t for t in (0.01, 0.1, 1.0, 10.0, 100.0, 1000.0, 10000.0) if t <= 2.0 * highest]
+        ax.set_xticks(ticks, [("≤ " if t == LOWEST else "") + m.plain(t) for t in ticks])
+        ax.set_xticks([], minor=True)
+        ax.set_ylim(len(scenarios) - 0.5, -0.5)
+        ax.set_yticks(range(len(scenarios)), [str(s.get("name", ""))[:38] for s in scenarios])
+        ax.tick_params(axis="y", length=0)
+        ax.spines["left"].set_visible(False)
+        ax.set_xlabel(m.t(f"figure.{NAME}.axis"))
+    parts = [
+        f"{s.get('name', '')}: "
+        + ", ".join(f"{m.kva(row['rating_kva'])} {m.hours(row.get('hours_per_year'))} h" for row in s["by_rating"])
+        + "."
+        for s in scenarios
+    ]
+    return DrawnFigure(
+        name=unit.figure(NAME),
+        title=m.t(f"figure.{NAME}.title"),
+        note=m.t(f"figure.{NAME}.note"),
+        alt=m.t(f"figure.{NAME}.alt", parts=" ".join(parts)),
+        figure=fig,
+    )
