@@ -13,7 +13,9 @@ from numpy.typing import NDArray
 
 from loadsum.intake.findings import Finding
 from loadsum.intake.inputs import InputFile
+from loadsum.study.assumptions import Assumption
 from loadsum.study.tables import Heading, Person
+from loadsum.transformer.selection import Selection
 
 SCHEMA_VERSION = 1
 
@@ -192,6 +194,8 @@ class TransformerResults:
     hours: tuple[HourRow, ...] = ()
     curve: Curve | None = None
     exceedance: tuple[ExceedanceRow, ...] = ()
+    selection: Selection | None = None
+    assumptions: tuple[Assumption, ...] = ()
 
 
 @dataclass(frozen=True, slots=True, kw_only=True, eq=False)
