@@ -25,6 +25,8 @@ class KeyInfo:
         Bounds of a number, or of every number in a list.
     advice : str
         What to do when a required key is missing.
+    blank : bool
+        Whether empty text may stand beside the choices; so where the key's default is empty.
     """
 
     doc: str
@@ -34,8 +36,10 @@ class KeyInfo:
     at_least: float | None = None
     at_most: float | None = None
     advice: str = ""
+    blank: bool = False
 
 
 def key(doc: str, *, default: Any = MISSING, default_factory: Callable[[], Any] | Any = MISSING, **info: Any) -> Any:
     """A dataclass field that is a key of the study file; without a default the key is required."""
-    return field(default=default, default_factory=default_factory, metadata={"key": KeyInfo(doc=doc, **info)})
+    known = KeyInfo(doc=doc, blank=default == "", **info)
+    return field(default=default, default_factory=default_factory, metadata={"key": known})

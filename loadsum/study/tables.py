@@ -121,6 +121,9 @@ class Customer:
     service_rating_kw: float = key("Rating of the service; 0 where unknown. [kW]", default=0.0, at_least=0.0)
     export: bool = key("Whether the customer may export.", default=False)
     devices: tuple[str, ...] = key("Devices known to be there.", default=())
+    monthly_kwh: tuple[float, ...] = key(
+        "Energy billed in each month, January first, where there are no readings. [kWh]", default=(), at_least=0.0
+    )
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -216,6 +219,22 @@ class Transformer:
     )
     unmetered_hours: tuple[int, ...] = key(
         "Hours of the day at which the unmetered block runs; all when empty.", default=(), at_least=0, at_most=23
+    )
+    connection: str = key("Connection of the windings, as on the nameplate.", default="", example='"Dyn11"')
+    cooling: str = key("Cooling, as on the nameplate.", default="", example='"ONAN"')
+    temperature_rise_c: float = key(
+        "Average winding temperature rise at rated load, as on the nameplate; 0 where unknown. [K]",
+        default=0.0,
+        at_least=0.0,
+    )
+    impedance_pct: float = key(
+        "Short-circuit impedance, % of rated voltage; 0 where unknown.", default=0.0, at_least=0.0, at_most=100.0
+    )
+    year_made: int = key("Year of manufacture; 0 where unknown.", default=0, at_least=0)
+    sources: tuple[str, ...] = key(
+        "Source and date of figures of this table, each led by the key it is about.",
+        default=(),
+        example='["impedance_pct: nameplate, read 2031-02-03"]',
     )
 
 
