@@ -119,3 +119,29 @@ def kernel_bandwidth(shape: NDArray[np.float64]) -> float:
     .. [1] Silverman, Density Estimation for Statistics and Data Analysis, 1986, eq. 3.31 (from memory).
     """
     return 0.9 * float(shape.size) ** -0.2 if shape.size > 1 else 0.0
+
+
+def mean_variance(sums_kw: NDArray[np.float64], day: NDArray[np.int64]) -> NDArray[np.float64]:
+    """Variance of the mean of the sum, with weeks as blocks and at least that of independent days, (I,) float64. [kW²]
+
+    Parameters
+    ----------
+    sums_kw : (D, I) float64
+        Sums; NaN where a customer is missing. [kW]
+    day : (D,) int64
+        Local calendar day. [d]
+    """
+    intervals = sums_kw.shape[1]
+    week = (day + 3) // 7  # 1970-01-01 was a Thursday: weeks begin on Monday
+    found = np.zeros(intervals)
+    for i in range(intervals):
+        known = np.isfinite(sums_kw[:, i])
+        if known.sum() < 2:
+            continue
+        values = sums_kw[known, i]
+        away = values - values.mean()
+        _, place = np.unique(week[known], return_inverse=True)
+        blocks = np.bincount(place, weights=away)
+        by_week = float(blocks @ blocks) / values.size**2 * blocks.size / max(blocks.size - 1, 1)
+        found[i] = max(by_week, float(away @ away) / values.size / max(values.size - 1, 1))
+    return np.asarray(smoothing_weights(intervals, 1.5) @ found, dtype=np.float64)

@@ -1,7 +1,7 @@
 """Readings of a group of customers -> its demand model, hour by hour."""
 
 from collections.abc import Mapping, Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
 from numpy.typing import NDArray
@@ -13,16 +13,45 @@ from loadsum.demand.dependence import (
     common_component,
     group_movement,
     kernel_bandwidth,
-    smoothing_weights,
+    mean_variance,
 )
-from loadsum.demand.hourly import GroupDemand, HourDemand, with_normal, with_term
+from loadsum.demand.hourly import BlockDiagnostics, GroupDemand, HourDemand, with_normal, with_term
 from loadsum.demand.lattice import LatticeMass, lattice_mass
+from loadsum.demand.planned import Planned, PlannedTerm, planned_terms, pooled
 from loadsum.demand.samplingerror import Resamples, resample_weeks
 from loadsum.demand.settings import ModelSettings
 from loadsum.demand.temperature import TemperatureResponse, take_out_temperature
 from loadsum.intake.hourclass import DayBlock
 
 FEWEST_DAYS = 2
+MOST_POINTS = 2**14
+
+
+@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
+class Group:
+    """Who is served, and who else was metered.
+
+    Parameters
+    ----------
+    served : (C,) bool
+        Metered customers that the transformer serves; the others lend their class what they have shown.
+    classes : tuple of str
+        Class of each metered customer.
+    planned : tuple of Planned
+        Customers served that have no readings of their own.
+    may_export : (C,) bool
+        Metered customers that may export.
+    """
+
+    served: NDArray[np.bool_]
+    classes: tuple[str, ...]
+    planned: tuple[Planned, ...] = ()
+    may_export: NDArray[np.bool_] | None = None
+
+
+def all_served(count: int) -> Group:
+    """A group of one class whose metered customers are all served."""
+    return Group(served=np.ones(count, dtype=bool), classes=("all",) * count)
 
 
 def group_demand(
@@ -31,235 +60,321 @@ def group_demand(
     interval_min: int,
     power_factor: float,
     settings: ModelSettings,
+    group: Group | None = None,
     resolution_kw: float = 0.0,
     record_c: Mapping[tuple[str, str], NDArray[np.float64]] | None = None,
-    reference: Sequence[NDArray[np.float64]] | None = None,
     rng: np.random.Generator | None = None,
 ) -> GroupDemand:
-    """Demand model of a group of metered customers.
+    """Demand model of a group of customers.
 
     Parameters
     ----------
     blocks : sequence of DayBlock
-        Readings of the group's customers.
+        Readings of every metered customer, served or not.
     interval_min : int
         Demand interval. [min]
     power_factor : float
         Power factor of the group. [-]
     settings : ModelSettings
         Parts of the model that are on.
+    group : Group or None
+        Who is served; all metered customers, as one class, when None.
     resolution_kw : float
         Resolution that all meters share, as demand; 0 where unknown. [kW]
     record_c : mapping of (season, day type) to (n,) float64 or None
         Lagged daily means of the temperature record over which the year is mixed; the metered days when None. [°C]
-    reference : sequence of (R, D, I) float64 or None
-        Readings of further customers of the class that are not served, one array a block. [kW]
     rng : numpy.random.Generator or None
         Source of randomness of the intervals; needed where the settings ask for resamples.
+
+    Raises
+    ------
+    ValueError
+        Nobody is served, no metered customer stands for a planned one, or the generator is missing.
     """
     if settings.resamples and rng is None:
         raise ValueError(f"{settings.resamples} resamples need a random generator")
-    hours, sums = [], []
-    for b, block in enumerate(blocks):
-        others = None if reference is None else reference[b]
-        record = None if record_c is None else record_c.get((block.season, block.day_type))
-        made, observed = _block(block, others, record, interval_min, power_factor, settings, resolution_kw, rng)
-        hours.append(made)
-        sums.append(observed)
+    group = group or all_served(blocks[0].kw.shape[0])
+    terms = planned_terms(group.planned, group.classes, annual_energy(blocks, interval_min))
+    if not group.served.any() and not terms:
+        raise ValueError("the group serves nobody")
+    built = [
+        _Block(
+            block=block,
+            record_c=None if record_c is None else record_c.get((block.season, block.day_type)),
+            interval_min=interval_min,
+            power_factor=power_factor,
+            settings=settings,
+            group=group,
+            terms=terms,
+            resolution_kw=resolution_kw,
+        )
+        for block in blocks
+    ]
+    made = [one.hours(rng) for one in built]
+    served_blocks = [
+        replace(
+            block,
+            kw=block.kw[group.served].copy(),
+            kvar=None if block.kvar is None else block.kvar[group.served].copy(),
+        )
+        for block in blocks
+    ]
+    sums = [
+        block.kw.sum(axis=0) if block.kw.shape[0] else np.full(block.kw.shape[1:], np.nan) for block in served_blocks
+    ]
+    for array in sums:
+        array.flags.writeable = False
     return GroupDemand(
-        interval_min=interval_min, blocks=tuple(blocks), hours=tuple(hours), sums_kw=tuple(sums), settings=settings
+        interval_min=interval_min,
+        blocks=tuple(served_blocks),
+        hours=tuple(hours for hours, _ in made),
+        sums_kw=tuple(sums),
+        settings=settings,
+        diagnostics=tuple(found for _, found in made),
     )
+
+
+def annual_energy(blocks: Sequence[DayBlock], interval_min: int) -> NDArray[np.float64]:
+    """Energy of each metered customer per average year, over the classes of days with readings, (C,) float64. [kWh]"""
+    total = np.zeros(blocks[0].kw.shape[0])
+    for block in blocks:
+        known = np.isfinite(block.kw)
+        count = known.sum(axis=1)
+        mean = np.divide(np.where(known, block.kw, 0.0).sum(axis=1), count, out=np.zeros(count.shape), where=count > 0)
+        total += block.days_per_year * mean.sum(axis=1) * interval_min / 60.0
+    return total
 
 
 @dataclass(frozen=True, slots=True, kw_only=True, eq=False)
-class _Adjusted:
-    """Readings of one block with the temperature response taken out, and the responses by interval."""
+class _Block:
+    """One class of days and everything its intervals have in common."""
 
-    kw: NDArray[np.float64]
-    responses: tuple[TemperatureResponse | None, ...]
+    block: DayBlock
+    record_c: NDArray[np.float64] | None
+    interval_min: int
+    power_factor: float
+    settings: ModelSettings
+    group: Group
+    terms: tuple[PlannedTerm, ...]
+    resolution_kw: float
 
+    def weights(self) -> NDArray[np.float64]:
+        """How many times each metered customer counts in the group, planned ones shared among their members, (C,)."""
+        weight = self.group.served.astype(np.float64)
+        for term in self.terms:
+            np.add.at(weight, term.members, term.count * term.scale / term.members.size)
+        return weight
 
-def _block(
-    block: DayBlock,
-    others: NDArray[np.float64] | None,
-    record_c: NDArray[np.float64] | None,
-    interval_min: int,
-    power_factor: float,
-    settings: ModelSettings,
-    resolution_kw: float,
-    rng: np.random.Generator | None,
-) -> tuple[tuple[HourDemand | None, ...], NDArray[np.float64]]:
-    """Every interval of one class of days, and the observed sums."""
-    intervals = block.kw.shape[2]
-    observed = block.kw.sum(axis=0)
-    observed.flags.writeable = False
-    enough = (np.isfinite(block.kw).sum(axis=1) >= FEWEST_DAYS).all(axis=0)
-    if not enough.any():
-        return (None,) * intervals, observed
-    adjusted = _without_temperature(block, settings)
-    common = common_component(adjusted.kw, settings.smoothing_h * 60.0 / interval_min)
-    raw = common_component(block.kw, settings.smoothing_h * 60.0 / interval_min)
-    target = _target_variance(common)
-    target_raw = _target_variance(raw)
-    week = _mean_variance(adjusted.kw.sum(axis=0), block.day)
-    record = block.temperature_c if record_c is None else record_c
-    sums = adjusted.kw.sum(axis=0)
-    resamples: tuple[Resamples | None, ...] = (None,) * intervals
-    if rng is not None:
-        resamples = resample_weeks(observed, block.day, settings.resamples, rng)
-    return tuple(
-        _hour(
-            block,
-            adjusted,
-            others,
-            sums,
-            i,
-            float(target[i]),
-            float(target_raw[i]),
-            float(week[i]),
-            record,
-            interval_min,
-            power_factor,
-            settings,
-            resolution_kw,
-            resamples[i],
+    def hours(self, rng: np.random.Generator | None) -> tuple[tuple[HourDemand | None, ...], BlockDiagnostics]:
+        """Every interval, and the diagnostics of the class of days."""
+        kw = self.block.kw
+        intervals = kw.shape[2]
+        weight = self.weights()
+        counted = weight > 0.0
+        known = np.isfinite(kw)
+        enough = (known[self.group.served].sum(axis=1) >= FEWEST_DAYS).all(axis=0) & known[counted].any(axis=(0, 1))
+        adjusted, responses = self._without_temperature(weight)
+        reach = self.settings.smoothing_h * 60.0 / self.interval_min
+        together = self.group.served if self.group.served.sum() >= 2 else np.ones(kw.shape[0], dtype=bool)
+        common = common_component(adjusted[together], reach)
+        raw = common_component(kw[together], reach)
+        equivalent = np.einsum("c,cdi->di", weight[counted], adjusted[counted])
+        observed = np.einsum("c,cdi->di", weight[counted], kw[counted])
+        spread_of_mean = mean_variance(equivalent, self.block.day)
+        nothing: tuple[Resamples | None, ...] = (None,) * intervals
+        resamples = nothing if rng is None else resample_weeks(observed, self.block.day, self.settings.resamples, rng)
+        made = tuple(
+            self._hour(
+                i,
+                adjusted[:, :, i],
+                equivalent,
+                self._correlation(common)[i],
+                self._correlation(raw)[i],
+                float(spread_of_mean[i]),
+                responses[i],
+                resamples[i],
+            )
+            if enough[i]
+            else None
+            for i in range(intervals)
         )
-        if enough[i]
-        else None
-        for i in range(intervals)
-    ), observed
+        return made, self._diagnostics(made, raw, responses, weight)
 
+    def _correlation(self, common: CommonComponent) -> NDArray[np.float64]:
+        """Mean correlation between customers, not negative; the user's figure where it was given."""
+        if self.settings.correlation is not None:
+            return np.full(common.correlation.size, max(self.settings.correlation, 0.0))
+        return np.maximum(common.correlation, 0.0)
 
-def _without_temperature(block: DayBlock, settings: ModelSettings) -> _Adjusted:
-    intervals = block.kw.shape[2]
-    if not settings.temperature or block.temperature_c is None:
-        return _Adjusted(kw=block.kw, responses=(None,) * intervals)
-    kw = np.array(block.kw)
-    responses = []
-    for i in range(intervals):
-        kw[:, :, i], response = take_out_temperature(block.kw[:, :, i], block.temperature_c)
-        responses.append(response)
-    return _Adjusted(kw=kw, responses=tuple(responses))
+    def _without_temperature(
+        self, weight: NDArray[np.float64]
+    ) -> tuple[NDArray[np.float64], tuple[TemperatureResponse | None, ...]]:
+        kw, temperature = self.block.kw, self.block.temperature_c
+        intervals = kw.shape[2]
+        if not self.settings.temperature or temperature is None:
+            return kw, (None,) * intervals
+        adjusted = np.array(kw)
+        responses = []
+        for i in range(intervals):
+            adjusted[:, :, i], response = take_out_temperature(kw[:, :, i], temperature, weight)
+            responses.append(response)
+        return adjusted, tuple(responses)
 
+    def _hour(
+        self,
+        i: int,
+        adjusted: NDArray[np.float64],
+        equivalent: NDArray[np.float64],
+        correlation: float,
+        raw_correlation: float,
+        mean_variance_kw2: float,
+        response: TemperatureResponse | None,
+        resamples: Resamples | None,
+    ) -> HourDemand:
+        """One demand interval; ``adjusted`` is (C, D)."""
+        served = np.flatnonzero(self.group.served)
+        raw = self.block.kw[:, :, i]
+        own = [raw[c][np.isfinite(raw[c])] for c in served]
+        like = [(term, *pooled(term, raw)) for term in self.terms]
+        like = [(term, values, weights) for term, values, weights in like if values.size]
+        raw_spreads = np.array(
+            [values.std(ddof=1) for values in own]
+            + [weighted_variance(v, w) ** 0.5 for term, v, w in like for _ in range(term.count)]
+        )
+        target_raw = float((1.0 - raw_correlation) * (raw_spreads**2).sum() + raw_correlation * raw_spreads.sum() ** 2)
+        step = self.settings.lattice_kw or lattice_step(
+            [*own, *(v for _, v, _ in like)], target_raw**0.5, self.resolution_kw
+        )
+        down, up, counts, spreads, held = [], [], [], [], 0.0
+        for c in served.tolist():
+            values = adjusted[c][np.isfinite(adjusted[c])]
+            spreads.append(float(values.std(ddof=1)))
+            low, high, variance = self._customer(c, values, adjusted, step, response is not None)
+            down.append(low)
+            up.append(high)
+            counts.append(1)
+            held += variance
+        for term, _, _ in like:
+            values, weights = pooled(term, adjusted)
+            points = np.rint(values / step) * step
+            low = lattice_mass(points, step, "down", weights)
+            variance = weighted_variance(points, weights)
+            down.append(low)
+            up.append(low)
+            counts.append(term.count)
+            spreads.extend([variance**0.5] * term.count)
+            held += variance * term.count
+        sd = np.array(spreads)
+        target = float((1.0 - correlation) * (sd**2).sum() + correlation * sd.sum() ** 2)
+        exact = all(a is b for a, b in zip(down, up, strict=True))
+        lower = DemandSum(terms=tuple(down), counts=tuple(counts))
+        still = BracketedSum(down=lower, up=lower if exact else DemandSum(terms=tuple(up), counts=tuple(counts)))
+        if self.settings.common_component:
+            shape = group_movement(equivalent, i, self.settings.neighbour_hours)
+            width = kernel_bandwidth(shape)
+            scale = max(target - held, 0.0) ** 0.5 / (1.0 + width**2) ** 0.5
+            still = with_term(still, shape * scale, np.full(shape.size, 1.0 / shape.size), width * scale)
+        if self.settings.mean_uncertainty:
+            still = with_normal(still, mean_variance_kw2**0.5)
+        total = self._over_the_record(still, response)
+        whole_down = total.down.plain_distribution()
+        nearest = DemandSum(
+            terms=(*(_nearest(v, step, None) for v in own), *(_nearest(v, step, w) for _, v, w in like)),
+            counts=tuple(counts),
+        )
+        can_export = bool(min([*(v.min() for v in own), *(v.min() for _, v, _ in like)]) < 0.0)
+        return HourDemand(
+            season=self.block.season,
+            day_type=self.block.day_type,
+            interval=i,
+            interval_min=self.interval_min,
+            n_days=self._days(adjusted),
+            total=total,
+            whole_down=whole_down,
+            whole_up=whole_down if total.exact else total.up.plain_distribution(),
+            still=still,
+            response=response,
+            independent=nearest.plain_distribution(),
+            covariance_variance_kw2=target_raw,
+            power_factor=self.power_factor,
+            mean_variance_kw2=mean_variance_kw2 if self.settings.mean_uncertainty else 0.0,
+            can_export=can_export,
+            resamples=resamples,
+        )
 
-def _target_variance(common: CommonComponent) -> NDArray[np.float64]:
-    """Variance that the model must have: the customers' own plus the smoothed covariance, which is not negative."""
-    single = common.independent_variance_kw2
-    # pairs of standard deviations that the mean correlation multiplies, from the interval's own variances
-    pairs = common.pairs_kw2
-    return np.asarray(single + np.maximum(common.correlation, 0.0) * pairs, dtype=np.float64)
+    def _days(self, adjusted: NDArray[np.float64]) -> int:
+        """Days of readings of the counted customer that has fewest, of those with any. [d]"""
+        count = np.isfinite(adjusted[self.weights() > 0.0]).sum(axis=1)
+        return int(count[count > 0].min())
 
+    def _customer(
+        self, c: int, values: NDArray[np.float64], adjusted: NDArray[np.float64], step: float, moved: bool
+    ) -> tuple[LatticeMass, LatticeMass, float]:
+        """Predictive distribution of one customer rounded down and up (one object where exact), and its variance.
 
-def _mean_variance(sums_kw: NDArray[np.float64], day: NDArray[np.int64]) -> NDArray[np.float64]:
-    """Variance of the mean of the sum with weeks as blocks, at least that of independent days, smoothed, (I,). [kW²]"""
-    intervals = sums_kw.shape[1]
-    week = (day + 3) // 7  # 1970-01-01 was a Thursday: weeks begin on Monday
-    found = np.zeros(intervals)
-    for i in range(intervals):
-        known = np.isfinite(sums_kw[:, i])
-        if known.sum() < 2:
-            continue
-        values, weeks = sums_kw[known, i], week[known]
-        away = values - values.mean()
-        _, place = np.unique(weeks, return_inverse=True)
-        blocks = np.bincount(place, weights=away)
-        count = blocks.size
-        by_week = float(blocks @ blocks) / values.size**2 * count / max(count - 1, 1)
-        found[i] = max(by_week, float(away @ away) / values.size / max(values.size - 1, 1))
-    return np.asarray(smoothing_weights(intervals, 1.5) @ found, dtype=np.float64)
-
-
-def _hour(
-    block: DayBlock,
-    adjusted: _Adjusted,
-    others: NDArray[np.float64] | None,
-    sums_kw: NDArray[np.float64],
-    i: int,
-    target_kw2: float,
-    target_raw_kw2: float,
-    mean_variance_kw2: float,
-    record_c: NDArray[np.float64] | None,
-    interval_min: int,
-    power_factor: float,
-    settings: ModelSettings,
-    resolution_kw: float,
-    resamples: Resamples | None,
-) -> HourDemand:
-    own = [row[np.isfinite(row)] for row in adjusted.kw[:, :, i]]
-    raw = [row[np.isfinite(row)] for row in block.kw[:, :, i]]
-    spread = max(target_kw2, target_raw_kw2) ** 0.5
-    step = settings.lattice_kw or lattice_step(raw, spread, resolution_kw)
-    relative = relative_readings(adjusted.kw[:, :, i])
-    if others is not None:
-        relative = [*relative, *relative_readings(others[:, :, i])]
-    down, up, variance = [], [], 0.0
-    for c, values in enumerate(own):
-        if adjusted.responses[i] is not None:
+        What is adjusted or borrowed is stated to the lattice, as a meter would state it; only readings as they were
+        metered are rounded outward.
+        """
+        alike = [n for n, name in enumerate(self.group.classes) if name == self.group.classes[c]]
+        extra, share = np.empty(0), np.empty(0)
+        if self.settings.shrinkage and self.settings.borrowed_days > 0.0:
+            extra, share = borrowed(relative_readings(adjusted[alike]), alike.index(c), float(values.mean()))
+        weight = self.settings.borrowed_days / (self.settings.borrowed_days + values.size) if extra.size else 0.0
+        if moved:
             values = np.rint(values / step) * step
-        low, high, part = _customer(values, relative, c, settings, step)
-        down.append(low)
-        up.append(high)
-        variance += part
-    exact = all(a is b for a, b in zip(down, up, strict=True))
-    lower = DemandSum(terms=tuple(down), counts=(1,) * len(down))
-    still = BracketedSum(down=lower, up=lower if exact else DemandSum(terms=tuple(up), counts=(1,) * len(up)))
-    if settings.common_component:
-        left = max(target_kw2 - variance, 0.0)
-        shape = group_movement(sums_kw, i, settings.neighbour_hours)
-        width = kernel_bandwidth(shape)
-        scale = left**0.5 / (1.0 + width**2) ** 0.5
-        still = with_term(still, shape * scale, np.full(shape.size, 1.0 / shape.size), width * scale)
-    if settings.mean_uncertainty:
-        still = with_normal(still, mean_variance_kw2**0.5)
-    response = adjusted.responses[i]
-    total = still
-    if response is not None and record_c is not None:
-        days = record_c[np.isfinite(record_c)]
-        shift, wide = response.shift_kw(days), float(response.shift_variance_kw2(days).mean()) ** 0.5
-        total = with_term(still, shift, np.full(days.size, 1.0 / days.size), wide)
-    nearest = DemandSum(terms=tuple(_nearest(values, step) for values in raw), counts=(1,) * len(raw))
-    whole_down = total.down.plain_distribution()
-    return HourDemand(
-        season=block.season,
-        day_type=block.day_type,
-        interval=i,
-        interval_min=interval_min,
-        n_days=min(values.size for values in own),
-        total=total,
-        whole_down=whole_down,
-        whole_up=whole_down if total.exact else total.up.plain_distribution(),
-        still=still,
-        response=response,
-        independent=nearest.plain_distribution(),
-        covariance_variance_kw2=target_raw_kw2,
-        power_factor=power_factor,
-        mean_variance_kw2=mean_variance_kw2 if settings.mean_uncertainty else 0.0,
-        resamples=resamples,
-    )
+        points = np.concatenate([values, np.rint(extra / step) * step])
+        weights = np.concatenate([np.full(values.size, (1.0 - weight) / values.size), share * weight])
+        down = lattice_mass(points, step, "down", weights)
+        up = lattice_mass(points, step, "up", weights)
+        if down.offset == up.offset and np.array_equal(down.mass, up.mass):
+            up = down
+        return down, up, weighted_variance(points, weights)
+
+    def _over_the_record(self, still: BracketedSum, response: TemperatureResponse | None) -> BracketedSum:
+        """The sum mixed over the temperatures of the record, those outside the metered range held at its ends."""
+        record = self.block.temperature_c if self.record_c is None else self.record_c
+        if response is None or record is None:
+            return still
+        days = record[np.isfinite(record)]
+        if not self.settings.beyond_metered_range:
+            days = np.clip(days, response.lowest_c, response.highest_c)
+        if days.size == 0:
+            return still
+        spread = float(response.shift_variance_kw2(days).mean()) ** 0.5
+        return with_term(still, response.shift_kw(days), np.full(days.size, 1.0 / days.size), spread)
+
+    def _diagnostics(
+        self,
+        made: tuple[HourDemand | None, ...],
+        raw: CommonComponent,
+        responses: tuple[TemperatureResponse | None, ...],
+        weight: NDArray[np.float64],
+    ) -> BlockDiagnostics:
+        present = [hour for hour in made if hour is not None]
+        model = sum(hour.variance_kw2() - hour.mean_variance_kw2 for hour in present)
+        observed = sum(float(raw.observed_variance_kw2[hour.interval]) for hour in present)
+        explained = [r.explained for r in responses if r is not None]
+        outside = 0
+        if self.record_c is not None and present and any(r is not None for r in responses):
+            low = min(r.lowest_c for r in responses if r is not None)
+            high = max(r.highest_c for r in responses if r is not None)
+            outside = int(((self.record_c < low) | (self.record_c > high)).sum())
+        below = [hour.whole_up.below(0.0) for hour in present if not hour.can_export]
+        comparable = bool(np.array_equal(weight, self.group.served.astype(float)))
+        return BlockDiagnostics(
+            season=self.block.season,
+            day_type=self.block.day_type,
+            days=int(self.block.day.size),
+            correlation=float(raw.correlation.mean()),
+            variance_ratio=model / observed if comparable and observed > 0.0 else float("nan"),
+            temperature_explains=float(np.mean(explained)) if explained else 0.0,
+            record_days_outside=outside,
+            share_below_zero=max(below, default=0.0),
+        )
 
 
-def _customer(
-    values: NDArray[np.float64], relative: list[NDArray[np.float64]], c: int, settings: ModelSettings, step: float
-) -> tuple[LatticeMass, LatticeMass, float]:
-    """Predictive distribution of one customer rounded down and up (one object where exact), and its variance."""
-    extra, share = borrowed(relative, c, float(values.mean())) if settings.shrinkage else (np.empty(0), np.empty(0))
-    weight = settings.borrowed_days / (settings.borrowed_days + values.size) if extra.size else 0.0
-    # a borrowed reading is stated to the lattice, as a meter would state it; only own readings are rounded outward
-    points = np.concatenate([values, np.rint(extra / step) * step])
-    weights = np.concatenate([np.full(values.size, (1.0 - weight) / values.size), share * weight])
-    variance = weighted_variance(points, weights)
-    down = lattice_mass(points, step, "down", weights)
-    up = lattice_mass(points, step, "up", weights)
-    if down.offset == up.offset and down.mass.size == up.mass.size and np.array_equal(down.mass, up.mass):
-        up = down
-    return down, up, variance
-
-
-def _nearest(values: NDArray[np.float64], step: float) -> LatticeMass:
-    return lattice_mass(np.rint(values / step) * step, step, "down")
-
-
-MOST_POINTS = 2**14
+def _nearest(values: NDArray[np.float64], step: float, weights: NDArray[np.float64] | None) -> LatticeMass:
+    return lattice_mass(np.rint(values / step) * step, step, "down", weights)
 
 
 def lattice_step(readings: Sequence[NDArray[np.float64]], spread_kw: float, resolution_kw: float) -> float:

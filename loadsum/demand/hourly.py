@@ -51,6 +51,8 @@ class HourDemand:
         Power factor of the group. [-]
     mean_variance_kw2 : float
         Variance of the mean that the model carries. [kW²]
+    can_export : bool
+        Whether any reading is negative; without, no flow is reversed.
     resamples : Resamples or None
         What resampled weeks do to the distribution; None where no interval was asked for or weeks are too few.
     """
@@ -69,6 +71,7 @@ class HourDemand:
     covariance_variance_kw2: float
     power_factor: float
     mean_variance_kw2: float
+    can_export: bool
     resamples: Resamples | None
 
     @property
@@ -127,7 +130,7 @@ class HourDemand:
         parts = []
         if direction != "exported":
             parts.append(self.exceedance(limit_kw))
-        if direction != "delivered":
+        if direction == "exported" or (direction == "both" and self.can_export):
             parts.append(self.below(-limit_kw))
         lower, upper = (min(sum(end), 1.0) for end in ([p.lower for p in parts], [p.upper for p in parts]))
         ends = [(p.low, p.high) for p in parts if p.low is not None and p.high is not None]
@@ -216,6 +219,39 @@ def with_normal(total: BracketedSum, spread_kw: float) -> BracketedSum:
     )
 
 
+@dataclass(frozen=True, slots=True, kw_only=True)
+class BlockDiagnostics:
+    """What justifies the model on one class of days.
+
+    Parameters
+    ----------
+    season, day_type : str
+        Class of days.
+    days : int
+        Days of readings. [d]
+    correlation : float
+        Mean correlation between customers over the day, as metered. [-]
+    variance_ratio : float
+        Variance of the model over that of the observed sum, summed over the day; NaN where the group is not the
+        metered customers alone. [-]
+    temperature_explains : float
+        Share of the sum's variance that the temperature response explains, mean over the day. [-]
+    record_days_outside : int
+        Days of the temperature record outside the metered range. [d]
+    share_below_zero : float
+        Largest probability of demand below zero in any interval of a group without export. [-]
+    """
+
+    season: str
+    day_type: str
+    days: int
+    correlation: float
+    variance_ratio: float
+    temperature_explains: float
+    record_days_outside: int
+    share_below_zero: float
+
+
 @dataclass(frozen=True, slots=True, kw_only=True, eq=False)
 class GroupDemand:
     """Distribution of the coincident demand over the whole year, one class of days after the other.
@@ -232,6 +268,8 @@ class GroupDemand:
         Observed time-aligned sum of the metered customers for each block; NaN where one is missing. [kW]
     settings : ModelSettings
         Settings the model was made with.
+    diagnostics : tuple of BlockDiagnostics
+        What justifies the model, one for each block.
     """
 
     interval_min: int
@@ -239,6 +277,7 @@ class GroupDemand:
     hours: tuple[tuple[HourDemand | None, ...], ...]
     sums_kw: tuple[NDArray[np.float64], ...]
     settings: ModelSettings
+    diagnostics: tuple[BlockDiagnostics, ...]
 
     def hours_in_year(self) -> NDArray[np.float64]:
         """Hours per average year of each interval of each block, (B, I) float64. [h]"""

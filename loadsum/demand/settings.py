@@ -21,6 +21,8 @@ class ModelSettings:
         Step of the lattice; 0 takes it from the meters' resolution. [kW]
     correlation : float or None
         Mean correlation between customers where they were never metered together; None takes the class's.
+    beyond_metered_range : bool
+        Whether days of the record outside the metered temperatures are extrapolated.
     resamples : int
         Resamples of whole weeks behind each interval; 0 makes no interval. [-]
     """
@@ -34,4 +36,5 @@ class ModelSettings:
     smoothing_h: float = 3.0
     lattice_kw: float = 0.0
     correlation: float | None = None
+    beyond_metered_range: bool = False
     resamples: int = 0

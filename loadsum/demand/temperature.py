@@ -60,7 +60,7 @@ def degrees(temperature_c: NDArray[np.float64]) -> NDArray[np.float64]:
 
 
 def take_out_temperature(
-    kw: NDArray[np.float64], temperature_c: NDArray[np.float64]
+    kw: NDArray[np.float64], temperature_c: NDArray[np.float64], weight: NDArray[np.float64]
 ) -> tuple[NDArray[np.float64], TemperatureResponse | None]:
     """Readings of one demand interval with each customer's temperature response taken out, and the group's response.
 
@@ -70,6 +70,8 @@ def take_out_temperature(
         Readings; NaN where missing. [kW]
     temperature_c : (D,) float64
         Lagged daily mean temperature; NaN where unknown. [°C]
+    weight : (C,) float64
+        How many times each customer counts in the group. [-]
 
     Returns
     -------
@@ -89,7 +91,8 @@ def take_out_temperature(
     design = away_all[:, list(columns)]
     centre = design[known].mean(axis=0)
     away = np.where(known[:, None], design - centre, 0.0)
-    total = kw.sum(axis=0)
+    counted = weight > 0.0
+    total = weight[counted] @ kw[counted]
     used = known & np.isfinite(total)
     if used.sum() < 10:
         return kw, None
