@@ -2,6 +2,7 @@
 
 import logging
 import platform
+from collections.abc import Sequence
 from importlib import metadata
 from pathlib import Path
 from typing import Any
@@ -10,20 +11,34 @@ import numpy as np
 
 from loadsum import __version__
 from loadsum.demand.group import group_demand
-from loadsum.demand.settings import ModelSettings
-from loadsum.intake.hourclass import calendar, day_blocks
+from loadsum.demand.served import (
+    cannot_be_studied,
+    record_by_class,
+    scaled,
+    served_by,
+    settings_of,
+    with_unmetered_block,
+)
+from loadsum.intake.hourclass import Calendar, DayBlock, calendar, day_blocks, metered_years
 from loadsum.intake.load import Loaded, load_readings
-from loadsum.intake.readings import Readings
-from loadsum.peak.exceedance import exceedance_hours
+from loadsum.intake.readings import shared_resolution
+from loadsum.peak.exceedance import days_by_month, exceedance_hours
 from loadsum.progress import Progress
 from loadsum.report import document, figures
 from loadsum.report.archive import RESULTS_FILE, STUDY_FILE, Attachment
 from loadsum.report.csvtables import csv_table
+from loadsum.report.hourmap import hour_map
 from loadsum.report.outputs import write_outputs
+from loadsum.report.quality import quality_calendar
+from loadsum.report.register import assumptions
 from loadsum.report.results import SCHEMA_VERSION, Program, StudyResults, TransformerResults, encode, to_json
 from loadsum.report.tables import coverage, curve, curve_levels, customer_rows, exceedance_rows, hour_rows
+from loadsum.study.checks import billed_kwh
 from loadsum.study.load import load_study
-from loadsum.study.tables import Customer, Study, Transformer
+from loadsum.study.tables import Study, Transformer
+from loadsum.transformer.loading import loadings
+from loadsum.transformer.ratings import ratings_of
+from loadsum.transformer.selection import evaluate
 
 log = logging.getLogger(__name__)
 
@@ -91,11 +106,17 @@ def inspect(path: Path, *, out: Path | None, progress: Progress) -> str:
 def compute(asked: Study, folder: Path, *, progress: Progress) -> StudyResults:
     """Results of a study whose files lie in a folder."""
     progress("reading meter files", 0.05)
+    log.info("reading meter files")
     loaded = load_readings(asked, folder)
+    readings = loaded.readings
+    years = metered_years(readings)
+    days = calendar(asked.season, asked.day_types, years)
+    blocks = day_blocks(readings, days, years, loaded.temperature)
     units = []
     for number, unit in enumerate(asked.transformer):
-        progress("computing", 0.2 + 0.6 * number / len(asked.transformer))
-        units.append(one_transformer(asked, unit, loaded))
+        progress("computing", 0.15 + 0.6 * number / len(asked.transformer))
+        log.info("computing transformer %s", unit.id or number + 1)
+        units.append(one_transformer(asked, unit, loaded, blocks, days, years))
     return StudyResults(
         schema_version=SCHEMA_VERSION,
         program=Program(
@@ -108,44 +129,74 @@ def compute(asked: Study, folder: Path, *, progress: Progress) -> StudyResults:
         people=asked.person,
         seed=asked.study.seed,
         inputs=loaded.inputs,
-        findings=loaded.readings.findings,
+        findings=readings.findings,
+        quality=quality_calendar(readings),
         transformers=tuple(units),
     )
 
 
-def one_transformer(asked: Study, unit: Transformer, loaded: Loaded) -> TransformerResults:
-    """Results of one transformer."""
+def one_transformer(
+    asked: Study,
+    unit: Transformer,
+    loaded: Loaded,
+    blocks: Sequence[DayBlock],
+    days: Calendar,
+    years: Sequence[int],
+) -> TransformerResults:
+    """Results of one transformer; where it cannot be studied, the reason."""
     readings = loaded.readings
-    customers = asked.customer or tuple(Customer(id=name) for name in readings.customers)
-    years = sorted(
-        {int(d) for d in readings.local_day.astype("datetime64[D]").astype("datetime64[Y]").astype(int) + 1970}
+    usable = np.flatnonzero((np.isfinite(readings.kw) & ~readings.estimated).any(axis=1))
+    served = served_by(
+        unit.id,
+        len(asked.transformer) == 1,
+        asked.customer,
+        [readings.customers[c] for c in usable],
+        {customer.id: billed_kwh(customer) for customer in asked.customer},
     )
-    blocks = day_blocks(readings, calendar(asked.season, asked.day_types, years), years, loaded.temperature)
+    reason = cannot_be_studied(served)
+    if reason:
+        return TransformerResults(id=unit.id, reason=reason, installed_kva=unit.installed_kva)
+    rng = np.random.default_rng(asked.study.seed)
+    allowance = 1.0 + unit.losses_allowance_pct / 100.0
+    resolution = shared_resolution(readings) if allowance == 1.0 else 0.0
+    group, group_blocks = with_unmetered_block(
+        served.group, [scaled(block, usable, allowance) for block in blocks], unit, readings.interval_min
+    )
     demand = group_demand(
-        blocks,
+        group_blocks,
         interval_min=readings.interval_min,
         power_factor=unit.power_factor,
-        settings=ModelSettings(resamples=asked.model.resamples),
-        resolution_kw=shared_resolution(readings),
-        rng=np.random.default_rng(asked.study.seed),
+        settings=settings_of(asked.model),
+        group=group,
+        resolution_kw=resolution,
+        record_c=record_by_class(loaded.record, days),
+        rng=rng,
     )
-    above = exceedance_hours(
-        demand, {f"{rating:g} kVA": [rating] * len(demand.blocks) for rating in unit.ratings_kva}, "both"
-    )
+    if not demand.covered().any():
+        reason = "the readings leave no demand interval with at least two days"
+        return TransformerResults(id=unit.id, reason=reason, installed_kva=unit.installed_kva)
+    ratings = ratings_of(unit)
+    month_days = days_by_month(days, years)
+    above = {
+        of: exceedance_hours(
+            demand, {f"{rating:g} kVA": rating * share for rating in ratings}, "both", month_days=month_days
+        )
+        for of, share in loadings(demand, asked.allowed_loading).items()
+    }
+    selection = evaluate(demand, ratings, asked.criterion, asked.allowed_loading, installed_kva=unit.installed_kva)
     return TransformerResults(
         id=unit.id,
         installed_kva=unit.installed_kva,
         phases=unit.phases,
         power_factor=unit.power_factor,
+        ratings_kva=tuple(ratings),
         coverage=coverage(demand, readings),
-        customers=customer_rows(readings, customers),
+        customers=customer_rows(readings, served.customers),
         hours=hour_rows(demand),
-        curve=curve(demand, curve_levels(demand, max(unit.ratings_kva))),
-        exceedance=exceedance_rows(demand, above, unit.ratings_kva, "nameplate"),
+        curve=curve(demand, curve_levels(demand, max(ratings) * unit.power_factor)),
+        exceedance=tuple(row for of, table in above.items() for row in exceedance_rows(demand, table, ratings, of)),
+        hour_map=hour_map(demand.blocks, ratings, list(above.values())[-1].levels),
+        selection=selection,
+        diagnostics=demand.diagnostics,
+        assumptions=assumptions(asked, unit, served, demand),
     )
-
-
-def shared_resolution(readings: Readings) -> float:
-    """Resolution that all meters share, as demand; 0 where they differ or one is unknown. [kW]"""
-    found = np.unique(readings.resolution_kw)
-    return float(found[0]) if found.size == 1 else 0.0

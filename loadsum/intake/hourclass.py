@@ -178,3 +178,9 @@ def day_blocks(
                 )
             )
     return tuple(blocks)
+
+
+def metered_years(readings: Readings) -> tuple[int, ...]:
+    """Calendar years with a reading, in order."""
+    days = readings.local_day[np.isfinite(readings.kw).any(axis=0)]
+    return tuple(sorted({(EPOCH + dt.timedelta(days=day)).year for day in np.unique(days).tolist()}))

@@ -84,6 +84,12 @@ class Readings:
         return 1440 // self.interval_min
 
 
+def shared_resolution(readings: Readings) -> float:
+    """Resolution that all meters share, as demand; 0 where they differ or one is unknown. [kW]"""
+    found = np.unique(readings.resolution_kw)
+    return float(found[0]) if found.size == 1 else 0.0
+
+
 @dataclass(frozen=True, slots=True, kw_only=True, eq=False)
 class TemperatureRecord:
     """Outdoor temperature by day, and by interval where the series is fine enough.

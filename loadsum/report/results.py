@@ -11,8 +11,11 @@ from typing import Any
 import numpy as np
 from numpy.typing import NDArray
 
+from loadsum.demand.hourly import BlockDiagnostics
 from loadsum.intake.findings import Finding
 from loadsum.intake.inputs import InputFile
+from loadsum.report.hourmap import HourMap
+from loadsum.report.quality import QualityCalendar
 from loadsum.study.assumptions import Assumption
 from loadsum.study.tables import Heading, Person
 from loadsum.transformer.selection import Selection
@@ -189,12 +192,15 @@ class TransformerResults:
     installed_kva: float = 0.0
     phases: int = 1
     power_factor: float = 1.0
+    ratings_kva: tuple[float, ...] = ()
     coverage: Coverage | None = None
     customers: tuple[CustomerRow, ...] = ()
     hours: tuple[HourRow, ...] = ()
     curve: Curve | None = None
     exceedance: tuple[ExceedanceRow, ...] = ()
+    hour_map: HourMap | None = None
     selection: Selection | None = None
+    diagnostics: tuple[BlockDiagnostics, ...] = ()
     assumptions: tuple[Assumption, ...] = ()
 
 
@@ -209,6 +215,7 @@ class StudyResults:
     seed: int
     inputs: tuple[InputFile, ...]
     findings: tuple[Finding, ...]
+    quality: QualityCalendar
     transformers: tuple[TransformerResults, ...]
 
 

@@ -38,3 +38,14 @@ def seasons_without_allowance(demand: GroupDemand, allowed: Sequence[AllowedLoad
     if "all" in stated:
         return ()
     return tuple(dict.fromkeys(block.season for block in demand.blocks if block.season not in stated))
+
+
+def loadings(demand: GroupDemand, allowed: Sequence[AllowedLoading]) -> dict[str, NDArray[np.float64]]:
+    """Every loading that each rating is shown against: nameplate, and what the study file allows. [pu of nameplate]"""
+    shown = {NAMEPLATE: allowed_pu(demand, NAMEPLATE, allowed)}
+    if allowed:
+        shown[NORMAL] = allowed_pu(demand, NORMAL, allowed)
+        emergency = allowed_pu(demand, EMERGENCY, allowed)
+        if not np.isnan(emergency).any():
+            shown[EMERGENCY] = emergency
+    return shown
