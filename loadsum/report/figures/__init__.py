@@ -31,6 +31,10 @@ OF_A_TRANSFORMER: Sequence[Callable[[Material, Unit], DrawnFigure | None]] = (
     scenarios.figure,
     calibration.figure,
 )
+OF_ONE_OF_SEVERAL: Sequence[Callable[[Material, Unit], DrawnFigure | None]] = (
+    exceedance_map.figure,
+    exceedance_curve.figure,
+)
 OF_THE_STUDY: Sequence[Callable[[Material], DrawnFigure | None]] = (quality_calendar.figure,)
 
 
@@ -44,7 +48,7 @@ def drawn(m: Material, units: Sequence[Unit]) -> dict[str, DrawnFigure]:
     units : sequence of Unit
         Transformers whose figures are wanted.
     """
-    made = [make(m, unit) for unit in units for make in OF_A_TRANSFORMER]
+    made = [make(m, unit) for unit in units for make in (OF_ONE_OF_SEVERAL if unit.several else OF_A_TRANSFORMER)]
     made += [make(m) for make in OF_THE_STUDY]
     return {figure.name: figure for figure in made if figure is not None}
 

@@ -7,7 +7,7 @@ import numpy as np
 
 from loadsum.report.figures.plate import GREY, INK, PALE, DrawnFigure, axes_mm, plate
 from loadsum.report.material import Material, Unit
-from loadsum.report.sections.ratings import limit_text, meets_text, quantity_text
+from loadsum.report.sections.verdict import limit_text, meets_text, quantity_text
 
 NAME = "criterion-margins"
 LOWEST, HIGHEST = 1e-3, 1e2
@@ -96,7 +96,7 @@ def _alt(m: Material, criterion: Mapping[str, Any]) -> str:
             f"figure.{NAME}.alt_part",
             rating=m.kva(row["rating_kva"]),
             value=quantity_text(m, quantity, row.get("value")),
-            meets=meets_text(m, row.get("meets")),
+            meets=meets_text(m, row),
         )
         for row in criterion.get("by_rating") or ()
     ]

@@ -28,6 +28,13 @@ OF_A_TRANSFORMER: Sequence[Callable[[Material, Unit], Section | None]] = (
     future.section,
     evidence.section,
 )
+# A study of several transformers stays readable: those that need attention get these, the rest is in results.json.
+OF_ONE_OF_SEVERAL: Sequence[Callable[[Material, Unit], Section | None]] = (
+    ratings.section,
+    demand.map_section,
+    demand.curve_section,
+    thermal.section,
+)
 OF_THE_STUDY: Sequence[Callable[[Material], Section | None]] = (
     data.section,
     foundations.method_section,
@@ -54,7 +61,8 @@ def sections(m: Material, units: Sequence[Unit]) -> tuple[Section, ...]:
     if len(m.units) > 1:
         made.append(overview.section(m))
     for unit in units:
-        parts = [part for part in (make(m, unit) for make in OF_A_TRANSFORMER) if part is not None]
+        makers = OF_ONE_OF_SEVERAL if unit.several else OF_A_TRANSFORMER
+        parts = [part for part in (make(m, unit) for make in makers) if part is not None]
         if unit.several:
             made.append(overview.unit_section(m, unit, parts))
         else:

@@ -6,8 +6,7 @@ from typing import Any
 from loadsum.report.material import Material, Unit
 from loadsum.report.notation import NO_BREAK
 from loadsum.report.sections.overview import table
-from loadsum.report.sections.ratings import meets_text
-from loadsum.report.sections.verdict import exceedance_of, exceedance_rows, needs_attention, verdict
+from loadsum.report.sections.verdict import exceedance_of, exceedance_rows, meets_text, needs_attention, verdict
 
 MOST_ON_FIRST_PAGE = 8
 
@@ -67,20 +66,18 @@ def _ratings(m: Material, unit: Unit) -> list[dict[str, Any]]:
 
 
 def _meets_all(m: Material, unit: Unit, rating: float | None) -> str:
-    """Whether a rating meets every criterion; empty where there is none."""
+    """Whether a rating meets every criterion; the worst outcome where it does not."""
     found = [
-        row.get("meets")
+        row
         for criterion in (unit.part("selection") or {}).get("criteria") or ()
         for row in criterion.get("by_rating") or ()
         if row.get("rating_kva") == rating
     ]
-    if not found:
-        return m.n.none
-    texts = {meets_text(m, meets) for meets in found}
-    for word in ("meets.no", "meets.undecided"):
-        if m.t(word) in texts:
-            return m.t(word)
-    return m.t("meets.yes")
+    for wanted in (False, None, True):
+        for row in found:
+            if row.get("meets") is wanted:
+                return m.t("word.no") if wanted is False else m.t("word.yes") if wanted else meets_text(m, row)
+    return m.n.none
 
 
 def _overview(m: Material) -> dict[str, Any]:
@@ -102,6 +99,16 @@ def all_customers(m: Material) -> Sequence[Mapping[str, Any]]:
         for unit in m.units:
             listed.extend(unit.rows("customers"))
     return list({str(row.get("id")): row for row in listed}.values())
+
+
+def all_assumptions(m: Material) -> Sequence[Mapping[str, Any]]:
+    """Assumptions of the study and of every transformer, each once."""
+    listed = [*m.rows("assumptions"), *(row for unit in m.units if unit.several for row in unit.rows("assumptions"))]
+    if len(m.units) == 1:
+        listed = list(m.units[0].rows("assumptions"))
+    return list(
+        {(row.get("name"), row.get("value"), row.get("unit"), row.get("source")): row for row in listed}.values()
+    )
 
 
 def coverage(m: Material) -> str:
@@ -135,7 +142,7 @@ def _worst_coverage(m: Material) -> Mapping[str, Any] | None:
 
 def _rests_on(m: Material) -> list[str]:
     lines = [m.t("first_page.model", interval=f"{m.interval_min}{NO_BREAK}min")]
-    count = len(m.rows("assumptions"))
+    count = len(all_assumptions(m))
     if count:
         lines.append(m.t("first_page.assumptions", count=count))
     if not any(unit.part("evidence") for unit in m.units):

@@ -4,6 +4,7 @@ from typing import Any
 
 from loadsum.report.material import Material, Section
 from loadsum.report.notation import NO_BREAK
+from loadsum.report.sections.first_page import all_assumptions
 
 
 def method_section(m: Material) -> Section:
@@ -17,7 +18,7 @@ def method_section(m: Material) -> Section:
 
 def assumptions_section(m: Material) -> Section | None:
     """Register of assumptions: value, source, who decided, what the verdict does when it moves."""
-    rows = m.rows("assumptions")
+    rows = all_assumptions(m)
     if not rows:
         return None
     content = {

@@ -5,7 +5,7 @@ from typing import Any
 
 from loadsum.report.material import Material, Section, Unit
 from loadsum.report.notation import NO_BREAK
-from loadsum.report.sections.verdict import exceedance_rows
+from loadsum.report.sections.verdict import exceedance_rows, limit_text, meets_text, quantity_text
 
 
 def section(m: Material, unit: Unit) -> Section | None:
@@ -81,32 +81,5 @@ def _cell(m: Material, quantity: str, row: Mapping[str, Any] | None) -> dict[str
         return {"value": m.n.none, "meets": ""}
     return {
         "value": quantity_text(m, quantity, row.get("value"), row.get("floor")),
-        "meets": meets_text(m, row.get("meets")) + (", " + m.t("ratings.governs") if row.get("governs") else ""),
+        "meets": meets_text(m, row) + (", " + m.t("ratings.governs") if row.get("governs") else ""),
     }
-
-
-def meets_text(m: Material, meets: Any) -> str:
-    """Whether a criterion is met, in a word; None where the data do not decide."""
-    if isinstance(meets, str):
-        return m.t.name("meets", meets)
-    return m.t("meets.undecided" if meets is None else "meets.yes" if meets else "meets.no")
-
-
-def limit_text(m: Material, quantity: str, limit: float | None) -> str:
-    """A limit in its own unit, with the digits it was given with."""
-    if "probability" in quantity and limit is not None:
-        return m.plain(100.0 * limit) + NO_BREAK + "%"
-    if "hours" in quantity:
-        return m.plain(limit) + NO_BREAK + "h"
-    return m.temperature(limit) if "temperature" in quantity else m.plain(limit)
-
-
-def quantity_text(m: Material, quantity: str, value: float | None, floor: float | None = None) -> str:
-    """A criterion's figure in its own unit."""
-    if "probability" in quantity:
-        return m.n.probability(value, floor)
-    if "temperature" in quantity:
-        return m.temperature(value)
-    if "hours" in quantity:
-        return m.hours(value) + NO_BREAK + "h"
-    return m.n.significant(value)

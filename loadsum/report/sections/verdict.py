@@ -1,6 +1,6 @@
 """The choice of rating in words."""
 
-from collections.abc import Mapping, Sequence
+from collections.abc import Iterator, Mapping, Sequence
 from dataclasses import dataclass
 from typing import Any
 
@@ -61,36 +61,102 @@ def needs_attention(unit: Unit) -> bool:
 def verdict(m: Material, unit: Unit) -> Verdict:
     """The verdict on one transformer in words."""
     selection = unit.part("selection") or {}
-    kind = selection.get("verdict") or "no criterion"
+    kind = str(selection.get("verdict") or "no criterion").replace(" ", "_")
     rating = selection.get("rating_kva")
-    key = kind.replace(" ", "_").replace(",", "")
     row = exceedance_of(unit.results, rating)
-    reasons = []
-    if row is not None:
-        minutes = f"{m.interval_min}{NO_BREAK}min"
-        reasons.append(
-            m.t(
-                "first_page.hours",
-                rating=m.kva(rating),
-                of=m.t.name("loading", str(row.get("of"))),
-                hours=m.hours(row.get("hours_per_year")),
-                interval=m.between(row.get("hours_low"), row.get("hours_high"), m.hours),
-                minutes=minutes,
-            )
-        )
-        reasons.append(
-            m.t(
-                "first_page.highest",
-                probability=m.n.probability(row.get("highest_probability"), row.get("floor")),
-                where=m.hour_class(row.get("highest_at")),
-                minutes=minutes,
-            )
-        )
+    sentence = m.t(f"verdict.{kind}.sentence", rating=m.kva(rating))
+    if kind == "chosen" and _all_meet(selection):
+        sentence = m.t("verdict.chosen.all", rating=m.kva(rating))
+    if selection.get("undecided_kva"):
+        named = ", ".join(m.kva(one) for one in selection["undecided_kva"])
+        sentence += " " + m.t("verdict.undecided", ratings=named)
     return Verdict(
-        headline=m.kva(rating) if rating is not None else m.t(f"verdict.{key}.headline"),
+        headline=m.kva(rating) if rating is not None else m.t(f"verdict.{kind}.headline"),
         rating_kva=rating,
-        sentence=m.t(f"verdict.{key}.sentence", rating=m.kva(rating)),
-        reasons=tuple(reasons),
-        action=m.t(f"verdict.{key}.action", rating=m.kva(rating)),
+        sentence=sentence,
+        reasons=tuple(_reasons(m, unit, selection, row)),
+        action=m.t(f"verdict.{kind}.action", rating=m.kva(rating)),
         hours=row.get("hours_per_year") if row is not None else None,
     )
+
+
+def _all_meet(selection: Mapping[str, Any]) -> bool:
+    return all(
+        row.get("meets") is True for one in selection.get("criteria") or () for row in one.get("by_rating") or ()
+    )
+
+
+def _reasons(m: Material, unit: Unit, selection: Mapping[str, Any], row: Mapping[str, Any] | None) -> Iterator[str]:
+    """Unit in service, expected hours, highest probability, what governs."""
+    installed, found = unit.results.get("installed_kva"), str(selection.get("installed") or "")
+    if installed and found and m.t.has(f"installed.{found}"):
+        yield m.t(f"installed.{found}", rating=m.kva(installed))
+    minutes = f"{m.interval_min}{NO_BREAK}min"
+    if row is not None:
+        interval = m.between(row.get("hours_low"), row.get("hours_high"), m.hours)
+        yield m.t(
+            "first_page.hours" if row.get("hours_low") is not None else "first_page.hours_alone",
+            rating=m.kva(row.get("rating_kva")),
+            of=m.t.name("loading", str(row.get("of"))),
+            hours=m.hours(row.get("hours_per_year")),
+            interval=interval,
+            minutes=minutes,
+        )
+        yield m.t(
+            "first_page.highest",
+            probability=m.n.probability(row.get("highest_probability"), row.get("floor")),
+            where=m.hour_class(row.get("highest_at")),
+            minutes=minutes,
+        )
+    governing = _governing(selection)
+    if governing is not None:
+        criterion, at = governing
+        quantity = str(criterion.get("quantity"))
+        yield m.t(
+            "first_page.governs",
+            name=m.t.name("criterion", quantity),
+            rating=m.kva(at.get("rating_kva")),
+            value=quantity_text(m, quantity, at.get("value"), at.get("floor")),
+            limit=limit_text(m, quantity, at.get("limit")),
+            source=criterion.get("source") or m.t("ratings.untraced"),
+        )
+
+
+def _governing(selection: Mapping[str, Any]) -> tuple[Mapping[str, Any], Mapping[str, Any]] | None:
+    """The criterion that leaves the least room at the chosen rating, and its figure there."""
+    for criterion in selection.get("criteria") or ():
+        for row in criterion.get("by_rating") or ():
+            if row.get("rating_kva") == selection.get("rating_kva") and row.get("governs"):
+                return criterion, row
+    return None
+
+
+def limit_text(m: Material, quantity: str, limit: float | None) -> str:
+    """A limit in its own unit, with the digits it was given with."""
+    if "probability" in quantity and limit is not None:
+        return m.plain(100.0 * limit) + NO_BREAK + "%"
+    if "hours" in quantity:
+        return m.plain(limit) + NO_BREAK + "h"
+    return m.temperature(limit) if "temperature" in quantity else m.plain(limit)
+
+
+def quantity_text(m: Material, quantity: str, value: float | None, floor: float | None = None) -> str:
+    """A criterion's figure in its own unit."""
+    if "probability" in quantity:
+        return m.n.probability(value, floor)
+    if "temperature" in quantity:
+        return m.temperature(value)
+    if "hours" in quantity:
+        return m.hours(value) + NO_BREAK + "h"
+    return m.n.significant(value)
+
+
+def meets_text(m: Material, row: Mapping[str, Any] | None) -> str:
+    """Whether a criterion is met at a rating, in a word or two."""
+    if row is None:
+        return m.n.none
+    outcome = str(row.get("outcome") or "")
+    if outcome and m.t.has(f"outcome.{outcome}"):
+        return m.t(f"outcome.{outcome}")
+    meets = row.get("meets")
+    return m.t("outcome.not decided by these data" if meets is None else "outcome.met" if meets else "outcome.not met")
