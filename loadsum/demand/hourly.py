@@ -152,6 +152,13 @@ class HourDemand:
             self, total=total, whole_down=total.down.plain_distribution(), whole_up=total.up.plain_distribution()
         )
 
+    def without_temperature(self, spread_kw: float) -> "HourDemand":
+        """The distribution at no shift by temperature, the response being uncertain by a standard deviation. [kW]"""
+        if self.response is None:
+            return self
+        total = with_normal(self.still, spread_kw)
+        return replace(self, total=total, whole_down=total.down.distribution(), whole_up=total.up.distribution())
+
     def independent_exceedance(self, level_kw: float) -> float:
         """Probability above a level if the customers were independent; for comparison only. [-]"""
         return self.independent.above(level_kw)

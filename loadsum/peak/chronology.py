@@ -92,7 +92,7 @@ def draw_days(
     (P, I) float64
         Demand; NaN where there are no readings. [kW]
     """
-    kw = np.empty((block.size, margins.kw.shape[2]))
+    kw = np.empty((block.size, margins.kw.shape[1]))
     for b in np.unique(block).tolist():
         rows = np.flatnonzero(block == b)
         for start in range(0, rows.size, ROWS):

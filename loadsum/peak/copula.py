@@ -8,6 +8,7 @@ from numpy.typing import NDArray
 from scipy.special import gammaln
 from scipy.stats import norm, rankdata, t
 
+from loadsum.demand.hourly import GroupDemand
 from loadsum.intake.readings import read_only
 
 SHRINKAGE = 0.10  # weight of the identity in each correlation matrix
@@ -83,6 +84,25 @@ def normal_scores(sums_kw: NDArray[np.float64]) -> NDArray[np.float64]:
     days = np.maximum(known.sum(axis=0), 1)
     rank = rankdata(np.where(known, sums_kw, np.inf), axis=0, method="average")
     return np.where(known, norm.ppf((np.minimum(rank, days) - 0.5) / days), np.nan)
+
+
+def weather_free_sums(demand: GroupDemand) -> tuple[NDArray[np.float64], ...]:
+    """Observed sums less the model's response to the day's temperature, B (D, I) float64; what a copula is fitted to.
+
+    The paths draw a day's temperature and its demand given that temperature; what moves with the temperature must not
+    be counted a second time in the dependence between intervals. Days of unknown temperature are NaN. [kW]
+    """
+    found = []
+    for block, row, sums in zip(demand.blocks, demand.hours, demand.sums_kw, strict=True):
+        free = np.array(sums)
+        for i, hour in enumerate(row):
+            if hour is not None and hour.response is not None and block.temperature_c is not None:
+                known = np.isfinite(block.temperature_c)
+                shift = hour.response.shift_kw(np.where(known, block.temperature_c, 0.0))
+                free[:, i] -= np.where(known, shift, np.nan)
+        read_only(free)
+        found.append(free)
+    return tuple(found)
 
 
 def fit_copula(

@@ -5,11 +5,13 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 
-from loadsum.demand.hourly import Direction, GroupDemand, HourDemand
+from loadsum.demand.hourly import Direction, GroupDemand
 from loadsum.intake.readings import read_only
 from loadsum.peak.copula import DayCopula
+from loadsum.peak.weather import YearsOfDays
 
 POINTS = 2049  # points of each table
+NODES = 9  # temperatures at which the shift of each class is given
 SMALLEST = 1e-13  # probability beyond which a table is flat; below it a plain convolution is noise
 
 
@@ -25,10 +27,12 @@ class Margins:
         Equally spaced scores, or their inverse hyperbolic sines. [-]
     exceeded_with : (K,) float64
         Exceedance probability at each point, falling. [-]
-    kw : (B, M, I, K) float64
-        Demand at each point for each temperature, rising; NaN where there are no readings. [kW]
+    kw : (B, I, K) float64
+        Demand at each point, rising, without the shift by temperature; NaN where there are no readings. [kW]
     temperature_c : (B, M) float64 or None
-        Daily temperatures of the tables, rising; None where demand does not depend on temperature (M = 1). [°C]
+        Daily temperatures at which the shift is given, rising; None where demand does not depend on it (M = 1). [°C]
+    shift_kw : (B, M, I) float64
+        Shift of demand at each temperature. [kW]
     kvar_per_kw : (B, I) float64
         Reactive demand of the group per kW. [kvar/kW]
     """
@@ -38,12 +42,22 @@ class Margins:
     exceeded_with: NDArray[np.float64]
     kw: NDArray[np.float64]
     temperature_c: NDArray[np.float64] | None
+    shift_kw: NDArray[np.float64]
     kvar_per_kw: NDArray[np.float64]
 
     def __post_init__(self) -> None:
-        if self.kw.ndim != 4 or self.kw.shape[3] != self.place.size:
-            raise ValueError(f"kw must be (B, M, I, {self.place.size}), got {self.kw.shape}")
-        for array in (self.place, self.exceeded_with, self.kw, self.temperature_c, self.kvar_per_kw):
+        if self.kw.ndim != 3 or self.kw.shape[2] != self.place.size:
+            raise ValueError(f"kw must be (B, I, {self.place.size}), got {self.kw.shape}")
+        if self.shift_kw.shape[::2] != self.kw.shape[:2]:
+            raise ValueError(f"shift_kw {self.shift_kw.shape} must be (B, M, I) beside kw {self.kw.shape}")
+        for array in (
+            self.place,
+            self.exceeded_with,
+            self.kw,
+            self.temperature_c,
+            self.shift_kw,
+            self.kvar_per_kw,
+        ):
             if array is not None:
                 read_only(array)
 
@@ -62,17 +76,23 @@ class Margins:
         (B, M, I) float64
             Probabilities; NaN where there are no readings. [-]
         """
-        found = np.full(self.kw.shape[:3], np.nan)
+        found = np.full(self.shift_kw.shape, np.nan)
         log_tail = np.log(self.exceeded_with)
-        for b, m, i in np.ndindex(*self.kw.shape[:3]):
-            table = self.kw[b, m, i]
+        for b, m, i in np.ndindex(*self.shift_kw.shape):
+            table = self.kw[b, i]
             if np.isnan(table[0]):
                 continue
             level_kw = float(level_kva[b] / np.hypot(1.0, self.kvar_per_kw[b, i]))
-            delivered = _beyond(table, log_tail, level_kw) if direction != "exported" else 0.0
-            exported = _beyond(-table[::-1], log_tail, level_kw) if direction != "delivered" else 0.0
+            shift = float(self.shift_kw[b, m, i])
+            delivered = _beyond(table, log_tail, level_kw - shift) if direction != "exported" else 0.0
+            exported = _beyond(-table[::-1], log_tail, level_kw + shift) if direction != "delivered" else 0.0
             found[b, m, i] = min(delivered + exported, 1.0)
         return found
+
+    def highest_kva(self) -> float:
+        """A level that no table reaches beyond. [kVA]"""
+        magnitude = np.nan_to_num(np.abs(self.kw)).max(axis=2)[:, None] + np.abs(self.shift_kw)
+        return 1.001 * float((magnitude * np.hypot(1.0, self.kvar_per_kw)[:, None]).max())
 
     def demand_kw(
         self, block: int, score: NDArray[np.float64], temperature_c: NDArray[np.float64] | None
@@ -100,31 +120,19 @@ class Margins:
         np.clip(place, 0.0, self.place.size - 1.001, out=place)
         cell = place.astype(np.int32)
         place -= cell
-        nodes = self.kw.shape[1]
-        if self.temperature_c is None or nodes == 1:
-            return self._read(block, 0, cell, place)
-        if temperature_c is None:
-            raise ValueError("demand depends on temperature: give the temperature of each day")
-        warmth = np.interp(temperature_c, self.temperature_c[block], np.arange(nodes))
-        low = np.minimum(warmth.astype(np.int64), nodes - 2)
-        out = np.empty(score.shape)
-        for node in np.unique(low).tolist():
-            pick = low == node
-            part = (warmth[pick] - node)[:, None]
-            out[pick] = (1.0 - part) * self._read(block, node, cell[pick], place[pick])
-            out[pick] += part * self._read(block, node + 1, cell[pick], place[pick])
-        return out
-
-    def _read(self, block: int, node: int, cell: NDArray[np.int32], part: NDArray[np.float64]) -> NDArray[np.float64]:
-        out = np.empty(part.shape)
-        for i in range(part.shape[1]):
-            table = self.kw[block, node, i]
-            rise = np.diff(table)
-            out[:, i] = table[cell[:, i]] + part[:, i] * rise[cell[:, i]]
-        return out
+        kw = np.empty(score.shape)
+        for i in range(score.shape[1]):
+            table = self.kw[block, i]
+            kw[:, i] = table[cell[:, i]] + place[:, i] * np.diff(table)[cell[:, i]]
+        if self.temperature_c is not None:
+            if temperature_c is None:
+                raise ValueError("demand depends on temperature: give the temperature of each day")
+            for i in range(score.shape[1]):
+                kw[:, i] += np.interp(temperature_c, self.temperature_c[block], self.shift_kw[block, :, i])
+        return kw
 
 
-def margins(demand: GroupDemand, copula: DayCopula, *, temperature_c: NDArray[np.float64] | None = None) -> Margins:
+def margins(demand: GroupDemand, copula: DayCopula, *, years: YearsOfDays | None = None) -> Margins:
     """Tables of the quantiles of every interval.
 
     Parameters
@@ -133,45 +141,61 @@ def margins(demand: GroupDemand, copula: DayCopula, *, temperature_c: NDArray[np
         Demand model of the group.
     copula : DayCopula
         Its scores are what the tables run over.
-    temperature_c : (B, M) float64 or None
-        Daily temperatures to make tables at, rising; None takes the distribution over the whole class of days. [°C]
+    years : YearsOfDays or None
+        Days whose temperatures the demand is asked at; None, or years without temperature, takes the distribution
+        mixed over the record that the model was made with.
 
     Notes
     -----
     Between the points of a table demand is interpolated along the score, so a jump of the quantile is spread over
     1/128 of a standard deviation: at most 2 % of a tail probability, and only where a level lies inside the jump.
-    Beyond a probability of 1e-13 the tables are flat.
+    Beyond a probability of 1e-13 the tables are flat. The uncertainty of the response to temperature has its mean
+    over the days of the class, not that of each day.
     """
     heavy = bool(np.isfinite(copula.degrees_of_freedom))
     reach = float(copula.score(np.array(SMALLEST)))
     reach = float(np.arcsinh(reach)) if heavy else reach
     place = np.linspace(-reach, reach, POINTS)
     exceeded_with = copula.tail(np.sinh(place) if heavy else place)
-    nodes = 1 if temperature_c is None else temperature_c.shape[1]
-    intervals = len(demand.hours[0])
-    kw = np.full((len(demand.blocks), nodes, intervals, POINTS), np.nan)
-    kvar_per_kw = np.zeros((len(demand.blocks), intervals))
+    warmth = None if years is None else _temperatures(demand, years)
+    blocks, intervals = len(demand.blocks), len(demand.hours[0])
+    kw = np.full((blocks, intervals, POINTS), np.nan)
+    shift_kw = np.zeros((blocks, 1 if warmth is None else warmth.shape[1], intervals))
+    kvar_per_kw = np.zeros((blocks, intervals))
     for b, row in enumerate(demand.hours):
         for i, hour in enumerate(row):
             if hour is None:
                 continue
             kvar_per_kw[b, i] = np.tan(np.arccos(hour.power_factor))
-            for m in range(nodes):
-                given = hour if temperature_c is None else _at(hour, float(temperature_c[b, m]))
-                kw[b, m, i] = np.maximum.accumulate(given.quantiles_kw(exceeded_with))
+            given = hour
+            if years is not None and years.daily_c is not None and warmth is not None and hour.response is not None:
+                shift_kw[b, :, i] = hour.response.shift_kw(warmth[b])
+                days = years.daily_c[years.block == b]
+                variance = float(hour.response.shift_variance_kw2(days).mean()) if days.size else 0.0
+                given = hour.without_temperature(float(np.sqrt(variance)))
+            kw[b, i] = np.maximum.accumulate(given.quantiles_kw(exceeded_with))
     return Margins(
         heavy=heavy,
         place=place,
         exceeded_with=exceeded_with,
         kw=kw,
-        temperature_c=temperature_c,
+        temperature_c=warmth,
+        shift_kw=shift_kw,
         kvar_per_kw=kvar_per_kw,
     )
 
 
-def _at(hour: HourDemand, temperature_c: float) -> HourDemand:
-    given: HourDemand = hour.at_temperature(temperature_c)
-    return given
+def _temperatures(demand: GroupDemand, years: YearsOfDays) -> NDArray[np.float64] | None:
+    """Temperatures, equally spaced over the days of each class, (B, M) float64; None where they play no part. [°C]"""
+    responds = any(hour is not None and hour.response is not None for row in demand.hours for hour in row)
+    if years.daily_c is None or not responds:
+        return None
+    rows = []
+    for b in range(len(demand.blocks)):
+        days = years.daily_c[years.block == b]
+        low, high = (float(days.min()), float(days.max())) if days.size else (0.0, 0.0)
+        rows.append(np.linspace(low, max(high, low + 1e-3), NODES))
+    return np.array(rows)
 
 
 def _beyond(table: NDArray[np.float64], log_tail: NDArray[np.float64], level_kw: float) -> float:

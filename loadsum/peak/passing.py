@@ -135,11 +135,11 @@ class Passing:
 
     def _bounded(self, period: Period, probability: float) -> float:
         """A level at which the lower bound for days is at least, or the upper bound for years at most, as given."""
-        scale = np.hypot(1.0, self.margins.kvar_per_kw)[:, None, :, None]
-        low, high = 0.0, 1.001 * float(np.nanmax(np.abs(self.margins.kw) * scale))
+        blocks = self.margins.kw.shape[0]
+        low, high = 0.0, self.margins.highest_kva()
         for _ in range(12):
             middle = 0.5 * (low + high)
-            single = np.nan_to_num(self.margins.exceedance(np.full(scale.shape[0], middle), self.direction))
+            single = np.nan_to_num(self.margins.exceedance(np.full(blocks, middle), self.direction))
             if period == "day":
                 bound = float(self._read(single.max(axis=2)).mean())
             else:
@@ -163,7 +163,7 @@ class Passing:
 
     def _weight(self, block: int) -> NDArray[np.float64]:
         """Weight of each temperature of the tables on the days of a class, (M,) float64; NaN where it has no day."""
-        nodes = self.margins.kw.shape[1]
+        nodes = self.margins.shift_kw.shape[1]
         warmth = self.margins.temperature_c
         if warmth is None or self.years.daily_c is None:
             return np.asarray(np.eye(nodes)[0], dtype=np.float64)

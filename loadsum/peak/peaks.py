@@ -201,10 +201,10 @@ def time_of_peak(
 
     Equal highest demands share the day.
     """
-    shape = (margins.kw.shape[0], margins.kw.shape[2])
+    shape = margins.kw.shape[:2]
     share = np.full(shape, np.nan)
     for b in range(shape[0]):
-        known = np.isfinite(margins.kw[b, 0, :, 0])
+        known = np.isfinite(margins.kw[b, :, 0])
         if not known.any():
             continue
         warmth = None

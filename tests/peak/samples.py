@@ -8,7 +8,8 @@ from pathlib import Path
 import numpy as np
 from numpy.typing import NDArray
 
-from loadsum.demand.hourly import GroupDemand, group_demand
+from loadsum.demand.group import group_demand
+from loadsum.demand.hourly import GroupDemand
 from loadsum.demand.settings import ModelSettings
 from loadsum.intake.hourclass import EPOCH, Calendar, DayBlock, calendar
 from loadsum.study.tables import DayTypes, Season
@@ -23,7 +24,8 @@ QUARTERS = tuple(
         ("autumn", (9, 10, 11)),
     )
 )
-PLAIN = ModelSettings(temperature=False, common_component=False, shrinkage=False, mean_uncertainty=False)
+COARSE = ModelSettings(lattice_kw=0.05)
+PLAIN = ModelSettings(temperature=False, common_component=False, shrinkage=False, mean_uncertainty=False, lattice_kw=0.05)
 
 
 def reference(topic: str) -> dict[str, dict]:
@@ -67,7 +69,7 @@ def home_blocks(parity: int | None = None, homes: slice = slice(None)) -> list[D
 
 @functools.cache
 def homes_demand(parity: int | None = None) -> GroupDemand:
-    return group_demand(home_blocks(parity), interval_min=60, power_factor=0.95, settings=ModelSettings())
+    return group_demand(home_blocks(parity), interval_min=60, power_factor=0.95, settings=COARSE)
 
 
 def moody_days(days: int, customers: int, rng: np.random.Generator, intervals: int = 24) -> NDArray[np.float64]:

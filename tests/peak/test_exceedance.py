@@ -5,13 +5,13 @@ import datetime as dt
 import numpy as np
 import pytest
 
-from loadsum.demand.hourly import group_demand
+from loadsum.demand.group import group_demand
 from loadsum.demand.settings import ModelSettings
 from loadsum.intake.hourclass import DayBlock, calendar
 from loadsum.peak.exceedance import days_by_month, exceedance_hours
 from loadsum.study.tables import DayTypes, Season
 
-PLAIN = ModelSettings(temperature=False, common_component=False, shrinkage=False, mean_uncertainty=False)
+PLAIN = ModelSettings(temperature=False, common_component=False, shrinkage=False, mean_uncertainty=False, lattice_kw=0.05)
 
 
 def block(season, days_per_year, kw):

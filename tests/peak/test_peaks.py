@@ -6,8 +6,7 @@ import time
 import numpy as np
 import pytest
 
-from loadsum.demand.hourly import group_demand
-from loadsum.demand.settings import ModelSettings
+from loadsum.demand.group import group_demand
 from loadsum.intake.hourclass import EPOCH
 from loadsum.intake.readings import TemperatureRecord
 from loadsum.peak.chronology import draw_paths
@@ -17,7 +16,7 @@ from loadsum.peak.margins import margins
 from loadsum.peak.peaks import peaks
 from loadsum.peak.runlengths import score_runs
 from loadsum.peak.weather import calendar_years, record_years
-from tests.peak.samples import PLAIN, home_blocks, homes_demand, moody_days, one_block, quarters, reference
+from tests.peak.samples import COARSE, PLAIN, home_blocks, homes_demand, moody_days, one_block, quarters, reference
 
 LEVELS = (20.0, 30.0, 37.5, 45.0)
 
@@ -140,7 +139,7 @@ def test_independent_hours_and_independent_customer_days_both_fail_on_the_same_d
 def test_daily_peaks_of_an_invented_truth_are_passed_as_often_as_meant_down_to_one_day_in_a_hundred():
     rng = np.random.default_rng(8)
     kw = moody_days(600, 12, rng)
-    demand = group_demand([one_block(kw)], interval_min=60, power_factor=1.0, settings=ModelSettings())
+    demand = group_demand([one_block(kw)], interval_min=60, power_factor=1.0, settings=COARSE)
     copula = fit_copula(demand.sums_kw)
     dates = quarters()
     years = calendar_years(dates, [2017])
