@@ -158,7 +158,6 @@ def one_transformer(
         return TransformerResults(id=unit.id, reason=reason, installed_kva=unit.installed_kva)
     rng = np.random.default_rng(asked.study.seed)
     allowance = 1.0 + unit.losses_allowance_pct / 100.0
-    resolution = shared_resolution(readings) if allowance == 1.0 else 0.0
     group, group_blocks = with_unmetered_block(
         served.group, [scaled(block, usable, allowance) for block in blocks], unit, readings.interval_min
     )
@@ -168,7 +167,7 @@ def one_transformer(
         power_factor=unit.power_factor,
         settings=settings_of(asked.model),
         group=group,
-        resolution_kw=resolution,
+        resolution_kw=shared_resolution(readings) * allowance,
         record_c=record_by_class(loaded.record, days),
         rng=rng,
     )

@@ -6,7 +6,7 @@ from dataclasses import dataclass, replace
 import numpy as np
 from numpy.typing import NDArray
 
-from loadsum.demand.convolution import BracketedSum, DemandSum
+from loadsum.demand.convolution import BracketedSum, DemandSum, plain_distributions
 from loadsum.demand.customerclass import borrowed, relative_readings, weighted_variance
 from loadsum.demand.dependence import (
     CommonComponent,
@@ -277,7 +277,7 @@ class _Block:
         if self.settings.mean_uncertainty:
             still = with_normal(still, mean_variance_kw2**0.5)
         total = self._over_the_record(still, response)
-        whole_down = total.down.plain_distribution()
+        whole_down, whole_up = plain_distributions(total)
         nearest = DemandSum(
             terms=(*(_nearest(v, step, None) for v in own), *(_nearest(v, step, w) for _, v, w in like)),
             counts=tuple(counts),
@@ -291,10 +291,10 @@ class _Block:
             n_days=self._days(adjusted),
             total=total,
             whole_down=whole_down,
-            whole_up=whole_down if total.exact else total.up.plain_distribution(),
+            whole_up=whole_up,
             still=still,
             response=response,
-            independent=nearest.plain_distribution(),
+            independent=plain_distributions(BracketedSum(down=nearest, up=nearest))[0],
             covariance_variance_kw2=target_raw,
             power_factor=self.power_factor,
             mean_variance_kw2=mean_variance_kw2 if self.settings.mean_uncertainty else 0.0,

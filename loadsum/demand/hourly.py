@@ -8,7 +8,7 @@ import numpy as np
 from numpy.typing import NDArray
 from scipy.stats import norm
 
-from loadsum.demand.convolution import BracketedSum, DemandSum
+from loadsum.demand.convolution import BracketedSum, DemandSum, plain_distributions
 from loadsum.demand.lattice import LatticeMass, kernel_mass, normal_mass
 from loadsum.demand.probability import Probability
 from loadsum.demand.samplingerror import COVERS, Resamples
@@ -19,6 +19,7 @@ from loadsum.intake.hourclass import DayBlock
 Direction = Literal["both", "delivered", "exported"]
 
 DEEP = 1e-5  # below this the whole distribution is not accurate enough and the tail is computed at its own tilt
+NOTHING = 1e-14  # below this nothing more is asked of a probability: the bracket says so
 
 
 @dataclass(frozen=True, slots=True, kw_only=True, eq=False)
@@ -95,7 +96,9 @@ class HourDemand:
     def exceedance(self, level_kw: float) -> Probability:
         """Probability that demand is strictly above a level. [kW -> -]"""
         lower, upper = self.whole_down.above(level_kw), self.whole_up.above(level_kw)
-        if upper < DEEP:
+        if upper < NOTHING:
+            lower, upper = 0.0, NOTHING
+        elif upper < DEEP:
             lower, upper = self.total.above(level_kw)
         return self._probability(lower, upper, self._interval(level_kw, self.whole_up.above_many))
 
@@ -110,7 +113,9 @@ class HourDemand:
     def below(self, level_kw: float) -> Probability:
         """Probability that demand is strictly below a level. [kW -> -]"""
         lower, upper = self.whole_up.below(level_kw), self.whole_down.below(level_kw)
-        if upper < DEEP:
+        if upper < NOTHING:
+            lower, upper = 0.0, NOTHING
+        elif upper < DEEP:
             lower, upper = self.total.below(level_kw)
         return self._probability(lower, upper, self._interval(level_kw, self._below_many))
 
@@ -148,16 +153,8 @@ class HourDemand:
         at = np.array([temperature_c])
         shift, spread = float(self.response.shift_kw(at)[0]), float(np.sqrt(self.response.shift_variance_kw2(at)[0]))
         total = with_term(self.still, np.array([shift]), np.ones(1), spread)
-        return replace(
-            self, total=total, whole_down=total.down.plain_distribution(), whole_up=total.up.plain_distribution()
-        )
-
-    def without_temperature(self, spread_kw: float) -> "HourDemand":
-        """The distribution at no shift by temperature, the response being uncertain by a standard deviation. [kW]"""
-        if self.response is None:
-            return self
-        total = with_normal(self.still, spread_kw)
-        return replace(self, total=total, whole_down=total.down.distribution(), whole_up=total.up.distribution())
+        down, up = plain_distributions(total)
+        return replace(self, total=total, whole_down=down, whole_up=up)
 
     def independent_exceedance(self, level_kw: float) -> float:
         """Probability above a level if the customers were independent; for comparison only. [-]"""

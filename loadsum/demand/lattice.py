@@ -165,7 +165,7 @@ def continuous_mass(
     rounding : {"down", "up"}
         Direction of rounding.
     """
-    stride = max(int((high_kw - low_kw) / (CELLS * step_kw)), 1)  # cells of whole steps, as fine as is of use
+    stride = cell_steps(low_kw, high_kw, step_kw)
     first, last = int(np.floor(low_kw / (stride * step_kw))), int(np.ceil(high_kw / (stride * step_kw)))
     edges: NDArray[np.float64] = np.arange(first, last + 1, dtype=np.float64) * (stride * step_kw)
     middle = edges.size // 2
@@ -218,17 +218,30 @@ def kernel_mass(
     """
     if bandwidth_kw == 0.0:
         return lattice_mass(centres_kw, step_kw, rounding, weights)
-    share = weights / weights.sum()
     reach = NORMAL_REACH * bandwidth_kw
-
-    def cdf(kw: NDArray[np.float64]) -> NDArray[np.float64]:
-        return np.asarray(ndtr((kw[:, None] - centres_kw) / bandwidth_kw) @ share, dtype=np.float64)
-
-    def survival(kw: NDArray[np.float64]) -> NDArray[np.float64]:
-        return np.asarray(ndtr((centres_kw - kw[:, None]) / bandwidth_kw) @ share, dtype=np.float64)
-
     low, high = float(centres_kw.min()) - reach, float(centres_kw.max()) + reach
-    return continuous_mass(cdf, survival, low, high, step_kw, rounding)
+    cell = cell_steps(low, high, step_kw) * step_kw
+    share = weights / weights.sum()
+    # The centres are stated to the cells of the term, so that one table of the normal law serves them all.
+    places, index = np.unique(np.rint(centres_kw / cell).astype(np.int64), return_inverse=True)
+    height = np.bincount(index, weights=share)
+
+    def summed(kw: NDArray[np.float64], sign: float) -> NDArray[np.float64]:
+        edge = np.rint(kw / cell).astype(np.int64)
+        first = int(edge[0] - places[-1])
+        table = ndtr(sign * np.arange(first, int(edge[-1] - places[0]) + 1) * (cell / bandwidth_kw))
+        total = np.zeros(edge.size)
+        for place, part in zip(places.tolist(), height.tolist(), strict=True):
+            start = int(edge[0]) - place - first
+            total += part * table[start : start + edge.size]
+        return total
+
+    return continuous_mass(lambda kw: summed(kw, 1.0), lambda kw: summed(kw, -1.0), low, high, step_kw, rounding)
+
+
+def cell_steps(low_kw: float, high_kw: float, step_kw: float) -> int:
+    """Lattice steps in one cell of a continuous term: as many as still make the cells as fine as is of use. [-]"""
+    return max(int((high_kw - low_kw) / (CELLS * step_kw)), 1)
 
 
 def mixture(parts: Sequence[LatticeMass], weights: Sequence[float]) -> LatticeMass:

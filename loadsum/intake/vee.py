@@ -88,6 +88,7 @@ def estimated(held: Held) -> Iterator[Finding]:
                 customer=name,
                 place=held.when(int(slots[0])),
                 count=int(slots.size),
+                excluded=int(slots.size),
                 message=f"{slots.size} intervals are flagged as estimated or substituted",
                 effect="they are not counted as observed",
             )
