@@ -12,7 +12,7 @@ from loadsum.demand.hourly import GroupDemand
 from loadsum.intake.readings import read_only
 
 SHRINKAGE = 0.10  # weight of the identity in each correlation matrix
-POOLED_DAYS = 20.0  # weight of all classes together in each class's matrix, in days
+POOLED_DAYS = 60.0  # weight of all classes together in each class's matrix, in days
 SMALLEST_EIGENVALUE = 1e-6
 CANDIDATES = (np.inf, 30.0, 15.0, 8.0, 5.0, 3.0)  # degrees of freedom that hold-out chooses from
 

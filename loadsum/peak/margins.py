@@ -6,6 +6,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from loadsum.demand.hourly import Direction, GroupDemand
+from loadsum.demand.lattice import LatticeMass
 from loadsum.intake.readings import read_only
 from loadsum.peak.copula import DayCopula
 from loadsum.peak.weather import YearsOfDays
@@ -147,10 +148,11 @@ def margins(demand: GroupDemand, copula: DayCopula, *, years: YearsOfDays | None
 
     Notes
     -----
-    Between the points of a table demand is interpolated along the score, so a jump of the quantile is spread over
-    1/128 of a standard deviation: at most 2 % of a tail probability, and only where a level lies inside the jump.
-    Beyond a probability of 1e-13 the tables are flat. The uncertainty of the response to temperature has its mean
-    over the days of the class, not that of each day.
+    Where readings were rounded to the lattice, a table lies midway between those of the two roundings, as the
+    predictive probability does. Between the points of a table demand is interpolated along the score, so a jump of
+    the quantile is spread over 1/128 of a standard deviation: at most 2 % of a tail probability, and only where a
+    level lies inside the jump. Beyond a probability of 1e-13 the tables are flat. The uncertainty of the response to
+    temperature has its mean over the days of the class, not that of each day.
     """
     heavy = bool(np.isfinite(copula.degrees_of_freedom))
     reach = float(copula.score(np.array(SMALLEST)))
@@ -173,7 +175,8 @@ def margins(demand: GroupDemand, copula: DayCopula, *, years: YearsOfDays | None
                 days = years.daily_c[years.block == b]
                 variance = float(hour.response.shift_variance_kw2(days).mean()) if days.size else 0.0
                 given = hour.without_temperature(float(np.sqrt(variance)))
-            kw[b, i] = np.maximum.accumulate(given.quantiles_kw(exceeded_with))
+            ends = [quantiles_of(whole, exceeded_with) for whole in (given.whole_down, given.whole_up)]
+            kw[b, i] = 0.5 * (ends[0] + ends[1])
     return Margins(
         heavy=heavy,
         place=place,
@@ -183,6 +186,13 @@ def margins(demand: GroupDemand, copula: DayCopula, *, years: YearsOfDays | None
         shift_kw=shift_kw,
         kvar_per_kw=kvar_per_kw,
     )
+
+
+def quantiles_of(whole: LatticeMass, exceeded_with: NDArray[np.float64]) -> NDArray[np.float64]:
+    """Lowest level that demand exceeds with at most each probability, (n,) float64. [- -> kW]"""
+    above = np.append(np.cumsum(whole.mass[::-1])[::-1][1:], 0.0)
+    place = np.searchsorted(-np.maximum.accumulate(above[::-1])[::-1], -exceeded_with, side="left")
+    return np.asarray(whole.points_kw[np.minimum(place, above.size - 1)], dtype=np.float64)
 
 
 def _temperatures(demand: GroupDemand, years: YearsOfDays) -> NDArray[np.float64] | None:

@@ -8,6 +8,7 @@ from collections.abc import Iterator
 from pathlib import Path
 
 from loadsum.errors import Fault
+from loadsum.study.futurechecks import check_load_to_come
 from loadsum.study.tables import Customer, Study, Transformer
 from loadsum.study.values import shown
 
@@ -24,6 +25,7 @@ def check_study(study: Study) -> list[Fault]:
         *_customers(study),
         *_transformers(study),
         *_loading(study),
+        *check_load_to_come(study),
     ]
 
 
@@ -36,6 +38,10 @@ def check_files(study: Study, folder: Path) -> list[Fault]:
             faults.append(Fault(where, "is empty; name the meter file, relative to the study file"))
         elif not (folder / source.files).exists() and not _matches(folder, source.files):
             faults.append(Fault(where, f"no file matches {shown(source.files)} from the folder of the study file"))
+    for n, row in enumerate(study.addition, start=1):
+        if row.profile and not (folder / row.profile).is_file():
+            place = _place("addition", n, len(study.addition))
+            faults.append(Fault(f"{place}.profile", f"no file {shown(row.profile)} beside the study file"))
     for name in ("file", "record_file"):
         file = getattr(study.weather, name)
         if file and not (folder / file).is_file():

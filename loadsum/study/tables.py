@@ -3,6 +3,7 @@
 from dataclasses import dataclass
 
 from loadsum.study.keys import key
+from loadsum.study.loadtocome import Addition, DiversityTable, Rusck, ScenarioKeys, Velander
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -314,3 +315,8 @@ class Study:
         "Criteria of the user's utility; none means a table and no verdict.", default=()
     )
     person: tuple[Person, ...] = key("People.", default=())
+    scenario: tuple[ScenarioKeys, ...] = key("Scenarios of load to come.", default=())
+    addition: tuple[Addition, ...] = key("What scenarios add, and what headroom is counted in.", default=())
+    velander: Velander = key("Two-term law of maximum demand.", default_factory=Velander)
+    rusck: Rusck = key("Square-root law of coincidence.", default_factory=Rusck)
+    diversity_table: tuple[DiversityTable, ...] = key("Tables of factors that the user works with.", default=())

@@ -24,8 +24,10 @@ QUARTERS = tuple(
         ("autumn", (9, 10, 11)),
     )
 )
-COARSE = ModelSettings(lattice_kw=0.05)
-PLAIN = ModelSettings(temperature=False, common_component=False, shrinkage=False, mean_uncertainty=False, lattice_kw=0.05)
+COARSE = ModelSettings(lattice_kw=0.02)
+PLAIN = ModelSettings(
+    temperature=False, common_component=False, shrinkage=False, mean_uncertainty=False, lattice_kw=0.05
+)
 
 
 def reference(topic: str) -> dict[str, dict]:

@@ -1,0 +1,66 @@
+"""A device's demand profile from delimited text: one row a day."""
+
+from pathlib import Path
+
+import numpy as np
+from numpy.typing import NDArray
+
+from loadsum.errors import Fault, InputError
+
+
+def read_profile(path: Path, interval_min: int) -> NDArray[np.float64]:
+    """Demand of one device in each demand interval of each day of its profile.
+
+    Parameters
+    ----------
+    path : Path
+        UTF-8 text with a header line; then one line a day: a name, then average kW of equal intervals from midnight.
+        Fields are separated by commas, or by semicolons where the header has any.
+    interval_min : int
+        Demand interval of the study; finer intervals are averaged up, coarser ones refused. [min]
+
+    Returns
+    -------
+    (D, I) float64
+        Demand. [kW]
+
+    Raises
+    ------
+    InputError
+        The file cannot be read, or it holds faults, with every line at fault.
+    """
+    try:
+        lines = path.read_text(encoding="utf-8-sig").splitlines()
+    except (OSError, UnicodeDecodeError) as error:
+        raise InputError(path.name, [Fault(path.name, f"cannot be read as UTF-8 text: {error}")]) from error
+    separator = ";" if lines and ";" in lines[0] else ","
+    wanted = 1440 // interval_min
+    width = len(lines[0].split(separator)) - 1 if lines else 0
+    faults: list[Fault] = []
+    if width < wanted or width % wanted:
+        faults.append(
+            Fault(
+                f"{path.name}:1",
+                f"has {width} intervals a day; the study needs {wanted}, or a multiple of them to average up",
+            )
+        )
+    days = []
+    for number, line in enumerate(lines[1:], start=2):
+        if not line.strip():
+            continue
+        fields = line.split(separator)[1:]
+        if len(fields) != width:
+            faults.append(Fault(f"{path.name}:{number}", f"has {len(fields)} intervals, the header {width}"))
+            continue
+        try:
+            days.append([float(field) for field in fields])
+        except ValueError as error:
+            faults.append(Fault(f"{path.name}:{number}", f"is not a row of numbers: {error}"))
+            continue
+        if not np.isfinite(days[-1]).all():
+            faults.append(Fault(f"{path.name}:{number}", "holds a value that is not finite"))
+    if not days and not faults:
+        faults.append(Fault(f"{path.name}:2", "has no row of a day"))
+    if faults:
+        raise InputError(path.name, faults)
+    return np.asarray(np.array(days).reshape(len(days), wanted, width // wanted).mean(axis=2), dtype=np.float64)
