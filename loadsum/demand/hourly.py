@@ -1,12 +1,13 @@
 """The distribution of the coincident demand in each demand interval: what the later stages ask."""
 
+import math
 from collections.abc import Callable
 from dataclasses import dataclass, replace
+from functools import cached_property
 from typing import Literal
 
 import numpy as np
 from numpy.typing import NDArray
-from scipy.stats import norm
 
 from loadsum.demand.convolution import BracketedSum, DemandSum, plain_distributions
 from loadsum.demand.lattice import LatticeMass, kernel_mass, normal_mass
@@ -22,7 +23,7 @@ DEEP = 1e-5  # below this the whole distribution is not accurate enough and the 
 NOTHING = 1e-14  # below this nothing more is asked of a probability: the bracket says so
 
 
-@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
+@dataclass(frozen=True, kw_only=True, eq=False)
 class HourDemand:
     """Distribution of the coincident demand in one demand interval of the days of one season and day type.
 
@@ -80,18 +81,26 @@ class HourDemand:
         """Smallest probability that the record supports. [-]"""
         return 1.0 / (self.n_days + 1)
 
+    @cached_property
+    def _moments(self) -> tuple[float, float, float]:
+        """Mean, variance and third central moment, each the middle of its bracket. [kW, kW², kW³]"""
+        sides = (self.whole_down, self.whole_up)
+        mean = 0.5 * sum(side.mean_kw() for side in sides)
+        second, third = (0.5 * sum(side.central_moment(order) for side in sides) for order in (2, 3))
+        return mean, second, third
+
     def mean_kw(self) -> float:
         """Mean coincident demand. [kW]"""
-        return 0.5 * (self.whole_down.mean_kw() + self.whole_up.mean_kw())
+        return self._moments[0]
 
     def variance_kw2(self) -> float:
         """Variance of the coincident demand. [kW²]"""
-        return 0.5 * (self.whole_down.central_moment(2) + self.whole_up.central_moment(2))
+        return self._moments[1]
 
     def skewness(self) -> float:
         """Skewness of the coincident demand; 0 for a constant. [-]"""
-        variance = self.whole_up.central_moment(2)
-        return self.whole_up.central_moment(3) / variance**1.5 if variance > 0.0 else 0.0
+        _, second, third = self._moments
+        return third / second**1.5 if second > 0.0 else 0.0
 
     def exceedance(self, level_kw: float) -> Probability:
         """Probability that demand is strictly above a level. [kW -> -]"""
@@ -156,17 +165,29 @@ class HourDemand:
         down, up = plain_distributions(total)
         return replace(self, total=total, whole_down=down, whole_up=up)
 
+    def without_temperature(self, spread_kw: float) -> "HourDemand":
+        """The distribution at no shift by temperature, the response being uncertain by a standard deviation. [kW]"""
+        if self.response is None:
+            return self
+        total = with_normal(self.still, spread_kw)
+        down, up = plain_distributions(total)
+        return replace(self, total=total, whole_down=down, whole_up=up)
+
     def independent_exceedance(self, level_kw: float) -> float:
         """Probability above a level if the customers were independent; for comparison only. [-]"""
         return self.independent.above(level_kw)
 
     def normal_exceedance(self, level_kw: float) -> float:
         """Probability above a level by the normal law with the covariance of the customers; for comparison only. [-]"""
-        return _normal_above(level_kw, self.independent.mean_kw(), self.covariance_variance_kw2)
+        return _normal_above(level_kw, self._independent_moments[0], self.covariance_variance_kw2)
 
     def normal_independent_exceedance(self, level_kw: float) -> float:
         """Probability above a level by the normal law of independent customers; for comparison only. [-]"""
-        return _normal_above(level_kw, self.independent.mean_kw(), self.independent.central_moment(2))
+        return _normal_above(level_kw, *self._independent_moments)
+
+    @cached_property
+    def _independent_moments(self) -> tuple[float, float]:
+        return self.independent.mean_kw(), self.independent.central_moment(2)
 
     def _interval(
         self, level_kw: float, beyond: Callable[[NDArray[np.float64]], NDArray[np.float64]]
@@ -193,7 +214,7 @@ class HourDemand:
 def _normal_above(level_kw: float, mean_kw: float, variance_kw2: float) -> float:
     if variance_kw2 <= 0.0:
         return float(mean_kw > level_kw)
-    return float(norm.sf(level_kw, mean_kw, np.sqrt(variance_kw2)))
+    return 0.5 * math.erfc((level_kw - mean_kw) / math.sqrt(2.0 * variance_kw2))
 
 
 def with_term(

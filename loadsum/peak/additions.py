@@ -6,7 +6,7 @@ from dataclasses import dataclass, replace
 import numpy as np
 from numpy.typing import NDArray
 
-from loadsum.demand.convolution import BracketedSum, DemandSum
+from loadsum.demand.convolution import BracketedSum, DemandSum, plain_distributions
 from loadsum.demand.hourly import GroupDemand, HourDemand
 from loadsum.demand.lattice import LatticeMass, lattice_mass
 from loadsum.demand.samplingerror import Resamples
@@ -167,13 +167,15 @@ def _with(hour: HourDemand, added: Sequence[AddedLoad]) -> HourDemand:
     total = _extended(hour.total, ends)
     extra = DemandSum(terms=tuple(term for term, _ in ends["up"]), counts=tuple(n for _, n in ends["up"]))
     variance = extra.variance_kw2()
+    whole_down, whole_up = plain_distributions(total)
+    independent = DemandSum(terms=(hour.independent, *extra.terms), counts=(1, *extra.counts))
     return replace(
         hour,
         total=total,
         still=_extended(hour.still, ends),
-        whole_down=total.down.plain_distribution(),
-        whole_up=total.up.plain_distribution(),
-        independent=DemandSum(terms=(hour.independent, *extra.terms), counts=(1, *extra.counts)).plain_distribution(),
+        whole_down=whole_down,
+        whole_up=whole_up,
+        independent=plain_distributions(BracketedSum(down=independent, up=independent))[0],
         covariance_variance_kw2=hour.covariance_variance_kw2 + variance,
         can_export=hour.can_export or any(float(load.kw[hour.interval].min()) < 0.0 for load in added),
         resamples=_with_certain(hour, variance),
