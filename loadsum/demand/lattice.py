@@ -13,8 +13,8 @@ Rounding = Literal["down", "up", "exact"]
 CUT = 1e-25  # probability at which the tail of a continuous term is cut, on the outward side
 ALIGNED = 1e-6  # a reading this close to a lattice point, in steps, lies on it (float noise of the file's decimals)
 
-CELLS = 4096  # cells into which a continuous term is cut at least: about 1/300 of a standard deviation each
-
+CELLS = 4096  # cells into which a continuous term is cut at least: about 1/200 of a standard deviation each
+MOST_VALUES = 2**17  # and more as long as no more than so many values of the normal law are needed
 NORMAL_REACH = 10.5  # standard deviations beyond which a normal law has less than CUT
 
 
@@ -147,6 +147,7 @@ def continuous_mass(
     high_kw: float,
     step_kw: float,
     rounding: Literal["down", "up"],
+    cells: int = MOST_VALUES,
 ) -> LatticeMass:
     """A continuous demand rounded to the lattice in one direction, its tails cut on the outward side.
 
@@ -164,19 +165,21 @@ def continuous_mass(
         Step of the lattice. [kW]
     rounding : {"down", "up"}
         Direction of rounding.
+    cells : int
+        Number of cells that the range is cut into, where the lattice has more points than that. [-]
     """
-    stride = max(int((high_kw - low_kw) / (CELLS * step_kw)), 1)  # cells of whole steps, as fine as is of use
+    stride = max(int((high_kw - low_kw) / (cells * step_kw)), 1)  # cells of whole steps, as fine as is of use
     first, last = int(np.floor(low_kw / (stride * step_kw))), int(np.ceil(high_kw / (stride * step_kw)))
     edges: NDArray[np.float64] = np.arange(first, last + 1, dtype=np.float64) * (stride * step_kw)
     middle = edges.size // 2
     below, above = cdf(edges[: middle + 1]), survival(edges[middle:])
     mass = np.zeros((edges.size - 1) * stride + 1)
-    cells = np.concatenate([np.diff(below), -np.diff(above)])
+    shares = np.concatenate([np.diff(below), -np.diff(above)])
     if rounding == "down":
-        mass[:-1:stride] = cells
+        mass[:-1:stride] = shares
         mass[-1] = above[-1]
         return LatticeMass(step_kw=step_kw, offset=first * stride, mass=mass, beyond_below=float(below[0]))
-    mass[stride::stride] = cells
+    mass[stride::stride] = shares
     mass[0] = below[0]
     return LatticeMass(step_kw=step_kw, offset=first * stride, mass=mass, beyond_above=float(above[-1]))
 
@@ -228,7 +231,8 @@ def kernel_mass(
         return np.asarray(ndtr((centres_kw - kw[:, None]) / bandwidth_kw) @ share, dtype=np.float64)
 
     low, high = float(centres_kw.min()) - reach, float(centres_kw.max()) + reach
-    return continuous_mass(cdf, survival, low, high, step_kw, rounding)
+    cells = max(CELLS, MOST_VALUES // centres_kw.size)
+    return continuous_mass(cdf, survival, low, high, step_kw, rounding, cells)
 
 
 def mixture(parts: Sequence[LatticeMass], weights: Sequence[float]) -> LatticeMass:

@@ -25,7 +25,9 @@ QUARTERS = tuple(
     )
 )
 COARSE = ModelSettings(lattice_kw=0.05)
-PLAIN = ModelSettings(temperature=False, common_component=False, shrinkage=False, mean_uncertainty=False, lattice_kw=0.05)
+PLAIN = ModelSettings(
+    temperature=False, common_component=False, shrinkage=False, mean_uncertainty=False, lattice_kw=0.05
+)
 
 
 def reference(topic: str) -> dict[str, dict]:

@@ -11,7 +11,9 @@ from loadsum.intake.hourclass import DayBlock, calendar
 from loadsum.peak.exceedance import days_by_month, exceedance_hours
 from loadsum.study.tables import DayTypes, Season
 
-PLAIN = ModelSettings(temperature=False, common_component=False, shrinkage=False, mean_uncertainty=False, lattice_kw=0.05)
+PLAIN = ModelSettings(
+    temperature=False, common_component=False, shrinkage=False, mean_uncertainty=False, lattice_kw=0.05
+)
 
 
 def block(season, days_per_year, kw):
