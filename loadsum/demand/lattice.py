@@ -13,8 +13,9 @@ Rounding = Literal["down", "up", "exact"]
 CUT = 1e-25  # probability at which the tail of a continuous term is cut, on the outward side
 ALIGNED = 1e-6  # a reading this close to a lattice point, in steps, lies on it (float noise of the file's decimals)
 
-CELLS = 4096  # cells into which a continuous term is cut at least: about 1/300 of a standard deviation each
-
+FEW = 16  # centres of a kernel-smoothed shape up to which each is placed where it is
+MOST_VALUES = 2**17  # values of the normal law that they may cost
+CELLS = 4096  # cells into which a continuous term is cut at least: about 1/200 of a standard deviation each
 NORMAL_REACH = 10.5  # standard deviations beyond which a normal law has less than CUT
 
 
@@ -147,6 +148,7 @@ def continuous_mass(
     high_kw: float,
     step_kw: float,
     rounding: Literal["down", "up"],
+    cells: int = CELLS,
 ) -> LatticeMass:
     """A continuous demand rounded to the lattice in one direction, its tails cut on the outward side.
 
@@ -164,19 +166,21 @@ def continuous_mass(
         Step of the lattice. [kW]
     rounding : {"down", "up"}
         Direction of rounding.
+    cells : int
+        Number of cells that the range is cut into, where the lattice has more points than that. [-]
     """
-    stride = cell_steps(low_kw, high_kw, step_kw)
+    stride = cell_steps(low_kw, high_kw, step_kw, cells)
     first, last = int(np.floor(low_kw / (stride * step_kw))), int(np.ceil(high_kw / (stride * step_kw)))
     edges: NDArray[np.float64] = np.arange(first, last + 1, dtype=np.float64) * (stride * step_kw)
     middle = edges.size // 2
     below, above = cdf(edges[: middle + 1]), survival(edges[middle:])
     mass = np.zeros((edges.size - 1) * stride + 1)
-    cells = np.concatenate([np.diff(below), -np.diff(above)])
+    shares = np.concatenate([np.diff(below), -np.diff(above)])
     if rounding == "down":
-        mass[:-1:stride] = cells
+        mass[:-1:stride] = shares
         mass[-1] = above[-1]
         return LatticeMass(step_kw=step_kw, offset=first * stride, mass=mass, beyond_below=float(below[0]))
-    mass[stride::stride] = cells
+    mass[stride::stride] = shares
     mass[0] = below[0]
     return LatticeMass(step_kw=step_kw, offset=first * stride, mass=mass, beyond_above=float(above[-1]))
 
@@ -220,10 +224,20 @@ def kernel_mass(
         return lattice_mass(centres_kw, step_kw, rounding, weights)
     reach = NORMAL_REACH * bandwidth_kw
     low, high = float(centres_kw.min()) - reach, float(centres_kw.max()) + reach
-    cell = cell_steps(low, high, step_kw) * step_kw
     share = weights / weights.sum()
-    # The centres are stated to the cells of the term, so that one table of the normal law serves them all.
-    places, index = np.unique(np.rint(centres_kw / cell).astype(np.int64), return_inverse=True)
+    if centres_kw.size <= FEW:
+
+        def cdf(kw: NDArray[np.float64]) -> NDArray[np.float64]:
+            return np.asarray(ndtr((kw[:, None] - centres_kw) / bandwidth_kw) @ share, dtype=np.float64)
+
+        def survival(kw: NDArray[np.float64]) -> NDArray[np.float64]:
+            return np.asarray(ndtr((centres_kw - kw[:, None]) / bandwidth_kw) @ share, dtype=np.float64)
+
+        cells = max(CELLS, MOST_VALUES // centres_kw.size)
+        return continuous_mass(cdf, survival, low, high, step_kw, rounding, cells)
+    cell = cell_steps(low, high, step_kw, CELLS) * step_kw
+    # The centres are rounded outward to the cells of the term, so that one table of the normal law serves them all.
+    places, index = np.unique(lattice_index(centres_kw, cell, rounding), return_inverse=True)
     height = np.bincount(index, weights=share)
 
     def summed(kw: NDArray[np.float64], sign: float) -> NDArray[np.float64]:
@@ -239,9 +253,9 @@ def kernel_mass(
     return continuous_mass(lambda kw: summed(kw, 1.0), lambda kw: summed(kw, -1.0), low, high, step_kw, rounding)
 
 
-def cell_steps(low_kw: float, high_kw: float, step_kw: float) -> int:
+def cell_steps(low_kw: float, high_kw: float, step_kw: float, cells: int) -> int:
     """Lattice steps in one cell of a continuous term: as many as still make the cells as fine as is of use. [-]"""
-    return max(int((high_kw - low_kw) / (CELLS * step_kw)), 1)
+    return max(int((high_kw - low_kw) / (cells * step_kw)), 1)
 
 
 def mixture(parts: Sequence[LatticeMass], weights: Sequence[float]) -> LatticeMass:
