@@ -135,7 +135,7 @@ def _value(kind: Any, value: Any, where: str, info: KeyInfo, faults: list[Fault]
         kind = next(part for part in typing.get_args(kind) if part is not types.NoneType)
     if kind is float and isinstance(value, int) and not isinstance(value, bool):
         value = float(value)
-    if kind is str and type(value) is dt.date:  # a date without quotes
+    if kind is str and type(value) in (dt.date, dt.datetime):  # a date without quotes
         value = value.isoformat()
     if type(value) is not kind:
         faults.append(Fault(where, f"must be {WORDS[kind]}, got {shown(value)}"))

@@ -99,6 +99,13 @@ class MeterFiles:
         default="local",
     )
     day_first: str = key("Order of day and month in stamps such as 03/04/2031.", default="", choices=("yes", "no"))
+    header: bool = key("Whether the first row names the columns; without it they are called 1, 2, 3.", default=True)
+    first_stamp: str = key(
+        "Stamp of the first reading of a file that has no stamps and no gaps; needs interval_min. ISO 8601.",
+        default="",
+        example='"2031-01-01T00:00"',
+    )
+    named_by_file: bool = key("Whether each file holds one customer, called as the file is.", default=False)
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
