@@ -76,13 +76,13 @@ def read_delimited(content: bytes, name: str, source: MeterFiles) -> RawReadings
     InputError
         The file is no delimited text, or a column named in the study file is not there.
     """
-    text, said = _decoded(content, name, source.encoding)
+    text, said = decoded(content, name, source.encoding)
     if source.named_by_file:
         source = dataclasses.replace(source, customer=_called(name))
         said.append(f"customer: {source.customer}, from the name of the file")
-    delimiter = source.delimiter or _guessed_delimiter(text)
+    delimiter = source.delimiter or guessed_delimiter(text)
     said.append(f"delimiter {delimiter!r}" + ("" if source.delimiter else ", guessed"))
-    frame = _frame(text, name, delimiter, source.header)
+    frame = table_of(text, name, delimiter, source.header)
     if source.first_stamp:
         frame = _stamped(frame, name, source, said)
         source = dataclasses.replace(source, time_column=MADE_STAMPS)
@@ -102,7 +102,7 @@ def read_delimited(content: bytes, name: str, source: MeterFiles) -> RawReadings
     return _raw(picked, name, decimal, source, layout, said)
 
 
-def _decoded(content: bytes, name: str, encoding: str) -> tuple[str, list[str]]:
+def decoded(content: bytes, name: str, encoding: str) -> tuple[str, list[str]]:
     marks = ((b"\xef\xbb\xbf", "utf-8-sig"), (b"\xff\xfe", "utf-16"), (b"\xfe\xff", "utf-16"))
     wanted = encoding or next((code for mark, code in marks if content.startswith(mark)), "utf-8")
     try:
@@ -115,7 +115,7 @@ def _decoded(content: bytes, name: str, encoding: str) -> tuple[str, list[str]]:
     return text, [f"encoding {wanted}"] if wanted != "utf-8" else []
 
 
-def _guessed_delimiter(text: str) -> str:
+def guessed_delimiter(text: str) -> str:
     head = text[:4096].splitlines()[:20]
     return max(DELIMITERS, key=lambda mark: min((line.count(mark) for line in head if line), default=0))
 
@@ -141,7 +141,7 @@ def _stamped(frame: pd.DataFrame, name: str, source: MeterFiles, said: list[str]
     return frame.assign(**{MADE_STAMPS: stamps})
 
 
-def _frame(text: str, name: str, delimiter: str, header: bool = True) -> pd.DataFrame:
+def table_of(text: str, name: str, delimiter: str, header: bool = True) -> pd.DataFrame:
     if text.split("\n", 1)[0].count(delimiter) > MOST_COLUMNS:
         raise InputError(name, [Fault(f"{name}:1", f"has more than {MOST_COLUMNS} columns; is the delimiter right?")])
     try:
@@ -171,15 +171,15 @@ def _frame(text: str, name: str, delimiter: str, header: bool = True) -> pd.Data
 
 
 def _guessed_layout(columns: list[str]) -> str:
-    named = [_matching([column], CUSTOMER_WORDS) is not None for column in columns]
-    valued = [_matching([column], VALUE_WORDS) is not None for column in columns]
+    named = [matching_column([column], CUSTOMER_WORDS) is not None for column in columns]
+    valued = [matching_column([column], VALUE_WORDS) is not None for column in columns]
     clocks = sum(bool(re.fullmatch(r"\d{1,2}:\d\d(:\d\d)?", column)) for column in columns)
     if clocks >= 24:
         return "one row a day"
     return "one row a reading" if len(columns) <= 6 and any(named) and any(valued) else "one column a customer"
 
 
-def _matching(columns: list[str], words: tuple[str, ...]) -> str | None:
+def matching_column(columns: list[str], words: tuple[str, ...]) -> str | None:
     for word in words:
         for column in columns:
             if re.search(rf"(^|[^a-z]){word}([^a-z]|$)", column.lower()):
@@ -196,7 +196,7 @@ def _column(
             known = ", ".join(columns[:12])
             raise InputError(name, [Fault(f"readings.{key}", f"{name} has no column {wanted!r}; it has: {known}")])
         return wanted
-    found = _matching(columns, words)
+    found = matching_column(columns, words)
     if found is not None:
         said.append(f"{key}: {found}, guessed")
     return found
