@@ -99,9 +99,10 @@ def _table(kind: type, tree: Any, where: str, faults: list[Fault]) -> Any:
     meant = set()
     for name in tree:
         if name not in fields:
-            near = difflib.get_close_matches(name, [f for f in fields if f not in tree], n=1, cutoff=0.6)
+            near = difflib.get_close_matches(name, fields, n=1, cutoff=0.6)
             meant.update(near)
-            advice = f"did you mean {near[0]}?" if near else _elsewhere(name, fields)
+            given = ", which is given already" if near and near[0] in tree else ""
+            advice = f"did you mean {near[0]}{given}?" if near else _elsewhere(name, fields)
             faults.append(Fault(_join(where, name), f"unknown key; {advice}"))
     values: dict[str, Any] = {}
     for name, field in fields.items():
