@@ -27,6 +27,7 @@ from loadsum.progress import Progress
 from loadsum.report import document, figures
 from loadsum.report.archive import RESULTS_FILE, STUDY_FILE, Attachment
 from loadsum.report.csvtables import csv_table
+from loadsum.report.energybymonth import energy_by_month
 from loadsum.report.hourmap import hour_map
 from loadsum.report.outputs import write_outputs
 from loadsum.report.quality import quality_calendar
@@ -131,6 +132,7 @@ def compute(asked: Study, folder: Path, *, progress: Progress) -> StudyResults:
         inputs=loaded.inputs,
         findings=readings.findings,
         quality=quality_calendar(readings),
+        months=energy_by_month(readings),
         transformers=tuple(units),
     )
 
