@@ -6,6 +6,10 @@ from collections.abc import Callable, Mapping, Sequence
 from dataclasses import dataclass
 from typing import Any
 
+from loadsum.study.tables import Study
+
+# Tables of the study file whose change can move a verdict.
+STUDY_CAUSES = ("customer", "season", "day_types", "model", "transformer", "allowed_loading", "criterion")
 TOLERANCE = 1e-9  # relative; what two processors may disagree by
 MOST_EXACT = 5  # causes whose shares are found from every subset of them
 
@@ -279,3 +283,28 @@ def shares(causes: Sequence[str], figure: Callable[[frozenset[str]], float]) -> 
         Share(cause=cause, change=change, share=change / whole if whole else float("nan"))
         for cause, change in added.items()
     )
+
+
+def judged(study: Study) -> tuple[str, float]:
+    """The transformer and rating whose room is shared out among the causes: the first of the study, the unit in service
+    or else the largest rating compared. [-, kVA]"""
+    unit = study.transformer[0]
+    return unit.id, unit.installed_kva or max(unit.ratings_kva, default=0.0)
+
+
+def room_at(selection: Mapping[str, Any] | None, rating_kva: float) -> float:
+    """Least room under any criterion at a rating, as a share of the criterion's limit; not a number without one. [-]
+
+    Parameters
+    ----------
+    selection : mapping or None
+        Choice of rating as results hold it.
+    rating_kva : float
+        Rating; the smallest one not below it is taken. [kVA]
+    """
+    rooms = []
+    for row in (selection or {}).get("criteria") or ():
+        enough = [at for at in row["by_rating"] if at["rating_kva"] >= rating_kva] or row["by_rating"][-1:]
+        if enough and enough[0]["margin"] is not None and row["limit"] > 0.0:
+            rooms.append(enough[0]["margin"] / row["limit"])
+    return min(rooms, default=float("nan"))

@@ -6,6 +6,7 @@ import difflib
 import tomllib
 import types
 import typing
+from collections.abc import Sequence
 from pathlib import Path
 from typing import Any
 
@@ -13,19 +14,27 @@ from loadsum.errors import Fault, InputError
 from loadsum.study.checks import check_files, check_study
 from loadsum.study.customertable import with_customer_table
 from loadsum.study.keys import KeyInfo
+from loadsum.study.overrides import with_overrides
 from loadsum.study.tables import Study
 from loadsum.study.values import WORDS, shown, value_faults
 
 
-def load_study(path: Path) -> Study:
+def load_study(path: Path, overrides: Sequence[str] = ()) -> Study:
     """The study that a file describes, with the rows of its customer table.
+
+    Parameters
+    ----------
+    path : Path
+        Study file.
+    overrides : sequence of str
+        ``key=value`` each: values that stand for those of the file.
 
     Raises
     ------
     InputError
         The file cannot be read, or it or its customer table holds faults; all of them are reported together.
     """
-    return study_from(read_tree(path), path.name, path.parent)
+    return study_from(with_overrides(read_tree(path), overrides), path.name, path.parent)
 
 
 def read_tree(path: Path) -> dict[str, Any]:

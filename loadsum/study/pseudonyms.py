@@ -45,6 +45,15 @@ class Pseudonyms:
         words = "|".join(re.escape(name) + ("" if _telling(name) else r"(?=\.[a-z])") for name in longest_first)
         return re.sub(rf"(?<!\w)(?:{words})(?!\w)", lambda found: self.names[found[0]], text)
 
+    def toml(self, text: str) -> str:
+        """A study file in which every identifier in quotes, and every telling one elsewhere, is replaced."""
+        quoted = re.compile(r"(['\"])([^'\"\n]*)\1")
+        return self.text(quoted.sub(lambda m: f"{m[1]}{self.names.get(m[2], m[2])}{m[1]}", text))
+
+    def cause(self, words: str) -> str:
+        """A cause in words, ``customer X added``, with the pseudonym of its customer."""
+        return re.sub(r"(?<=\bcustomer )(.+)(?= (?:added|gone|replaced)$)", lambda m: self.names.get(m[1], m[1]), words)
+
     def results(self, value: Any, place: str = "") -> Any:
         """Results as JSON knows them, with pseudonyms instead of identifiers.
 
