@@ -20,6 +20,7 @@ A first study:
   loadsum draft meters/                  look at a folder of meter files and write a study file to fill in
   loadsum inspect study.toml             read the files and list every doubt about the readings
   loadsum study study.toml --out out/    make the study: out/report.pdf, out/results.json, out/hours.csv, out/figures/
+  loadsum compare out/ later/            list what a revision changed
 
 Results are a draft until a licensed engineer has reviewed and signed them where the law requires it.
 """
@@ -46,10 +47,32 @@ def parser() -> argparse.ArgumentParser:
     study = command("study", "make a study: PDF report, results, hourly table and figures")
     study.add_argument("file", type=Path, metavar="FILE", help="study file (TOML)")
     study.add_argument("--out", type=Path, required=True, metavar="DIR", help="folder for the results")
+    study.add_argument(
+        "--with",
+        dest="overrides",
+        action="append",
+        default=[],
+        metavar="KEY=VALUE",
+        help="a value that stands for the study file's, as in transformer.power_factor=0.9; may be repeated",
+    )
 
     inspect = command("inspect", "read the meter files and list every finding, without running the study")
     inspect.add_argument("file", type=Path, metavar="FILE", help="study file (TOML)")
     inspect.add_argument("--out", type=Path, metavar="DIR", help="folder for findings.csv")
+
+    draft = command("draft", "look at a folder of meter files and write a study file and a customer table to fill in")
+    draft.add_argument("folder", type=Path, metavar="FOLDER", help="folder of meter files; nothing is overwritten")
+
+    compare = command("compare", "list what changed from one study to its revision, and why the verdict moved")
+    compare.add_argument("old", type=Path, metavar="OLD", help="results.json of the study, or the folder that holds it")
+    compare.add_argument("new", type=Path, metavar="NEW", help="the same of its revision")
+    compare.add_argument(
+        "--studies",
+        nargs=2,
+        type=Path,
+        metavar=("OLD_FILE", "NEW_FILE"),
+        help="study files of the two, with their meter files: computes how much each cause moved the verdict",
+    )
     return top
 
 
@@ -81,8 +104,13 @@ def main(argv: Sequence[str] | None = None) -> int:
 
         if args.command == "inspect":
             text = pipeline.inspect(args.file, out=args.out, progress=progress)
+        elif args.command == "draft":
+            text = pipeline.draft(args.folder)
+        elif args.command == "compare":
+            studies = (args.studies[0], args.studies[1]) if args.studies else None
+            text = pipeline.compare(args.old, args.new, progress=progress, studies=studies)
         else:
-            text = pipeline.study(args.file, out=args.out, progress=progress)
+            text = pipeline.study(args.file, out=args.out, progress=progress, overrides=args.overrides)
     except LoadsumError as error:
         line.clear()
         print(f"loadsum: {error}", file=sys.stderr)

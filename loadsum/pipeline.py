@@ -1,8 +1,10 @@
 """The order of the stages and nothing else."""
 
+import json
 import logging
 import platform
 from collections.abc import Sequence
+from dataclasses import replace
 from importlib import metadata
 from pathlib import Path
 from typing import Any
@@ -19,14 +21,19 @@ from loadsum.demand.served import (
     settings_of,
     with_unmetered_block,
 )
+from loadsum.errors import Fault, InputError
+from loadsum.intake.customers import customer_findings
+from loadsum.intake.draft import draft_study
 from loadsum.intake.hourclass import Calendar, DayBlock, calendar, day_blocks, metered_years
 from loadsum.intake.load import Loaded, load_readings
 from loadsum.intake.readings import shared_resolution
+from loadsum.intake.revised import reading_changes, with_changes
 from loadsum.peak.exceedance import days_by_month, exceedance_hours
 from loadsum.progress import Progress
-from loadsum.report import document, figures
+from loadsum.report import document, figures, revision
 from loadsum.report.archive import RESULTS_FILE, STUDY_FILE, Attachment
 from loadsum.report.csvtables import csv_table
+from loadsum.report.energybymonth import energy_by_month
 from loadsum.report.hourmap import hour_map
 from loadsum.report.outputs import write_outputs
 from loadsum.report.quality import quality_calendar
@@ -35,6 +42,7 @@ from loadsum.report.results import SCHEMA_VERSION, Program, StudyResults, Transf
 from loadsum.report.tables import coverage, curve, curve_levels, customer_rows, exceedance_rows, hour_rows
 from loadsum.study.checks import billed_kwh
 from loadsum.study.load import load_study
+from loadsum.study.pseudonyms import key_beside, pseudonyms
 from loadsum.study.tables import Study, Transformer
 from loadsum.transformer.loading import loadings
 from loadsum.transformer.ratings import ratings_of
@@ -45,8 +53,19 @@ log = logging.getLogger(__name__)
 STANDS_ON = ("numpy", "scipy", "pandas", "jinja2", "weasyprint", "matplotlib", "holidays")
 
 
-def study(path: Path, *, out: Path, progress: Progress) -> str:
+def study(path: Path, *, out: Path, progress: Progress, overrides: Sequence[str] = ()) -> str:
     """Make a study and write its outputs; returns what to tell the user.
+
+    Parameters
+    ----------
+    path : Path
+        Study file.
+    out : Path
+        Folder for the outputs.
+    progress : Progress
+        Told how far the work is.
+    overrides : sequence of str
+        ``key=value`` each: values that stand for those of the study file.
 
     Raises
     ------
@@ -56,11 +75,29 @@ def study(path: Path, *, out: Path, progress: Progress) -> str:
         The outputs cannot be written or the PDF renderer cannot be loaded.
     """
     progress("reading the study file", 0.0)
-    asked = load_study(path)
+    asked = load_study(path, overrides)
     results = encode(compute(asked, path.parent, progress=progress))
+    study_file = path.read_text(encoding="utf-8-sig")
+    said = [f"report: {out / 'report.pdf'}"]
+    if overrides:
+        before = encode(compute(load_study(path), path.parent, progress=progress))
+        said += [str(change) for change in revision.compare(before, results)] or ["no figure and no verdict changed"]
+        study_file += "".join(f"\n# with {text}" for text in overrides) + "\n"
+    if not asked.privacy.raw_identifiers:
+        key, made = key_beside(path, asked.privacy.key_file)
+        named = pseudonyms(identifiers(asked, results), key)
+        results, study_file = named.results(results), named.toml(study_file)
+        if made:
+            said.append(f"customers have pseudonyms; keep their key: {path.parent / asked.privacy.key_file}")
     progress("drawing the report", 0.8)
-    write_outputs(out, outputs(results, path.read_bytes()))
-    return f"report: {out / 'report.pdf'}"
+    write_outputs(out, outputs(results, study_file.encode()))
+    return "\n".join(said)
+
+
+def identifiers(asked: Study, results: dict[str, Any]) -> list[str]:
+    """Every identifier of a customer that a study knows, listed or only metered."""
+    metered = [row["customer"] for row in results["months"]]
+    return list(dict.fromkeys([*metered, *(customer.id for customer in asked.customer)]))
 
 
 def outputs(results: dict[str, Any], study_file: bytes) -> dict[str, bytes]:
@@ -89,7 +126,7 @@ def inspect(path: Path, *, out: Path | None, progress: Progress) -> str:
     progress("reading meter files", 0.1)
     asked = load_study(path)
     loaded = load_readings(asked, path.parent)
-    rows = encode(loaded.readings.findings)
+    rows = encode((*loaded.readings.findings, *customer_findings(asked, loaded.readings)))
     if out is not None:
         write_outputs(out, {"findings.csv": csv_table(rows)})
     used = loaded.readings.rows_in - sum(row["excluded"] for row in rows)
@@ -103,15 +140,101 @@ def inspect(path: Path, *, out: Path | None, progress: Progress) -> str:
     return "\n".join(lines)
 
 
+def draft(folder: Path) -> str:
+    """Draft a study file and a customer table from a folder of meter files; returns what to tell the user."""
+    files, said = draft_study(folder)
+    end = [f"written: {path}" for path in files] or ["nothing new; nothing written"]
+    return "\n".join([*said, *end])
+
+
+def compare(old: Path, new: Path, *, progress: Progress, studies: tuple[Path, Path] | None = None) -> str:
+    """What changed from one study to its revision, and how much each cause moved the verdict.
+
+    Parameters
+    ----------
+    old, new : Path
+        results.json of either study, or the folder that holds it.
+    progress : Progress
+        Told how far the work is.
+    studies : (Path, Path) or None
+        Study files of the two with their meter files; without them the causes have no shares.
+    """
+    changes = revision.compare(read_results(old), read_results(new))
+    lines = [str(change) for change in changes] or ["nothing changed"]
+    if studies is not None:
+        lines += shares_of_change(*studies, progress=progress)
+    return "\n".join(lines)
+
+
+def read_results(path: Path) -> dict[str, Any]:
+    """Results as a study wrote them.
+
+    Raises
+    ------
+    InputError
+        The file cannot be read or is no results.json.
+    """
+    file = path / RESULTS_FILE if path.is_dir() else path
+    try:
+        found = json.loads(file.read_text(encoding="utf-8"))
+    except OSError as error:
+        raise InputError(str(file), [Fault(str(file), f"cannot be read: {error.strerror}")]) from error
+    except ValueError as error:
+        raise InputError(str(file), [Fault(str(file), f"is no results.json: {error}")]) from error
+    version = found.get("schema_version") if isinstance(found, dict) else None
+    if version != SCHEMA_VERSION:
+        message = f"results of version {version}; this program compares version {SCHEMA_VERSION}"
+        raise InputError(str(file), [Fault(str(file), message)])
+    return dict(found)
+
+
+def shares_of_change(old: Path, new: Path, *, progress: Progress) -> list[str]:
+    """How much each cause moved the room under the governing criterion, in words."""
+    asked = load_study(old), load_study(new)
+    loaded = load_readings(asked[0], old.parent), load_readings(asked[1], new.parent)
+    if asked[0].study.demand_interval_min != asked[1].study.demand_interval_min:
+        return ["shares of the change: none, the two studies have different demand intervals"]
+    by_readings = {change.cause: change for change in reading_changes(loaded[0].readings, loaded[1].readings)}
+    tables = [name for name in revision.STUDY_CAUSES if getattr(asked[0], name) != getattr(asked[1], name)]
+    by_table = {f"[{name}] changed": name for name in tables}
+    causes = [*by_readings, *by_table]
+    if not causes:
+        return ["shares of the change: there is no cause"]
+    unit, rating = revision.judged(asked[1])
+    asked_for = 0
+
+    def room(chosen: frozenset[str]) -> float:
+        nonlocal asked_for
+        asked_for += 1
+        progress("computing with some of the causes", min(asked_for / 2 ** min(len(causes), 5), 1.0))
+        hybrid = replace(asked[0], **{by_table[c]: getattr(asked[1], by_table[c]) for c in chosen if c in by_table})
+        parts = [change for cause, change in by_readings.items() if cause in chosen]
+        weather = loaded[1] if any(change.kind == "period added" for change in parts) else loaded[0]
+        readings = with_changes(loaded[0].readings, loaded[1].readings, parts)
+        results = with_readings(hybrid, replace(weather, readings=readings), only=unit)
+        return revision.room_at(encode(results)["selection"], rating)
+
+    found = revision.shares(causes, room)
+    if not asked[1].privacy.raw_identifiers:
+        key, _ = key_beside(new, asked[1].privacy.key_file)
+        everybody = {*loaded[0].readings.customers, *loaded[1].readings.customers}
+        named = pseudonyms(sorted(everybody), key)
+        renamed = [replace(share, cause=named.cause(share.cause)) for share in found]
+    else:
+        renamed = list(found)
+    head = (
+        f"room under the governing criterion at {rating:g} kVA{f', {unit}' if unit else ''}, as a share of its limit:"
+    )
+    return [head, *(f"  {share.cause}: {share.change:+.4f} ({share.share:.0%} of the change)" for share in renamed)]
+
+
 def compute(asked: Study, folder: Path, *, progress: Progress) -> StudyResults:
     """Results of a study whose files lie in a folder."""
     progress("reading meter files", 0.05)
     log.info("reading meter files")
     loaded = load_readings(asked, folder)
     readings = loaded.readings
-    years = metered_years(readings)
-    days = calendar(asked.season, asked.day_types, years)
-    blocks = day_blocks(readings, days, years, loaded.temperature)
+    days, years, blocks = classes(asked, loaded)
     units = []
     for number, unit in enumerate(asked.transformer):
         progress("computing", 0.15 + 0.6 * number / len(asked.transformer))
@@ -129,10 +252,25 @@ def compute(asked: Study, folder: Path, *, progress: Progress) -> StudyResults:
         people=asked.person,
         seed=asked.study.seed,
         inputs=loaded.inputs,
-        findings=readings.findings,
+        findings=(*readings.findings, *customer_findings(asked, readings)),
         quality=quality_calendar(readings),
+        months=energy_by_month(readings),
         transformers=tuple(units),
     )
+
+
+def classes(asked: Study, loaded: Loaded) -> tuple[Calendar, Sequence[int], Sequence[DayBlock]]:
+    """Calendar, metered years, and the readings sorted into classes of days."""
+    years = metered_years(loaded.readings)
+    days = calendar(asked.season, asked.day_types, years)
+    return days, years, day_blocks(loaded.readings, days, years, loaded.temperature)
+
+
+def with_readings(asked: Study, loaded: Loaded, *, only: str) -> TransformerResults:
+    """Results of the one transformer of that id, from readings that are loaded already."""
+    days, years, blocks = classes(asked, loaded)
+    unit = next(unit for unit in asked.transformer if unit.id == only)
+    return one_transformer(asked, unit, loaded, blocks, days, years)
 
 
 def one_transformer(

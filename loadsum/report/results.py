@@ -14,6 +14,7 @@ from numpy.typing import NDArray
 from loadsum.demand.hourly import BlockDiagnostics
 from loadsum.intake.findings import Finding
 from loadsum.intake.inputs import InputFile
+from loadsum.report.energybymonth import CustomerMonths
 from loadsum.report.hourmap import HourMap
 from loadsum.report.quality import QualityCalendar
 from loadsum.study.assumptions import Assumption
@@ -217,6 +218,7 @@ class StudyResults:
     findings: tuple[Finding, ...]
     quality: QualityCalendar
     transformers: tuple[TransformerResults, ...]
+    months: tuple[CustomerMonths, ...] = ()
 
 
 def encode(value: Any) -> Any:

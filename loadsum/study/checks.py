@@ -20,6 +20,7 @@ def check_study(study: Study) -> list[Fault]:
     return [
         *_heading(study),
         *_clocks(study),
+        *_stamps(study),
         *_seasons(study),
         *_days(study),
         *_customers(study),
@@ -77,6 +78,24 @@ def _clocks(study: Study) -> Iterator[Fault]:
     for where, clock in [*clocks, ("weather.clock", study.weather.clock)]:
         if clock not in ("local", "utc", "standard") and not OFFSET.fullmatch(clock):
             yield Fault(where, f'must be local, utc, standard or an offset such as "+10:00"; got {shown(clock)}')
+
+
+def _stamps(study: Study) -> Iterator[Fault]:
+    for n, source in enumerate(study.readings, start=1):
+        where = _place("readings", n, len(study.readings))
+        if not source.first_stamp:
+            continue
+        if source.interval_min == 0:
+            yield Fault(f"{where}.interval_min", "missing; a file without stamps needs it")
+        if source.time_column:
+            yield Fault(f"{where}.first_stamp", "stands beside time_column; keep one of the two")
+        try:
+            dt.datetime.fromisoformat(source.first_stamp)
+        except ValueError:
+            yield Fault(
+                f"{where}.first_stamp",
+                f"must be an ISO 8601 stamp such as 2031-05-04T00:00, got {shown(source.first_stamp)}",
+            )
 
 
 def _seasons(study: Study) -> Iterator[Fault]:

@@ -6,6 +6,7 @@ import difflib
 import tomllib
 import types
 import typing
+from collections.abc import Sequence
 from pathlib import Path
 from typing import Any
 
@@ -13,19 +14,27 @@ from loadsum.errors import Fault, InputError
 from loadsum.study.checks import check_files, check_study
 from loadsum.study.customertable import with_customer_table
 from loadsum.study.keys import KeyInfo
+from loadsum.study.overrides import with_overrides
 from loadsum.study.tables import Study
 from loadsum.study.values import WORDS, shown, value_faults
 
 
-def load_study(path: Path) -> Study:
+def load_study(path: Path, overrides: Sequence[str] = ()) -> Study:
     """The study that a file describes, with the rows of its customer table.
+
+    Parameters
+    ----------
+    path : Path
+        Study file.
+    overrides : sequence of str
+        ``key=value`` each: values that stand for those of the file.
 
     Raises
     ------
     InputError
         The file cannot be read, or it or its customer table holds faults; all of them are reported together.
     """
-    return study_from(read_tree(path), path.name, path.parent)
+    return study_from(with_overrides(read_tree(path), overrides), path.name, path.parent)
 
 
 def read_tree(path: Path) -> dict[str, Any]:
@@ -99,9 +108,10 @@ def _table(kind: type, tree: Any, where: str, faults: list[Fault]) -> Any:
     meant = set()
     for name in tree:
         if name not in fields:
-            near = difflib.get_close_matches(name, [f for f in fields if f not in tree], n=1, cutoff=0.6)
+            near = difflib.get_close_matches(name, fields, n=1, cutoff=0.6)
             meant.update(near)
-            advice = f"did you mean {near[0]}?" if near else _elsewhere(name, fields)
+            given = ", which is given already" if near and near[0] in tree else ""
+            advice = f"did you mean {near[0]}{given}?" if near else _elsewhere(name, fields)
             faults.append(Fault(_join(where, name), f"unknown key; {advice}"))
     values: dict[str, Any] = {}
     for name, field in fields.items():
@@ -135,7 +145,7 @@ def _value(kind: Any, value: Any, where: str, info: KeyInfo, faults: list[Fault]
         kind = next(part for part in typing.get_args(kind) if part is not types.NoneType)
     if kind is float and isinstance(value, int) and not isinstance(value, bool):
         value = float(value)
-    if kind is str and type(value) is dt.date:  # a date without quotes
+    if kind is str and type(value) in (dt.date, dt.datetime):  # a date without quotes
         value = value.isoformat()
     if type(value) is not kind:
         faults.append(Fault(where, f"must be {WORDS[kind]}, got {shown(value)}"))

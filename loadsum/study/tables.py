@@ -99,6 +99,13 @@ class MeterFiles:
         default="local",
     )
     day_first: str = key("Order of day and month in stamps such as 03/04/2031.", default="", choices=("yes", "no"))
+    header: bool = key("Whether the first row names the columns; without it they are called 1, 2, 3.", default=True)
+    first_stamp: str = key(
+        "Stamp of the first reading of a file that has no stamps and no gaps; needs interval_min. ISO 8601.",
+        default="",
+        example='"2031-01-01T00:00"',
+    )
+    named_by_file: bool = key("Whether each file holds one customer, called as the file is.", default=False)
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -298,6 +305,20 @@ class Person:
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
+class Privacy:
+    """``[privacy]``: how customers are called in the report, the results and everything attached."""
+
+    raw_identifiers: bool = key(
+        "Print the identifiers of the meter files instead of pseudonyms; the report says so.", default=False
+    )
+    key_file: str = key(
+        "File of the key that makes the pseudonyms, beside the study file; made when it is not there. Keep it: with the"
+        " same key a customer keeps its pseudonym in every revision.",
+        default="study.key",
+    )
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
 class Study:
     """A study file, checked."""
 
@@ -320,3 +341,4 @@ class Study:
     velander: Velander = key("Two-term law of maximum demand.", default_factory=Velander)
     rusck: Rusck = key("Square-root law of coincidence.", default_factory=Rusck)
     diversity_table: tuple[DiversityTable, ...] = key("Tables of factors that the user works with.", default=())
+    privacy: Privacy = key("Names of customers.", default_factory=Privacy)

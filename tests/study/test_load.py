@@ -172,6 +172,10 @@ ONE_FAULT = {
         changed('stamp = "start"', 'stamp = "start"\nclock = "winter"'),
         'readings.clock: must be local, utc, standard or an offset such as "+10:00"; got "winter"',
     ),
+    "no interval without stamps": (
+        changed('stamp = "start"', 'stamp = "start"\nfirst_stamp = 2031-01-01T00:00:00'),
+        "readings.interval_min: missing; a file without stamps needs it",
+    ),
     "no weather file": (GOOD + '[weather]\nfile = "t.csv"\n', 'weather.file: no file "t.csv" beside the study file'),
     "subdivision": (
         GOOD + '[day_types]\nholidays_country = "US"\nholidays_subdivision = "ZZ"\n',

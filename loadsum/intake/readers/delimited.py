@@ -1,6 +1,8 @@
 """Delimited text: one row a reading, one column a customer, or one row a day."""
 
 import csv
+import dataclasses
+import datetime as dt
 import io
 import re
 from dataclasses import dataclass
@@ -14,6 +16,7 @@ from loadsum.study.tables import MeterFiles
 
 DELIMITERS = (",", ";", "\t", "|")
 MOST_COLUMNS = 20_000
+MADE_STAMPS = "made stamps"
 # Words by which a header is guessed, most telling first; what is guessed is said.
 TIME_WORDS = ("timestamp", "datetime", "stamp", "time", "read_at", "start", "date")
 CUSTOMER_WORDS = ("customer", "meter", "identifier", "account", "premise", "id")
@@ -73,12 +76,18 @@ def read_delimited(content: bytes, name: str, source: MeterFiles) -> RawReadings
     InputError
         The file is no delimited text, or a column named in the study file is not there.
     """
-    text, said = _decoded(content, name, source.encoding)
-    delimiter = source.delimiter or _guessed_delimiter(text)
+    text, said = decoded(content, name, source.encoding)
+    if source.named_by_file:
+        source = dataclasses.replace(source, customer=_called(name))
+        said.append(f"customer: {source.customer}, from the name of the file")
+    delimiter = source.delimiter or guessed_delimiter(text)
     said.append(f"delimiter {delimiter!r}" + ("" if source.delimiter else ", guessed"))
-    frame = _frame(text, name, delimiter)
+    frame = table_of(text, name, delimiter, source.header)
+    if source.first_stamp:
+        frame = _stamped(frame, name, source, said)
+        source = dataclasses.replace(source, time_column=MADE_STAMPS)
     columns = [str(column) for column in frame.columns]
-    layout = source.layout or _guessed_layout(columns)
+    layout = source.layout or ("one column a customer" if source.named_by_file else _guessed_layout(columns))
     said.append(f"layout: {layout}" + ("" if source.layout else ", guessed"))
     time = _column(columns, source.time_column, TIME_WORDS, "time_column", name, said) or columns[0]
     if layout == "one row a reading":
@@ -93,7 +102,7 @@ def read_delimited(content: bytes, name: str, source: MeterFiles) -> RawReadings
     return _raw(picked, name, decimal, source, layout, said)
 
 
-def _decoded(content: bytes, name: str, encoding: str) -> tuple[str, list[str]]:
+def decoded(content: bytes, name: str, encoding: str) -> tuple[str, list[str]]:
     marks = ((b"\xef\xbb\xbf", "utf-8-sig"), (b"\xff\xfe", "utf-16"), (b"\xfe\xff", "utf-16"))
     wanted = encoding or next((code for mark, code in marks if content.startswith(mark)), "utf-8")
     try:
@@ -106,20 +115,41 @@ def _decoded(content: bytes, name: str, encoding: str) -> tuple[str, list[str]]:
     return text, [f"encoding {wanted}"] if wanted != "utf-8" else []
 
 
-def _guessed_delimiter(text: str) -> str:
+def guessed_delimiter(text: str) -> str:
     head = text[:4096].splitlines()[:20]
     return max(DELIMITERS, key=lambda mark: min((line.count(mark) for line in head if line), default=0))
 
 
-def _frame(text: str, name: str, delimiter: str) -> pd.DataFrame:
-    header = text.split("\n", 1)[0]
-    if header.count(delimiter) > MOST_COLUMNS:
+def _called(name: str) -> str:
+    """Name of a file without its folder and endings."""
+    return name.rsplit("/", 1)[-1].split(".", 1)[0]
+
+
+def _stamped(frame: pd.DataFrame, name: str, source: MeterFiles, said: list[str]) -> pd.DataFrame:
+    """A table without stamps, with those that follow from the first one."""
+    if source.interval_min == 0:
+        raise InputError(name, [Fault("readings.interval_min", "missing; a file without stamps needs it")])
+    try:
+        first = dt.datetime.fromisoformat(source.first_stamp)
+    except ValueError as error:
+        raise InputError(
+            name, [Fault("readings.first_stamp", f"must be an ISO 8601 stamp, got {source.first_stamp!r}")]
+        ) from error
+    said.append(f"no stamps: {source.interval_min} min readings follow one another from {source.first_stamp}")
+    step = dt.timedelta(minutes=source.interval_min)
+    stamps = pd.Series([(first + n * step).isoformat() for n in range(len(frame))], index=frame.index)
+    return frame.assign(**{MADE_STAMPS: stamps})
+
+
+def table_of(text: str, name: str, delimiter: str, header: bool = True) -> pd.DataFrame:
+    if text.split("\n", 1)[0].count(delimiter) > MOST_COLUMNS:
         raise InputError(name, [Fault(f"{name}:1", f"has more than {MOST_COLUMNS} columns; is the delimiter right?")])
     try:
         frame = pd.read_csv(
             io.StringIO(text),
             sep=delimiter,
             dtype=str,
+            header="infer" if header else None,
             keep_default_na=False,
             skip_blank_lines=False,
             index_col=False,
@@ -127,7 +157,9 @@ def _frame(text: str, name: str, delimiter: str) -> pd.DataFrame:
         )
     except (pd.errors.ParserError, pd.errors.EmptyDataError, csv.Error, ValueError) as error:
         raise InputError(name, [Fault(name, f"is not delimited text: {str(error).strip()}")]) from error
-    frame.columns = [str(column).strip() for column in frame.columns]
+    frame.columns = [str(column).strip() if header else str(n) for n, column in enumerate(frame.columns, start=1)]
+    if not header:
+        frame.index = frame.index - 1  # row -1 is the first line, as row 0 is the second where there is a header
     if frame.empty or frame.shape[1] < 2:
         raise InputError(
             name, [Fault(name, "holds no table of readings: need a header, a column of stamps and one of values")]
@@ -139,15 +171,15 @@ def _frame(text: str, name: str, delimiter: str) -> pd.DataFrame:
 
 
 def _guessed_layout(columns: list[str]) -> str:
-    named = [_matching([column], CUSTOMER_WORDS) is not None for column in columns]
-    valued = [_matching([column], VALUE_WORDS) is not None for column in columns]
+    named = [matching_column([column], CUSTOMER_WORDS) is not None for column in columns]
+    valued = [matching_column([column], VALUE_WORDS) is not None for column in columns]
     clocks = sum(bool(re.fullmatch(r"\d{1,2}:\d\d(:\d\d)?", column)) for column in columns)
     if clocks >= 24:
         return "one row a day"
     return "one row a reading" if len(columns) <= 6 and any(named) and any(valued) else "one column a customer"
 
 
-def _matching(columns: list[str], words: tuple[str, ...]) -> str | None:
+def matching_column(columns: list[str], words: tuple[str, ...]) -> str | None:
     for word in words:
         for column in columns:
             if re.search(rf"(^|[^a-z]){word}([^a-z]|$)", column.lower()):
@@ -164,7 +196,7 @@ def _column(
             known = ", ".join(columns[:12])
             raise InputError(name, [Fault(f"readings.{key}", f"{name} has no column {wanted!r}; it has: {known}")])
         return wanted
-    found = _matching(columns, words)
+    found = matching_column(columns, words)
     if found is not None:
         said.append(f"{key}: {found}, guessed")
     return found
@@ -209,7 +241,7 @@ def _wide(frame: pd.DataFrame, columns: list[str], time: str, name: str, source:
         "customer": pd.Series(np.repeat(np.array(who, dtype=object), count)),
         "stamp": pd.Series(np.tile(frame[time].to_numpy(dtype=object), len(rest))),
         "value": pd.Series(np.concatenate([frame[column].to_numpy(dtype=object) for column in rest])),
-        "line": pd.Series(np.tile(np.arange(count) + 2, len(rest))),
+        "line": pd.Series(np.tile(frame.index.to_numpy() + 2, len(rest))),
     }
 
 
@@ -241,7 +273,7 @@ def _days(
         "customer": pd.Series(np.tile(owner, len(slots))),
         "stamp": pd.Series(np.concatenate(parts)),
         "value": pd.Series(np.concatenate([frame[column].to_numpy(dtype=object) for column in slots])),
-        "line": pd.Series(np.tile(np.arange(count) + 2, len(slots))),
+        "line": pd.Series(np.tile(frame.index.to_numpy() + 2, len(slots))),
     }
 
 
