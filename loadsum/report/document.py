@@ -12,6 +12,7 @@ from loadsum.report.cleantext import CleanResults, clean
 from loadsum.report.material import Material, Section
 from loadsum.report.notation import NO_BREAK, Notation
 from loadsum.report.sections import first_page, sections
+from loadsum.report.sections.foundations import parts_left_out
 from loadsum.report.sections.overview import units_in_detail
 from loadsum.report.standards import meet_both_standards
 from loadsum.report.templates import (
@@ -114,6 +115,7 @@ def compose(
         paper=PAPERS.get(study.get("page") or "A4", PAPERS["A4"]),
         families=f'"{TEXT_FAMILY}", "{FALLBACK_FAMILY}"',
         first=first_page.content(m),
+        unchecked=_unchecked(m, made),
         sections=made,
         figures=drawn,
         numbers=Numbers(),
@@ -125,6 +127,15 @@ def compose(
         **_running(m),
     )
     return html, assets, listed
+
+
+def _unchecked(m: Material, made: Sequence[Section]) -> str:
+    """What was not checked, in one sentence with the number of the section that lists it."""
+    number = [section.block for section in made].index("unchecked") + 1
+    parts = [m.t(f"unchecked.short.{part}") for part in parts_left_out(m)]
+    if not parts:
+        return m.t("first_page.unchecked_all", number=number)
+    return m.t("first_page.unchecked", parts=", ".join(parts), number=number)
 
 
 def _listed(made: Sequence[Section], drawn: Mapping[str, Any]) -> list[str]:

