@@ -30,6 +30,7 @@ from loadsum.report.typesetting import typeset
 PAPERS = {"A4": "210mm 297mm", "letter": "215.9mm 279.4mm"}
 LONGEST_RUNNING_TITLE = 72
 MOST_LISTED_FIGURES = 16
+MOST_LINES_ON_FIRST_PAGE = 26
 
 __all__ = ["compose", "material", "render", "templates_folder"]
 
@@ -102,6 +103,7 @@ def compose(
     made = sections(m, units)
     env = environment(overrides)
     env.filters.update(css_string=css_string, strong=marked_up)
+    first = first_page.content(m)
     study = m.study
     html = env.get_template("report.html.j2").render(
         t=m.t,
@@ -114,7 +116,8 @@ def compose(
         created=fixed_time(str(study.get("date") or "")).strftime("%Y-%m-%dT%H:%M:%SZ"),
         paper=PAPERS.get(study.get("page") or "A4", PAPERS["A4"]),
         families=f'"{TEXT_FAMILY}", "{FALLBACK_FAMILY}"',
-        first=first_page.content(m),
+        first=first,
+        tight=first_page.lines(first) > MOST_LINES_ON_FIRST_PAGE,
         unchecked=_unchecked(m, made),
         sections=made,
         figures=drawn,
