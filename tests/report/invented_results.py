@@ -303,6 +303,13 @@ def evidence() -> dict[str, Any]:
     }
 
 
+def without_figures(study: dict[str, Any]) -> dict[str, Any]:
+    """The study without what figures are drawn from, for tests of words: drawing takes most of the time."""
+    heavy = {"hours", "curve", "hour_map", "peaks", "diversity", "thermal", "scenarios"}
+    units = [{name: value for name, value in unit.items() if name not in heavy} for unit in study["transformers"]]
+    return {**{name: value for name, value in study.items() if name != "quality"}, "transformers": units}
+
+
 def results() -> dict[str, Any]:
     """A whole study of nine homes."""
     rows = hours()
