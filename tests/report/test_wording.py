@@ -133,7 +133,10 @@ def test_dates_and_digit_groups_follow_the_region(results: dict[str, Any]) -> No
 
 
 def test_what_comes_from_memory_says_so_in_the_references(results: dict[str, Any]) -> None:
-    assert "1932. (from memory, to be confirmed)" in page_text(results)
+    text = page_text(results)
+    assert "1932. (from memory, to be confirmed)" in text
+    assert "Ferguson" in text
+    assert "Rusck" not in text  # the study of this test holds no diversity figures
 
 
 def test_a_utility_replaces_a_sentence_a_block_and_the_logo(results: dict[str, Any], tmp_path: Path) -> None:

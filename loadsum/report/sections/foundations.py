@@ -97,11 +97,10 @@ def inputs_section(m: Material) -> Section | None:
     return Section(block="inputs", title=m.t("section.inputs"), content=content)
 
 
-def references_section(m: Material) -> Section | None:
-    """References with where each was read."""
-    rows = m.rows("references")
-    if not rows:
-        return None
+def references_section(m: Material) -> Section:
+    """References of the parts that were used, each with how its content was had."""
+    rows = [row for row in m.t.entry("reference") if not row["part"] or _present(m, row["part"])]
+    rows += [row for row in m.rows("references") if row.get("text") not in {known["text"] for known in rows}]
     content = {
         "rows": [
             {
