@@ -47,7 +47,12 @@ def cautions_section(m: Material) -> Section:
     region = m.study.get("region") or "international"
     standards = m.t.entry("standards").get(region.replace(" ", "_")) or m.t.entry("standards.international")
     items = [
-        {"title": item["title"], "text": item["text"], "standards": [standards[k] for k in item.get("standards", ())]}
+        {
+            "title": item["title"],
+            # Identifiers count as shown unless the results say that they were replaced.
+            "text": item["text"] if m.results.get("pseudonymised") else item.get("text_named", item["text"]),
+            "standards": [standards[k] for k in item.get("standards", ())],
+        }
         for item in m.t.entry("caution")
     ]
     return Section(
