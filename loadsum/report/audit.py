@@ -146,7 +146,13 @@ def _digest_or_none(results: Mapping[str, Any]) -> str | None:
 
 
 def _signatures(received: Received, results: Mapping[str, Any], found: Audit) -> None:
-    states = signatures(received)
+    try:
+        states = signatures(received)
+    except MissingExtraError:
+        raise
+    except InputError as error:
+        found.differs.extend(f"signatures: {fault.message}" for fault in error.faults)
+        return
     for state in states:
         if state.good:
             found.checked.append(

@@ -12,6 +12,7 @@ from loadsum.report.cleantext import CleanResults, clean
 from loadsum.report.material import Material, Section
 from loadsum.report.notation import NO_BREAK, Notation
 from loadsum.report.sections import first_page, sections
+from loadsum.report.sections.foundations import parts_left_out
 from loadsum.report.sections.overview import units_in_detail
 from loadsum.report.standards import meet_both_standards
 from loadsum.report.templates import (
@@ -29,6 +30,7 @@ from loadsum.report.typesetting import typeset
 PAPERS = {"A4": "210mm 297mm", "letter": "215.9mm 279.4mm"}
 LONGEST_RUNNING_TITLE = 72
 MOST_LISTED_FIGURES = 16
+MOST_LINES_ON_FIRST_PAGE = 26
 
 __all__ = ["compose", "material", "render", "templates_folder"]
 
@@ -101,6 +103,7 @@ def compose(
     made = sections(m, units)
     env = environment(overrides)
     env.filters.update(css_string=css_string, strong=marked_up)
+    first = first_page.content(m)
     study = m.study
     html = env.get_template("report.html.j2").render(
         t=m.t,
@@ -113,7 +116,9 @@ def compose(
         created=fixed_time(str(study.get("date") or "")).strftime("%Y-%m-%dT%H:%M:%SZ"),
         paper=PAPERS.get(study.get("page") or "A4", PAPERS["A4"]),
         families=f'"{TEXT_FAMILY}", "{FALLBACK_FAMILY}"',
-        first=first_page.content(m),
+        first=first,
+        tight=first_page.lines(first) > MOST_LINES_ON_FIRST_PAGE,
+        unchecked=_unchecked(m, made),
         sections=made,
         figures=drawn,
         numbers=Numbers(),
@@ -125,6 +130,15 @@ def compose(
         **_running(m),
     )
     return html, assets, listed
+
+
+def _unchecked(m: Material, made: Sequence[Section]) -> str:
+    """What was not checked, in one sentence with the number of the section that lists it."""
+    number = [section.block for section in made].index("unchecked") + 1
+    parts = [m.t(f"unchecked.short.{part}") for part in parts_left_out(m)]
+    if not parts:
+        return m.t("first_page.unchecked_all", number=number)
+    return m.t("first_page.unchecked", parts=", ".join(parts), number=number)
 
 
 def _listed(made: Sequence[Section], drawn: Mapping[str, Any]) -> list[str]:

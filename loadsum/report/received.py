@@ -78,7 +78,7 @@ def read_report(content: bytes, source: str = "report") -> Received:
         raise InputError(source, [Fault("file", "this is not a PDF file")])
     _within_bounds(content, source)
     reader = open_pdf(content, source)
-    faults = _reading_faults()
+    faults = reading_faults()
     try:
         root = reader.root
         return Received(
@@ -107,7 +107,7 @@ def open_pdf(content: bytes, source: str) -> Any:
         raise MissingExtraError("reading a report back", "sign") from error
     try:
         reader = kind(io.BytesIO(content), strict=True)
-    except _reading_faults() as error:
+    except reading_faults() as error:
         raise InputError(source, [Fault("file", f"the PDF is damaged: {_short(error)}")]) from error
     if reader.encrypted:
         raise InputError(source, [Fault("file", "the PDF is encrypted, which no report of this program is")])
@@ -145,7 +145,8 @@ def _reader_kind() -> Any:
     return KeepingReader
 
 
-def _reading_faults() -> tuple[type[Exception], ...]:
+def reading_faults() -> tuple[type[Exception], ...]:
+    """What the library raises on a damaged or hostile file."""
     from pyhanko.pdf_utils.misc import PdfError
 
     return PdfError, ValueError, KeyError, IndexError, TypeError, AttributeError, RecursionError, zlib.error, OSError

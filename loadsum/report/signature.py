@@ -9,7 +9,7 @@ from dataclasses import dataclass
 from typing import Any
 
 from loadsum.errors import Fault, InputError, MissingExtraError
-from loadsum.report.received import Received, open_pdf, read_report
+from loadsum.report.received import Received, open_pdf, read_report, reading_faults
 from loadsum.report.sections.sign_off import signers
 from loadsum.report.typeface import REGULAR, character_name, font_files
 
@@ -188,9 +188,17 @@ def signatures(report: Received) -> Sequence[SignatureState]:
     ----------
     report : Received
         The report.
+
+    Raises
+    ------
+    InputError
+        The file is damaged.
     """
     reader = open_pdf(report.content, "report")
-    embedded = list(reader.embedded_signatures)
+    try:
+        embedded = list(reader.embedded_signatures)
+    except reading_faults() as error:
+        raise InputError("report", [Fault("signatures", f"cannot be read: {type(error).__name__}")]) from error
     quick = [_judge(signature, last=True, compare=False) for signature in embedded]
     if not all(state.intact for state in quick):
         return quick
@@ -199,7 +207,6 @@ def signatures(report: Received) -> Sequence[SignatureState]:
 
 def _judge(signature: Any, *, last: bool, compare: bool) -> SignatureState:
     """State of one signature; ``compare`` looks into what was added after it."""
-    from pyhanko.pdf_utils.misc import PdfError
     from pyhanko.sign.diff_analysis import ModificationLevel
     from pyhanko.sign.general import UnacceptableSignerError
     from pyhanko.sign.validation import validate_pdf_signature
@@ -207,12 +214,13 @@ def _judge(signature: Any, *, last: bool, compare: bool) -> SignatureState:
     from pyhanko.sign.validation.status import SignatureCoverageLevel
     from pyhanko_certvalidator import ValidationContext
 
+    faults: tuple[type[Exception], ...] = (SignatureValidationError, UnacceptableSignerError, *reading_faults())
     try:
         with _no_talk_of_trust():
             status = validate_pdf_signature(
                 signature, ValidationContext(trust_roots=[], allow_fetching=False), skip_diff=not compare
             )
-    except (SignatureValidationError, UnacceptableSignerError, PdfError, ValueError, KeyError, TypeError) as error:
+    except faults as error:
         return SignatureState(
             field=str(signature.field_name),
             signer="",

@@ -41,7 +41,7 @@ def _small(results: dict[str, Any], name: str) -> dict[str, Any]:
     study["assumptions"] = [{"name": name, "value": name, "unit": name, "source": name, "effect": name}]
     study["quality"]["customers"] = {name: [[365, "f"]]}
     unit = study["transformers"][0]
-    for part in ("hours", "curve"):
+    for part in ("hours", "curve", "peaks", "diversity", "thermal", "scenarios", "evidence"):
         unit.pop(part)
     unit["id"] = name
     unit["hour_map"]["season"] = [name[:30]] * 8

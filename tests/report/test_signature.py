@@ -11,6 +11,7 @@ from loadsum.report.document import render
 from loadsum.report.received import read_report
 from loadsum.report.signature import sign, signatures
 from tests.report.certificates import PASSPHRASE, pkcs12_of
+from tests.report.invented_results import without_figures
 from tests.report.pdf_structure import structure_faults
 
 
@@ -54,7 +55,7 @@ def test_a_wrong_passphrase_is_told_without_repeating_it(issued: bytes) -> None:
 
 
 def test_any_flipped_byte_of_a_signed_report_is_caught(twice: bytes) -> None:
-    places = random.Random(7).sample(range(len(twice)), 40)
+    places = random.Random(7).sample(range(len(twice)), 60)
     for place in places:
         broken = bytearray(twice)
         broken[place] ^= 1 << (place % 8)
@@ -83,7 +84,7 @@ def test_what_is_added_after_the_last_signature_is_caught(twice: bytes) -> None:
 def issued(results: dict[str, Any], attachments: Sequence[Attachment]) -> bytes:
     import json
 
-    changed = copy.deepcopy(results)
+    changed = without_figures(copy.deepcopy(results))
     changed["study"]["status"] = "issued"
     others = [a for a in attachments if a.name != "results.json"]
     own = Attachment(name="results.json", content=json.dumps(changed).encode(), description="Results")

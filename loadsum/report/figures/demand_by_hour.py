@@ -29,7 +29,7 @@ def figure(m: Material, unit: Unit) -> DrawnFigure | None:
     ratings = [(m.kva(rating), kw) for rating, kw in ratings_kw(unit)]
     above = [kw for _, kw in ratings if kw > highest]
     limit = 1.06 * max([highest, *above[:1]])
-    with plate(62.0) as fig:
+    with plate(68.0) as fig:
         width = 60.0 if len(shown) == 2 else 132.0
         for place, name in enumerate(shown):
             left = 13.0 + place * (width + 13.0)

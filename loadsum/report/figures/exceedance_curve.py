@@ -20,11 +20,11 @@ def figure(m: Material, unit: Unit) -> DrawnFigure | None:
     if not curve or not curve.get("levels_kw"):
         return None
     levels, adopted = values(curve, "levels_kw"), values(curve, "adopted")
-    floor = curve.get("floor") or 1e-6
+    floor = pooled_floor(unit)
     lowest = 10.0 ** np.floor(np.log10(floor / 12.0))
     lines = {name: values(curve, name) for name in MODELS if curve.get(name)}
     right = _right_edge(levels, lines, lowest, [kw for _, kw in ratings_kw(unit)])
-    with plate(80.0) as fig:
+    with plate(84.0) as fig:
         ax = axes_mm(fig, 19.0, 11.0, 40.0, 7.0)
         if curve.get("lower") and curve.get("upper"):
             low, high = (np.clip(values(curve, name), lowest / 100.0, 1.0) for name in ("lower", "upper"))
@@ -58,6 +58,11 @@ def figure(m: Material, unit: Unit) -> DrawnFigure | None:
         alt=_alt(m, unit, levels, lines, adopted),
         figure=fig,
     )
+
+
+def pooled_floor(unit: Unit) -> float:
+    """Smallest share of all demand intervals that the record supports: one in the intervals that it holds. [-]"""
+    return 1.0 / (1.0 + sum(row.get("n_days") or 0 for row in unit.rows("hours")))
 
 
 def values(curve: Mapping[str, Any], name: str) -> NDArray[np.float64]:

@@ -25,7 +25,7 @@ def figure(m: Material, unit: Unit) -> DrawnFigure | None:
     probability = _array(found["probability"])
     floor = _array(found["floor"])
     names = [", ".join(pair) for pair in zip(found["season"], found["day_type"], strict=True)]
-    with plate(12.0 + 5.2 * len(names) + 6.0) as fig:
+    with plate(12.0 + 6.0 * len(names) + 6.0) as fig:
         width = (166.0 - 44.0 - 36.0 - 4.0 * (len(shown) - 1)) / len(shown)
         for place, index in enumerate(shown):
             left = 44.0 + place * (width + 4.0)
@@ -44,9 +44,12 @@ def figure(m: Material, unit: Unit) -> DrawnFigure | None:
 
 
 def ratings_shown(unit: Unit, ratings: Sequence[float]) -> list[int]:
-    """Index of the next smaller rating and of the recommended one; the rating in service where none is."""
-    chosen = (unit.part("selection") or {}).get("rating_kva") or unit.results.get("installed_kva")
+    """Index of the rating in service, or of the next smaller one, and of the recommended rating."""
+    installed = unit.results.get("installed_kva")
+    chosen = (unit.part("selection") or {}).get("rating_kva") or installed
     index = ratings.index(chosen) if chosen in ratings else len(ratings) // 2
+    if installed in ratings and installed != ratings[index]:
+        return sorted([ratings.index(installed), index])
     return [index - 1, index] if index > 0 else [index]
 
 
@@ -107,9 +110,10 @@ def _key(m: Material, fig: Any, states: set[int], floor: NDArray[np.float64]) ->
     y = 9.0
     for state in sorted(states):
         tone, hatch = LOOKS[state]
+        y += 1.5 * labels[state].count("\n")
         ax.broken_barh([(0, 4)], (y, 3.2), facecolor=tone, edgecolor="#4a4a4a", hatch=hatch or None, linewidth=0.4)
         ax.text(5.2, y + 1.6, labels[state], va="center", ha="left", linespacing=1.1)
-        y += 5.0 + 3.0 * labels[state].count("\n")
+        y += 5.0 + 1.5 * labels[state].count("\n")
 
 
 def _alt(

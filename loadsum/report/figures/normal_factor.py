@@ -2,7 +2,7 @@
 
 import numpy as np
 
-from loadsum.report.figures.exceedance_curve import values
+from loadsum.report.figures.exceedance_curve import pooled_floor, values
 from loadsum.report.figures.plate import GREY, INK, MODELS, DrawnFigure, axes_mm, decades, plate
 from loadsum.report.material import Material, Unit
 
@@ -15,7 +15,7 @@ def figure(m: Material, unit: Unit) -> DrawnFigure | None:
     if not curve or not curve.get("normal"):
         return None
     adopted = values(curve, "adopted")
-    floor = max(curve.get("floor") or 0.0, 1e-7)
+    floor = pooled_floor(unit)
     inside = (adopted <= 0.5) & (adopted >= floor) & np.isfinite(adopted)
     if inside.sum() < 5:
         return None
@@ -27,7 +27,7 @@ def figure(m: Material, unit: Unit) -> DrawnFigure | None:
     }
     lowest = max(min(float(line.min()) for line in lines.values()), 1e-4)
     highest = max(2.0, min(max(float(line.max()) for line in lines.values()), 1e3))
-    with plate(58.0) as fig:
+    with plate(62.0) as fig:
         ax = axes_mm(fig, 19.0, 11.0, 40.0, 4.0)
         ax.axhspan(0.9, 1.1, color="#e2e2e2", zorder=-1)
         ax.axhline(1.0, color=INK, linewidth=0.6)

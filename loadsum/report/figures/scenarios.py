@@ -34,7 +34,8 @@ def figure(m: Material, unit: Unit) -> DrawnFigure | None:
                     continue
                 hours = float(np.clip(row["hours_per_year"], LOWEST, None))
                 sign = SIGNS[ratings.index(row["rating_kva"]) % len(SIGNS)]
-                good = limit is None or row["hours_per_year"] <= limit
+                meets = row.get("meets")
+                good = meets if isinstance(meets, bool) else limit is None or row["hours_per_year"] <= limit
                 ax.plot(
                     [hours],
                     [y],

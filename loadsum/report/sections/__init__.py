@@ -21,6 +21,7 @@ OF_A_TRANSFORMER: Sequence[Callable[[Material, Unit], Section | None]] = (
     ratings.section,
     demand.map_section,
     demand.curve_section,
+    demand.diagnostics_section,
     peaks.section,
     peaks.diversity_section,
     thermal.section,

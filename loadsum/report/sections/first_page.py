@@ -9,6 +9,7 @@ from loadsum.report.sections.overview import table
 from loadsum.report.sections.verdict import exceedance_of, exceedance_rows, meets_text, needs_attention, verdict
 
 MOST_ON_FIRST_PAGE = 8
+MOST_RATINGS = 6
 
 
 def content(m: Material) -> dict[str, Any]:
@@ -23,6 +24,15 @@ def content(m: Material) -> dict[str, Any]:
         "warnings": _warnings(m),
         "status": m.t(f"status.{m.study.get('status') or 'draft'}.sentence"),
     }
+
+
+def lines(first: Mapping[str, Any]) -> int:
+    """Lines that page 1 will take, roughly, so that it can be set tighter when they are many."""
+    finding, overview = first["finding"] or {}, first["overview"] or {}
+    texts = [first["question"], *finding.get("lines", ()), finding.get("action", ""), first["coverage"]]
+    texts += [*first["rests_on"], *first["warnings"], first["status"]]
+    rows = [*finding.get("ratings", ()), *overview.get("rows", ())]
+    return sum(1 + len(text) // 88 for text in texts) + len(rows) + (2 if rows else 0)
 
 
 def _facts(m: Material) -> list[tuple[str, str]]:
@@ -50,7 +60,9 @@ def _ratings(m: Material, unit: Unit) -> list[dict[str, Any]]:
     """The few figures of each rating that answer the question at a glance."""
     chosen = (unit.part("selection") or {}).get("rating_kva")
     rows = []
-    for rating in dict.fromkeys(row.get("rating_kva") for row in exceedance_rows(unit.results)):
+    ratings = list(dict.fromkeys(row.get("rating_kva") for row in exceedance_rows(unit.results)))
+    first = max(0, (ratings.index(chosen) if chosen in ratings else 0) - MOST_RATINGS + 2)
+    for rating in ratings[first : first + MOST_RATINGS]:
         row = exceedance_of(unit.results, rating) or {}
         rows.append(
             {
@@ -147,6 +159,8 @@ def _rests_on(m: Material) -> list[str]:
         lines.append(m.t("first_page.assumptions", count=count))
     if not any(unit.part("evidence") for unit in m.units):
         lines.append(m.t("first_page.no_hold_out"))
+    sentences = [str((unit.part("evidence") or {}).get("sentence") or "") for unit in m.units]
+    lines.extend([text for text in dict.fromkeys(sentences) if text][:2])
     return lines
 
 

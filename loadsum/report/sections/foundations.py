@@ -47,7 +47,12 @@ def cautions_section(m: Material) -> Section:
     region = m.study.get("region") or "international"
     standards = m.t.entry("standards").get(region.replace(" ", "_")) or m.t.entry("standards.international")
     items = [
-        {"title": item["title"], "text": item["text"], "standards": [standards[k] for k in item.get("standards", ())]}
+        {
+            "title": item["title"],
+            # Identifiers count as shown unless the results say that they were replaced.
+            "text": item["text"] if m.results.get("pseudonymised") else item.get("text_named", item["text"]),
+            "standards": [standards[k] for k in item.get("standards", ())],
+        }
         for item in m.t.entry("caution")
     ]
     return Section(
@@ -60,9 +65,14 @@ def cautions_section(m: Material) -> Section:
 def unchecked_section(m: Material) -> Section:
     """What this study did not look at."""
     items = list(m.t.entry("unchecked.always"))
-    items += [m.t(f"unchecked.{part}") for part in m.t.entry("unchecked.parts") if not _present(m, part)]
+    items += [m.t(f"unchecked.{part}") for part in parts_left_out(m)]
     items += [str(text) for text in m.results.get("not_checked") or ()]
     return Section(block="unchecked", title=m.t("section.unchecked"), content={"items": items})
+
+
+def parts_left_out(m: Material) -> list[str]:
+    """Parts of a whole study that these results do not hold."""
+    return [part for part in m.t.entry("unchecked.parts") if not _present(m, part)]
 
 
 def _present(m: Material, part: str) -> bool:
@@ -92,11 +102,10 @@ def inputs_section(m: Material) -> Section | None:
     return Section(block="inputs", title=m.t("section.inputs"), content=content)
 
 
-def references_section(m: Material) -> Section | None:
-    """References with where each was read."""
-    rows = m.rows("references")
-    if not rows:
-        return None
+def references_section(m: Material) -> Section:
+    """References of the parts that were used, each with how its content was had."""
+    rows = [row for row in m.t.entry("reference") if not row["part"] or _present(m, row["part"])]
+    rows += [row for row in m.rows("references") if row.get("text") not in {known["text"] for known in rows}]
     content = {
         "rows": [
             {

@@ -7,11 +7,14 @@ from loadsum.report.material import Material, Section, Unit
 from loadsum.report.notation import NO_BREAK
 
 FACTORS = (
+    "maximum_kw",
+    "sum_of_maxima_kw",
     "coincidence_factor",
     "diversity_factor",
     "admd_kw",
     "load_factor",
     "loss_factor",
+    "loss_factor_by_formula",
     "utilisation_factor",
 )
 
@@ -75,7 +78,7 @@ def diversity_section(m: Material, unit: Unit) -> Section | None:
     found = unit.part("diversity")
     if not found:
         return None
-    units = {"admd_kw": "kW"}
+    units = {"admd_kw": "kW", "maximum_kw": "kW", "sum_of_maxima_kw": "kW"}
     rows = [
         {
             "name": m.t(f"diversity.{name}"),
@@ -88,6 +91,30 @@ def diversity_section(m: Material, unit: Unit) -> Section | None:
         block="diversity",
         unit=unit.index if unit.several else -1,
         title=m.t("section.diversity"),
-        content={"rows": rows},
+        content={"rows": rows, "period": _period(m, found), "laws": _laws(m, found), "customers": _number(found)},
         figures=(unit.figure("maximum-by-number"),),
     )
+
+
+def _period(m: Material, found: Mapping[str, Any]) -> str:
+    if not found.get("period_h"):
+        return ""
+    return m.t("diversity.period", hours=m.n.fixed(found["period_h"]), customers=found.get("customers"))
+
+
+def _number(found: Mapping[str, Any]) -> int:
+    """Largest number of customers that the laws are compared at."""
+    return int(max((found.get("growth") or {}).get("customers") or [0]))
+
+
+def _laws(m: Material, found: Mapping[str, Any]) -> list[dict[str, str]]:
+    """Each law at the largest number of customers, and how far it is off there."""
+    return [
+        {
+            "name": str(law.get("name", "")),
+            "source": str(law.get("source") or m.t("ratings.untraced")),
+            "kw": m.n.fixed((law.get("kw") or [None])[-1], 1),
+            "over": m.n.fixed((law.get("over_expected") or [None])[-1], 2),
+        }
+        for law in found.get("laws") or ()
+    ]

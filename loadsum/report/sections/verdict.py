@@ -114,7 +114,7 @@ def _reasons(m: Material, unit: Unit, selection: Mapping[str, Any], row: Mapping
         quantity = str(criterion.get("quantity"))
         yield m.t(
             "first_page.governs",
-            name=m.t.name("criterion", quantity),
+            name=lower_first(m.t.name("criterion", quantity)),
             rating=m.kva(at.get("rating_kva")),
             value=quantity_text(m, quantity, at.get("value"), at.get("floor")),
             limit=limit_text(m, quantity, at.get("limit")),
@@ -129,6 +129,11 @@ def _governing(selection: Mapping[str, Any]) -> tuple[Mapping[str, Any], Mapping
             if row.get("rating_kva") == selection.get("rating_kva") and row.get("governs"):
                 return criterion, row
     return None
+
+
+def lower_first(text: str) -> str:
+    """A name as it stands inside a sentence."""
+    return text[:1].lower() + text[1:]
 
 
 def limit_text(m: Material, quantity: str, limit: float | None) -> str:
