@@ -15,6 +15,7 @@ from loadsum import __version__
 from loadsum.demand.group import group_demand
 from loadsum.demand.served import (
     cannot_be_studied,
+    held_out_settings,
     record_by_class,
     scaled,
     served_by,
@@ -22,6 +23,7 @@ from loadsum.demand.served import (
     with_unmetered_block,
 )
 from loadsum.errors import Fault, InputError
+from loadsum.evidence.holdout import hold_out
 from loadsum.intake.customers import customer_findings
 from loadsum.intake.draft import draft_study
 from loadsum.intake.hourclass import Calendar, DayBlock, calendar, day_blocks, metered_years
@@ -299,11 +301,27 @@ def one_transformer(
     group, group_blocks = with_unmetered_block(
         served.group, [scaled(block, usable, allowance) for block in blocks], unit, readings.interval_min
     )
+    settings = settings_of(asked.model)
+    tested = (
+        hold_out(
+            group_blocks,
+            fit=lambda fitting: group_demand(
+                fitting,
+                interval_min=readings.interval_min,
+                power_factor=unit.power_factor,
+                settings=held_out_settings(settings, shared_resolution(readings) * allowance),
+                group=replace(group, planned=()),
+            ),
+            served=group.served,
+        )
+        if group.served.any()
+        else None
+    )
     demand = group_demand(
         group_blocks,
         interval_min=readings.interval_min,
         power_factor=unit.power_factor,
-        settings=settings_of(asked.model),
+        settings=settings,
         group=group,
         resolution_kw=shared_resolution(readings) * allowance,
         record_c=record_by_class(loaded.record, days),
@@ -334,6 +352,7 @@ def one_transformer(
         exceedance=tuple(row for of, table in above.items() for row in exceedance_rows(demand, table, ratings, of)),
         hour_map=hour_map(demand.blocks, ratings, list(above.values())[-1].levels),
         selection=selection,
+        evidence=tested,
         diagnostics=demand.diagnostics,
         assumptions=assumptions(asked, unit, served, demand),
     )

@@ -166,3 +166,8 @@ def record_by_class(
         s, k = days.place(day)
         found.setdefault((days.season_names[s], days.day_types[k]), []).append(value)
     return {key: np.array(values) for key, values in found.items()}
+
+
+def held_out_settings(settings: ModelSettings, resolution_kw: float) -> ModelSettings:
+    """The same model for the hold-out test, which asks for levels only: no intervals, and a coarser lattice. [kW]"""
+    return replace(settings, resamples=0, lattice_kw=max(resolution_kw, 0.02))

@@ -12,6 +12,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from loadsum.demand.hourly import BlockDiagnostics
+from loadsum.evidence.holdout import HoldOut
 from loadsum.intake.findings import Finding
 from loadsum.intake.inputs import InputFile
 from loadsum.report.energybymonth import CustomerMonths
@@ -201,6 +202,7 @@ class TransformerResults:
     exceedance: tuple[ExceedanceRow, ...] = ()
     hour_map: HourMap | None = None
     selection: Selection | None = None
+    evidence: HoldOut | None = None
     diagnostics: tuple[BlockDiagnostics, ...] = ()
     assumptions: tuple[Assumption, ...] = ()
 
