@@ -249,24 +249,6 @@ def _product(terms: Sequence[tuple[LatticeMass, int]], length: int) -> NDArray[n
     return product
 
 
-def exceedance_of_many(sums: Sequence[DemandSum], levels_kw: NDArray[np.float64]) -> NDArray[np.float64]:
-    """Probability that each of many sums is strictly above its levels.
-
-    Parameters
-    ----------
-    sums : sequence of G DemandSum
-        Sums, as a rule of few terms each.
-    levels_kw : (G, L) float64
-        Levels of each sum. [kW]
-
-    Returns
-    -------
-    (G, L) float64
-        Probability above each level. [-]
-    """
-    return np.array([total.above_many(row) for total, row in zip(sums, levels_kw, strict=True)])
-
-
 def sum_distribution(terms: Sequence[LatticeMass]) -> LatticeMass:
     """Distribution of the sum of independent demands that share one lattice."""
     return DemandSum(terms=tuple(terms), counts=(1,) * len(terms)).distribution()

@@ -8,8 +8,7 @@ from numpy.typing import NDArray
 
 from loadsum.demand.convolution import BracketedSum
 
-FINEST_KW = 1e-6  # readings are taken as decimals down to this
-PARTS = 12  # and as twelfths of it: averages over two, three, four or six readings
+UNITS_PER_KW = 12_000_000  # readings are taken as multiples of 1 mW, or of a twelfth: averages of up to four, or six
 MOST_POINTS = 1_000_000  # points of all terms together up to which a lattice is affordable
 ROUNDS = 8
 SMALLEST = 1e-15  # probabilities below this are not asked of the bracket
@@ -23,14 +22,14 @@ def resolution_kw(kw: NDArray[np.float64]) -> float | None:
     kw : (n,) float64
         Readings; NaN is left out. [kW]
     """
-    units = kw[np.isfinite(kw)] / (FINEST_KW / PARTS)
+    units = kw[np.isfinite(kw)] * UNITS_PER_KW
     if units.size == 0 or np.abs(units).max() > 2.0**52:
         return None
     whole = np.rint(units)
-    if np.any(np.abs(units - whole) > 1e-3 * PARTS):
+    if np.any(np.abs(units - whole) > 0.01):
         return None
     step = int(np.gcd.reduce(whole.astype(np.int64)))
-    return step * (FINEST_KW / PARTS) if step else None
+    return step / UNITS_PER_KW if step else None
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)

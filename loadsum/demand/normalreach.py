@@ -8,6 +8,7 @@ from scipy.stats import norm
 from loadsum.demand.convolution import DemandSum
 from loadsum.demand.lattice import LatticeMass
 
+MOST_WITH_COMMON = 300
 GROWTH = 1.4  # from one number of customers tried to the next
 
 
@@ -60,7 +61,7 @@ def customers_until_normal(
     covariance_known : bool
         Whether the normal law is given the variance with covariance, or that of independent customers.
     largest : int
-        Largest number tried. [-]
+        Largest number tried; with a common component no more than `MOST_WITH_COMMON`. [-]
 
     Notes
     -----
@@ -71,7 +72,7 @@ def customers_until_normal(
         raise ValueError(f"exceeded_with must lie between 0 and 0.5, got {exceeded_with}")
     if common is not None and common.central_moment(2) > 0.0:
         limit = _ratio(DemandSum(terms=(common,), counts=(1,)), exceeded_with, None) if covariance_known else 0.0
-        if abs(limit - 1.0) > within:
+        if not abs(limit - 1.0) <= within:
             return NormalReach(
                 exceeded_with=exceeded_with,
                 within=within,
@@ -79,6 +80,7 @@ def customers_until_normal(
                 answer="never, because of shared weather",
                 tried=(),
             )
+        largest = min(largest, MOST_WITH_COMMON)  # beyond, the sum per customer is all but the common component
     tried: dict[int, float] = {}
 
     def near(n: int) -> bool:

@@ -142,11 +142,12 @@ def _table(n: int, nodes: NDArray[np.int64], length: int) -> _Table | None:
     """
     if nodes.size == 0:
         return _Table(None, np.zeros((n, 0)))
-    turn = np.pi * float(nodes[-1]) / length * (n - 1)
+    turn = np.pi * float(nodes[-1]) / length * (n + 63)
     points = int(np.ceil(turn)) + 8
     while points < min(n // 3, MOST_POINTS):
         if points * np.log(2.0 * points / (np.e * max(turn, 1e-3))) > 40.0:
-            gather, places = _chebyshev(n, -(-points // 4) * 4)
+            gather, places = _chebyshev(-(-n // 64) * 64, -(-points // 4) * 4)
+            gather = gather[:n]
             angle = (-2.0 * np.pi / length) * np.outer(places, nodes)
             return _Table(gather, np.concatenate((np.cos(angle), np.sin(angle)), axis=1), 2.0 * turn)
         points += 2
@@ -187,7 +188,8 @@ def _at_nodes(
         padded[:, :, :n] = mass
         mass = padded.reshape(groups, rows, folds, length).sum(axis=2)
     whole: NDArray[np.complex128] = np.asarray(rfft(mass, n=length, axis=2))
-    return whole if nodes.size == whole.shape[2] else whole[:, :, nodes]
+    first = nodes.size and int(nodes[-1]) == nodes.size - 1  # without a gap from zero on
+    return whole[:, :, : nodes.size] if first else whole[:, :, nodes]
 
 
 def _phases(n: int, nodes: NDArray[np.int64], length: int) -> NDArray[np.float64]:
@@ -216,7 +218,8 @@ def _possibly_large(terms: EndwiseTerms, at: TiltedTerms, length: int, negligibl
         edge = np.arange(cells) * (2.0 * np.pi / coarse)
         bound *= np.exp(-((edge * terms.normal_sd[:, None]) ** 2))
     large = np.asarray((bound > negligible**2).any(axis=0))
-    for block, deviations in zip(reversed(at.blocks), reversed(at.deviations), strict=True):
+    scanned = list(zip(at.blocks, at.deviations, strict=True)) if int(terms.copies.max()) >= COARSE_COPIES else []
+    for block, deviations in reversed(scanned):
         for i in range(0, deviations.shape[1], 10):
             if large.sum() <= 6 + coarse // 100:
                 break

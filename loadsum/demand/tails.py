@@ -123,7 +123,7 @@ def one_tilt(
     inside = (rho >= first[:, None]) & (rho < first[:, None] + length)
     level = np.where(inside, rho, first[:, None])
     theta = at.theta[:, None]
-    below, noise = (_by_window if 4 * law.nodes.size > length else _by_nodes)(law, theta, first, level)
+    below, noise = (_by_window if 8 * law.nodes.size * rho.shape[1] > length else _by_nodes)(law, theta, first, level)
     exponent = at.log_transform[:, None] + theta * (level - at.centre[:, None])
     with np.errstate(over="ignore", divide="ignore", invalid="ignore"):
         value = np.exp(exponent) * below

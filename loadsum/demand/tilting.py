@@ -185,7 +185,7 @@ def saddlepoint(terms: EndwiseTerms, target: NDArray[np.float64]) -> NDArray[np.
         if not np.any(sought):
             break
         mean, variance = moments(terms, theta)
-        sought = sought & (np.abs(mean - target) > 0.1 * np.sqrt(variance) + 1e-3 * np.abs(target))
+        sought = sought & (np.abs(mean - target) > 0.25 * np.sqrt(variance) + 1e-3 * np.abs(target))
         low, high = np.where(mean > target, theta, low), np.where(mean > target, high, theta)
         newton = theta + np.where(variance > 0.0, (mean - target) / np.maximum(variance, 1e-12), np.inf)
         halved = np.where(np.isfinite(high), 0.5 * (low + high), 4.0 * theta)
