@@ -13,7 +13,7 @@ Rounding = Literal["down", "up", "exact"]
 CUT = 1e-25  # probability at which the tail of a continuous term is cut, on the outward side
 ALIGNED = 1e-6  # a reading this close to a lattice point, in steps, lies on it (float noise of the file's decimals)
 
-CELLS = 4096  # cells into which a continuous term is cut at least: about 1/300 of a standard deviation each
+CELLS = 8192  # cells into which a continuous term is cut at least: about 1/400 of a standard deviation each
 
 NORMAL_REACH = 10.5  # standard deviations beyond which a normal law has less than CUT
 
@@ -171,12 +171,12 @@ def continuous_mass(
     middle = edges.size // 2
     below, above = cdf(edges[: middle + 1]), survival(edges[middle:])
     mass = np.zeros((edges.size - 1) * stride + 1)
-    cells = np.concatenate([np.diff(below), -np.diff(above)])
+    shares = np.concatenate([np.diff(below), -np.diff(above)])
     if rounding == "down":
-        mass[:-1:stride] = cells
+        mass[:-1:stride] = shares
         mass[-1] = above[-1]
         return LatticeMass(step_kw=step_kw, offset=first * stride, mass=mass, beyond_below=float(below[0]))
-    mass[stride::stride] = cells
+    mass[stride::stride] = shares
     mass[0] = below[0]
     return LatticeMass(step_kw=step_kw, offset=first * stride, mass=mass, beyond_above=float(above[-1]))
 
@@ -220,10 +220,20 @@ def kernel_mass(
         return lattice_mass(centres_kw, step_kw, rounding, weights)
     reach = NORMAL_REACH * bandwidth_kw
     low, high = float(centres_kw.min()) - reach, float(centres_kw.max()) + reach
-    cell = cell_steps(low, high, step_kw) * step_kw
     share = weights / weights.sum()
-    # The centres are stated to the cells of the term, so that one table of the normal law serves them all.
-    places, index = np.unique(np.rint(centres_kw / cell).astype(np.int64), return_inverse=True)
+    if centres_kw.size == 1:
+        centre = float(centres_kw[0])
+        return continuous_mass(
+            lambda kw: np.asarray(ndtr((kw - centre) / bandwidth_kw), dtype=np.float64),
+            lambda kw: np.asarray(ndtr((centre - kw) / bandwidth_kw), dtype=np.float64),
+            low,
+            high,
+            step_kw,
+            rounding,
+        )
+    cell = cell_steps(low, high, step_kw) * step_kw
+    # The centres are rounded to the cells, outward like all else, so that one table of the normal law serves them all.
+    places, index = np.unique(lattice_index(centres_kw, cell, rounding), return_inverse=True)
     height = np.bincount(index, weights=share)
 
     def summed(kw: NDArray[np.float64], sign: float) -> NDArray[np.float64]:

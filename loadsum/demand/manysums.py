@@ -11,7 +11,7 @@ from loadsum.demand.lattice import ALIGNED, normal_mass
 from loadsum.demand.tails import at_or_below
 from loadsum.demand.tilting import EndwiseTerms, TermBlock, endwise
 
-CHUNK = 2**18
+CHUNK = 2**17  # masses computed together, so that they stay in the processor's cache
 SMOOTH_STEPS = 3.0  # standard deviation, in steps, from which a rounded normal variable needs no table of masses
 SURE = 1e-10  # relative error estimate above which a sum is computed again on its own
 

@@ -187,9 +187,12 @@ def _at_nodes(
         padded = np.zeros((groups, rows, folds * length))
         padded[:, :, :n] = mass
         mass = padded.reshape(groups, rows, folds, length).sum(axis=2)
-    whole: NDArray[np.complex128] = np.asarray(rfft(mass, n=length, axis=2))
-    first = nodes.size and int(nodes[-1]) == nodes.size - 1  # without a gap from zero on
-    return whole[:, :, : nodes.size] if first else whole[:, :, nodes]
+    first = nodes.size > 0 and int(nodes[-1]) == nodes.size - 1  # without a gap from zero on
+    kept: slice | NDArray[np.int64] = slice(0, nodes.size) if first else nodes
+    out = np.empty((groups, rows, nodes.size), dtype=np.complex128)
+    for g in range(groups):  # one sum at a time stays in the processor's cache
+        out[g] = np.asarray(rfft(mass[g], n=length, axis=1))[:, kept]
+    return out
 
 
 def _phases(n: int, nodes: NDArray[np.int64], length: int) -> NDArray[np.float64]:

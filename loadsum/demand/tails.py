@@ -14,10 +14,11 @@ from scipy.fft import irfft, next_fast_len
 
 from loadsum.demand.directsum import affordable, at_or_below_directly, divided_at_gap
 from loadsum.demand.spectrum import Spectrum, spectrum
-from loadsum.demand.tilting import EPS, EndwiseTerms, endwise, saddlepoint, tilted, window
+from loadsum.demand.tilting import EPS, EndwiseTerms, TiltedTerms, endwise, saddlepoint, tilted, window
 
 ACCEPTED = 5e-11  # relative error estimate up to which a probability is taken, or what many copies make inevitable
 ALIAS = 1e-15  # tilted mass allowed outside the window, before scaling by the share of the tail in the tilted mass
+WRAPPED = 25.5  # of a probability no more than exp(-WRAPPED) is added by what a short window wraps round
 CHEAP = 4e6  # products up to which direct convolution is done at once
 AFFORDABLE = 4e8  # products up to which direct convolution is done when tilts have failed
 SPLITS = 6  # terms divided at most on the way to one probability
@@ -116,18 +117,19 @@ def one_tilt(
     share = 1.0 / (1.0 + 2.5 * at.theta * spread)
     tolerance = ALIAS * share
     first, last = window(terms, at, tolerance)
-    length = int(next_fast_len(max(int((last - first).max()) + 1, 8), real=True))
+    length = int(next_fast_len(max(_length(at, share, first, last, rho), 8), real=True))
     reach = 4.0 * np.log(length) + 6.0
     law = spectrum(terms, at, length, ALIAS * float(share.min()) / reach)
 
     inside = (rho >= first[:, None]) & (rho < first[:, None] + length)
     level = np.where(inside, rho, first[:, None])
     theta = at.theta[:, None]
-    below, noise = (_by_window if 8 * law.nodes.size * rho.shape[1] > length else _by_nodes)(law, theta, first, level)
+    below, noise = (_by_window if law.nodes.size * rho.shape[1] > length else _by_nodes)(law, theta, first, level)
     exponent = at.log_transform[:, None] + theta * (level - at.centre[:, None])
     with np.errstate(over="ignore", divide="ignore", invalid="ignore"):
         value = np.exp(exponent) * below
         estimate = (noise + law.neglected * reach + 2.0 * tolerance[:, None]) / np.abs(below)
+        estimate += np.where(length > last - first, 0.0, np.exp(-at.theta * length))[:, None] / value
         estimate += EPS * (terms.copies[:, None] + 4.0 + np.abs(exponent))
     good = inside & (below > 0.0) & np.isfinite(estimate)
     beyond = (rho >= last[:, None]) & (theta == 0.0)  # all but the tolerance lies below
@@ -136,6 +138,25 @@ def one_tilt(
         value = np.where(beyond, _total(terms)[:, None], value)
         estimate = np.where(beyond, 4.0 * EPS * (terms.copies[:, None] + 1), estimate)
     return value, estimate, spread
+
+
+def _length(
+    at: TiltedTerms,
+    share: NDArray[np.float64],
+    first: NDArray[np.int64],
+    last: NDArray[np.int64],
+    rho: NDArray[np.int64],
+) -> int:
+    """Length of a window that serves all sums. [steps]
+
+    What lies above the window is wrapped to its low end, where the geometric weights have fallen by exp(-theta W): of
+    the untilted law no more than that is added to the probability. So the window may end early where theta is large.
+    """
+    with np.errstate(divide="ignore", over="ignore"):
+        log_probability = at.log_transform + at.theta * (rho.min(axis=1) - at.centre) + np.log(share)
+        wrapped = np.minimum((WRAPPED - log_probability) / at.theta, 2.0**52)
+    inside = np.where(rho <= last[:, None], rho, first[:, None]).max(axis=1) - first + 2
+    return int(np.minimum(last - first + 1, np.maximum(wrapped, inside)).max())
 
 
 def _by_nodes(
@@ -147,8 +168,7 @@ def _by_nodes(
     """
     unit, nodes = 2j * np.pi / law.length, law.nodes
     cells = level - first[:, None] + 1
-    turn = np.exp(unit * ((level[:, :, None] * nodes) % law.length))
-    start = np.exp(unit * (((first[:, None] - 1) * nodes) % law.length))
+    turn, start = _turned(level, nodes, law.length), _turned(first[:, None] - 1, nodes, law.length)[:, 0]
     ratio = -np.expm1(-theta - unit * nodes)
     flat = ratio == 0.0  # frequency zero without tilt: the geometric sum is the number of its terms
     kernel = turn - np.exp(-theta * cells)[:, :, None] * start[:, None, :]
@@ -157,8 +177,23 @@ def _by_nodes(
         kernel = np.where(flat[:, None, :], cells[:, :, None], kernel)
     twice = np.where((nodes == 0) | (2 * nodes == law.length), 1.0, 2.0) / law.length
     below = (kernel @ (law.values * twice)[:, :, None]).real[:, :, 0]
-    noise = np.abs(kernel) @ (twice * (law.noise + 4.0 * EPS * np.abs(law.values)))[:, :, None]
+    modulus = np.sqrt(kernel.real**2 + kernel.imag**2)
+    noise = modulus @ (twice * (law.noise + 4.0 * EPS * np.abs(law.values)))[:, :, None]
     return below, noise[:, :, 0]
+
+
+def _turned(level: NDArray[np.int64], nodes: NDArray[np.int64], length: int) -> NDArray[np.complex128]:
+    """``exp(2 pi i j level / W)`` for each level and node, (G, L, m); each the product of two."""
+    stride = 1 + int(np.sqrt(nodes[-1])) if nodes.size else 1
+    steps = np.arange(stride)
+    coarse = np.arange(int(nodes[-1]) // stride + 1) * stride if nodes.size else steps[:0]
+    unit = 2j * np.pi / length
+    fine = np.exp(unit * ((level[:, :, None] * steps) % length))
+    rough = np.exp(unit * ((level[:, :, None] * coarse) % length))
+    if nodes.size and int(nodes[-1]) == nodes.size - 1:  # without a gap from zero on
+        whole: NDArray[np.complex128] = (rough[:, :, :, None] * fine[:, :, None, :]).reshape(*level.shape, -1)
+        return whole[:, :, : nodes.size]
+    return np.asarray(rough[:, :, nodes // stride] * fine[:, :, nodes % stride])
 
 
 def _by_window(
