@@ -99,13 +99,12 @@ def day_and_year(
     copula, scores = _copula(demand, reference)
     over = record if record is not None else metered
     years = None if over is None else record_years(calendar, over)
-    if years is None or years.year.size == 0:
+    if years is None:
         years = calendar_years(calendar, calendar_years_metered)
     tables = margins(demand, copula, years=years)
     before = None
     if record is not None and metered is not None and record is not metered and tables.temperature_c is not None:
         before = record_years(calendar, metered)
-        before = before if before.year.size else None
     return DayAndYear(
         demand=demand,
         copula=copula,
