@@ -11,6 +11,7 @@ from loadsum.intake.hourclass import EPOCH, Calendar, lagged_daily_mean
 from loadsum.intake.readings import TemperatureRecord, read_only
 
 DAYS = 365
+MOST_STAND_INS = 10  # days without temperature that a year may have
 
 
 @dataclass(frozen=True, slots=True, kw_only=True, eq=False)
@@ -28,7 +29,9 @@ class YearsOfDays:
     by_interval_c : (Y, 365, I) float64 or None
         Temperature in each demand interval. [°C]
     left_out : tuple of int
-        Years of the record left out because a day of theirs has no temperature.
+        Years of the record left out because more than `MOST_STAND_INS` of their days have no temperature.
+    stand_ins : int
+        Days without temperature in the years kept, for which the nearest day of the same year stands in. [d]
     """
 
     year: NDArray[np.int64]
@@ -36,6 +39,7 @@ class YearsOfDays:
     daily_c: NDArray[np.float64] | None
     by_interval_c: NDArray[np.float64] | None
     left_out: tuple[int, ...] = ()
+    stand_ins: int = 0
 
     def __post_init__(self) -> None:
         if self.year.size == 0 or self.block.shape != (self.year.size, DAYS):
@@ -59,41 +63,57 @@ def calendar_years(calendar: Calendar, years: Sequence[int]) -> YearsOfDays:
     )
 
 
-def record_years(calendar: Calendar, record: TemperatureRecord) -> YearsOfDays:
-    """The whole years of a temperature record.
+def record_years(calendar: Calendar, record: TemperatureRecord) -> YearsOfDays | None:
+    """The whole years of a temperature record; None where it has none.
 
     A record that starts in mid-year is cut into years of 365 days from its first day, turned so that each starts on
-    1 January; so one metered year from July to July is one year. Years with a missing day are left out and named.
+    1 January; so one metered year from July to July is one year. The first day counts with its own mean. For a few
+    days without temperature the nearest day of the same year stands in, and they are counted; years with more are
+    left out and named.
     """
     warmth = lagged_daily_mean(record)
+    if record.day.size:
+        warmth.setdefault(int(record.day[0]), float(record.daily_mean_c[0]))
     row_of = {int(day): row for row, day in enumerate(record.day)}
-    dates = [EPOCH + dt.timedelta(days=day) for day in sorted(warmth)]
-    if not dates:
-        raise ValueError("the temperature record has no day whose eve is known")
-    years, blocks, daily, fine, left_out = [], [], [], [], []
-    start = dates[0]
-    for turn in range(dates[-1].year - start.year + 1):
-        days: list[int] = []
-        for place in range(DAYS):
-            day = dt.date(start.year + turn, 1, 1) + dt.timedelta(days=place)
-            if (day.month, day.day) < (start.month, start.day):
-                day = dt.date(start.year + turn + 1, 1, 1) + dt.timedelta(days=place)
-            days.append((day - EPOCH).days)
-        if any(day not in warmth for day in days):
-            left_out.append(start.year + turn)
+    if not warmth:
+        return None
+    start, end = (EPOCH + dt.timedelta(days=day) for day in (min(warmth), max(warmth)))
+    years, blocks, daily, fine, left_out, stand_ins = [], [], [], [], [], 0
+    for first_year in range(start.year, end.year + 1):
+        days = _turned(first_year, start)
+        known = np.array([day for day in days if day in warmth])
+        missing = DAYS - known.size
+        if missing > MOST_STAND_INS:
+            left_out.append(first_year)
             continue
-        years.append(start.year + turn)
+        stand_ins += missing
+        used = [day if day in warmth else int(known[np.argmin(np.abs(known - day))]) for day in days]
+        years.append(first_year)
         blocks.append([_class(calendar, day) for day in days])
-        daily.append([warmth[day] for day in days])
+        daily.append([warmth[day] for day in used])
         if record.by_interval_c is not None:
-            fine.append(record.by_interval_c[[row_of[day] for day in days]])
+            fine.append(record.by_interval_c[[row_of[day] for day in used]])
+    if not years:
+        return None
     return YearsOfDays(
         year=np.array(years, dtype=np.int64),
-        block=np.array(blocks, dtype=np.int64).reshape(-1, DAYS),
-        daily_c=np.array(daily).reshape(-1, DAYS),
+        block=np.array(blocks, dtype=np.int64),
+        daily_c=np.array(daily),
         by_interval_c=np.array(fine) if fine else None,
         left_out=tuple(left_out),
+        stand_ins=stand_ins,
     )
+
+
+def _turned(first_year: int, start: dt.date) -> list[int]:
+    """Days of one year from a date on, turned so that 1 January comes first, since 1970-01-01. [d]"""
+    days = []
+    for place in range(DAYS):
+        day = dt.date(first_year, 1, 1) + dt.timedelta(days=place)
+        if (day.month, day.day) < (start.month, start.day):
+            day = dt.date(first_year + 1, 1, 1) + dt.timedelta(days=place)
+        days.append((day - EPOCH).days)
+    return days
 
 
 def _class(calendar: Calendar, day: int) -> int:

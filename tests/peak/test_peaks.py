@@ -334,10 +334,14 @@ def test_a_record_from_july_to_july_is_one_year_in_calendar_order():
     assert years.daily_c[0, 0] == pytest.approx(0.7 * dates[0] + 0.3 * (dates[0] - 1))
 
 
-def test_years_of_a_record_with_a_missing_day_are_left_out_and_named():
-    first = (dt.date(2030, 1, 1) - EPOCH).days - 1
-    day = np.delete(np.arange(first, first + 3 * 365 + 2), 500)
-    record = TemperatureRecord(day=day, daily_mean_c=np.zeros(day.size))
-    years = record_years(quarters(), record)
-    assert years.year.tolist() == [2030, 2032]
-    assert years.left_out == (2031,)
+def test_years_of_a_record_with_many_missing_days_are_left_out_and_named_and_few_are_counted():
+    first = (dt.date(2030, 1, 1) - EPOCH).days
+    whole = np.arange(first, first + 3 * 365 + 1)
+    few = np.delete(whole, 400)  # one day gone, and the lagged mean of the next with it
+    years = record_years(quarters(), TemperatureRecord(day=few, daily_mean_c=few.astype(float)))
+    assert (years.year.tolist(), years.left_out, years.stand_ins) == ([2030, 2031, 2032], (), 2)
+    assert years.daily_c[1, 35] == pytest.approx(whole[399] - 0.3)
+    many = np.delete(whole, np.arange(400, 411))
+    years = record_years(quarters(), TemperatureRecord(day=many, daily_mean_c=np.zeros(many.size)))
+    assert (years.year.tolist(), years.left_out) == ([2030, 2032], (2031,))
+    assert record_years(quarters(), TemperatureRecord(day=whole[:90], daily_mean_c=np.zeros(90))) is None
