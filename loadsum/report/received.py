@@ -83,7 +83,7 @@ def read_results(path: Path) -> dict[str, Any]:
     if not isinstance(found, dict) or "schema_version" not in found or "study" not in found:
         raise InputError(str(path), [Fault("file", "is no results.json of this program")])
     if found["schema_version"] != SCHEMA_VERSION:
-        told = f"is {found['schema_version']!r}; this version reads {SCHEMA_VERSION}, so draw it with the version that made it"
+        told = f"is {found['schema_version']!r}; this version reads {SCHEMA_VERSION}; draw it with the one that made it"
         raise InputError(str(path), [Fault("schema_version", told)])
     return found
 
