@@ -7,10 +7,12 @@ import re
 import zlib
 from collections.abc import Mapping
 from dataclasses import dataclass
+from pathlib import Path
 from typing import Any
 
 from loadsum.errors import Fault, InputError, MissingExtraError
 from loadsum.report.archive import RESULTS_FILE, Attachment, Relationship
+from loadsum.report.results import SCHEMA_VERSION
 
 LARGEST_FILE = 256 * 2**20
 LARGEST_STREAM = 128 * 2**20
@@ -55,6 +57,35 @@ class Received:
         """The attached results; None where there are none."""
         found = self.json(RESULTS_FILE)
         return dict(found) if found is not None else None
+
+
+def read_results(path: Path) -> dict[str, Any]:
+    """Results from a results.json on disk, for drawing the report again.
+
+    Parameters
+    ----------
+    path : Path
+        The file.
+
+    Raises
+    ------
+    InputError
+        The file cannot be read, is no results.json, or is of another schema version.
+    """
+    try:
+        if path.stat().st_size > LARGEST_FILE:
+            raise InputError(str(path), [Fault("file", f"larger than {LARGEST_FILE // 2**20} MiB")])
+        found = json.loads(path.read_text(encoding="utf-8"))
+    except OSError as error:
+        raise InputError(str(path), [Fault("file", f"cannot be read: {error.strerror}")]) from error
+    except (ValueError, RecursionError) as error:
+        raise InputError(str(path), [Fault("file", "is not JSON in UTF-8")]) from error
+    if not isinstance(found, dict) or "schema_version" not in found or "study" not in found:
+        raise InputError(str(path), [Fault("file", "is no results.json of this program")])
+    if found["schema_version"] != SCHEMA_VERSION:
+        told = f"is {found['schema_version']!r}; this version reads {SCHEMA_VERSION}; draw it with the one that made it"
+        raise InputError(str(path), [Fault("schema_version", told)])
+    return found
 
 
 def read_report(content: bytes, source: str = "report") -> Received:

@@ -13,7 +13,7 @@ from loadsum.report.archive import Attachment
 from loadsum.report.audit import audit
 from loadsum.report.differences import differences
 from loadsum.report.document import render
-from loadsum.report.received import read_report
+from loadsum.report.received import read_report, read_results
 from loadsum.report.signature import sign
 from tests.report.certificates import PASSPHRASE, pkcs12_of
 from tests.report.invented_results import without_figures
@@ -234,3 +234,25 @@ def test_every_single_flipped_byte_of_an_unsigned_report_is_caught(
         broken[place] ^= 1
         on_disk.write_bytes(bytes(broken))
         assert audit(on_disk).exit_status == 3, f"byte {place}"
+
+
+@pytest.mark.parametrize(
+    ("content", "told"),
+    [
+        (b"not json", "not JSON"),
+        (b"[1]", "no results.json"),
+        (b'{"schema_version": 99, "study": {}}', "schema_version: is 99; this version reads"),
+        (b"[" * 100_000, "not JSON"),
+    ],
+)
+def test_a_file_that_is_no_results_file_is_told(content: bytes, told: str, tmp_path: Path) -> None:
+    path = tmp_path / "results.json"
+    path.write_bytes(content)
+    with pytest.raises(InputError, match=told):
+        read_results(path)
+
+
+def test_a_report_is_drawn_again_from_its_results_file(study: dict[str, Any], tmp_path: Path) -> None:
+    path = tmp_path / "results.json"
+    path.write_text(json.dumps(study), encoding="utf-8")
+    assert made(read_results(path)) == made(study)

@@ -11,7 +11,7 @@ from loadsum.report.material import Material
 NAME = "quality-calendar"
 MOST_CUSTOMERS = 48
 # Tone and hatch of each sign of the calendar, in the order of the key.
-LOOKS = {"f": ("#d2d2d2", ""), "e": ("#ffffff", "......"), "p": ("#7d7d7d", ""), "-": ("#ffffff", "")}
+LOOKS = {"f": ("#d2d2d2", ""), "e": ("#ffffff", "//////"), "p": ("#7d7d7d", ""), "-": ("#ffffff", "")}
 EPOCH = dt.date(1970, 1, 1)
 
 
