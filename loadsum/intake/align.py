@@ -1,45 +1,20 @@
 """Readings of all files -> one matrix of customers by demand intervals, every reading accounted for."""
 
+import datetime as dt
+import math
 from collections.abc import Sequence
 from dataclasses import dataclass
 
 import numpy as np
-import pandas as pd
 from numpy.typing import NDArray
 
 from loadsum.errors import Fault
+from loadsum.intake.duplicates import without_duplicates
 from loadsum.intake.findings import Finding
+from loadsum.intake.timed import Timed, left_out, picked, total
 
-MOST_INTERVALS = 4_000_000  # 38 years of 5-minute intervals
-
-
-@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
-class Timed:
-    """Readings with their instants, as average power.
-
-    Parameters
-    ----------
-    customer : (n,) object
-        Identifier.
-    start_s : (n,) int64
-        Start of the interval, seconds since 1970-01-01 UTC. [s]
-    minutes : (n,) int64
-        Length of the interval. [min]
-    kw, kvar : (n,) float64
-        Average power; kvar NaN where not metered. [kW, kvar]
-    estimated : (n,) bool
-        Flagged as estimated.
-    place : (n,) object
-        ``file:line``.
-    """
-
-    customer: NDArray[np.object_]
-    start_s: NDArray[np.int64]
-    minutes: NDArray[np.int64]
-    kw: NDArray[np.float64]
-    kvar: NDArray[np.float64]
-    estimated: NDArray[np.bool_]
-    place: NDArray[np.object_]
+MOST_CELLS = 400_000_000  # of the matrix; 1 000 customers over 45 years of hours
+EPOCH = dt.datetime(1970, 1, 1)
 
 
 @dataclass(frozen=True, slots=True, kw_only=True, eq=False)
@@ -52,10 +27,14 @@ class Matrix:
         C identifiers in order.
     start_utc : (T,) int64
         Interval starts. [s]
-    kw, kvar : (C, T) float64
-        Average power; NaN where readings are missing. [kW, kvar]
+    kw : (C, T) float64
+        Average power; NaN where readings are missing. [kW]
+    kvar : (C, T) float64 or None
+        Average reactive power; None where no file has any. [kvar]
     estimated : (C, T) bool
         Intervals any part of which is flagged as estimated.
+    readings_behind : (C, T) int
+        Readings of the files that each interval was made from. [-]
     findings : tuple of Finding
         Duplicates, conflicts, intervals that are not whole.
     """
@@ -63,139 +42,181 @@ class Matrix:
     customers: tuple[str, ...]
     start_utc: NDArray[np.int64]
     kw: NDArray[np.float64]
-    kvar: NDArray[np.float64]
+    kvar: NDArray[np.float64] | None
     estimated: NDArray[np.bool_]
+    readings_behind: NDArray[np.integer]
     findings: tuple[Finding, ...]
 
 
-def aligned(parts: Sequence[Timed], interval_min: int) -> tuple[Matrix | None, list[Fault]]:
+@dataclass(frozen=True, slots=True, kw_only=True)
+class Grid:
+    """Cells that readings fall into: customers by demand intervals, each cut into the finest common part."""
+
+    row: dict[str, int]
+    first_s: int
+    slots: int
+    interval_min: int
+    part_min: int
+
+    def cells(self, part: Timed, unit_min: int) -> NDArray[np.int64]:
+        """Cell of each reading at a resolution, (n,) int64. [-]"""
+        of_customer = np.array([self.row.get(name, 0) for name in part.customers], dtype=np.int64)
+        per_row = self.slots * (self.interval_min // unit_min)
+        place = (part.start_s - self.first_s) // (unit_min * 60)
+        return np.asarray(of_customer[part.customer] * per_row + place, dtype=np.int64)
+
+
+def aligned(parts: Sequence[Timed], interval_min: int, phase_s: int = 0) -> tuple[Matrix | None, list[Fault]]:
     """One matrix from the readings of all files.
 
-    A reading that repeats another of the same customer and interval is left out; where the two disagree, both are. An
-    interval of the study that its readings do not fill is left empty, and its readings are counted as left out.
+    A reading that repeats another of the same customer and interval is left out; where two disagree, both are, unless
+    only one of them was observed. An interval of the study that its readings do not fill, or fill twice, is left
+    empty, and its readings are counted as left out.
+
+    Parameters
+    ----------
+    parts : sequence of Timed
+        Readings, one entry a file.
+    interval_min : int
+        Demand interval. [min]
+    phase_s : int
+        How far demand intervals begin after whole multiples of their length, UTC: half an hour for hours of a zone
+        that stands half an hour off. [s]
     """
-    start = np.concatenate([part.start_s for part in parts])
-    if start.size == 0:
-        return None, [Fault("readings", "no reading could be used; see the findings")]
-    customer, names = pd.factorize(np.concatenate([part.customer for part in parts]), sort=True)
-    kw, kvar = (np.concatenate([getattr(part, key) for part in parts]) for key in ("kw", "kvar"))
-    minutes, estimated = (np.concatenate([getattr(part, key) for part in parts]) for key in ("minutes", "estimated"))
-    place = np.concatenate([part.place for part in parts])
-    too_long = minutes > interval_min
-    if too_long.any():
-        longest = int(minutes[too_long].max())
-        return None, [
-            Fault(
-                "study.demand_interval_min",
-                f"is {interval_min}, but readings in {place[too_long][0].rsplit(':', 1)[0]} cover {longest} min each; "
-                "coarser readings are never split: use the longer interval",
-            )
-        ]
-    step = interval_min * 60
-    first, last = int(start.min()) // step, int(start.max()) // step
-    if last - first >= MOST_INTERVALS:
-        return None, [Fault("readings", "stamps span more than a lifetime of meters; check the form of the dates")]
-    keep, findings = _single(customer, start, minutes, kw, place, names)
-    slot = start // step - first
-    shape = (len(names), last - first + 1)
-    flat = customer * shape[1] + slot
-    filled = np.bincount(flat[keep], weights=minutes[keep], minlength=shape[0] * shape[1])
-    energy = np.bincount(flat[keep], weights=(kw * minutes)[keep], minlength=filled.size)
-    reactive = np.bincount(flat[keep], weights=(kvar * minutes)[keep], minlength=filled.size)
-    guess = np.bincount(flat[keep], weights=estimated[keep], minlength=filled.size) > 0.0
-    whole = filled == interval_min
-    part = (filled > 0.0) & ~whole
-    if part.any():
-        lost = keep & part[flat]
-        findings.extend(
-            _by_customer(
-                lost,
-                customer,
-                names,
-                place,
-                "interval not filled",
-                f"reading(s) fill only part of a demand interval of {interval_min} min",
-                "the intervals are left empty",
-            )
+    faults = [fault for part in parts for fault in _too_coarse(part, interval_min)]
+    if faults:
+        return None, faults
+    findings: list[Finding] = []
+    parts = [_on_grid(part, interval_min, phase_s, findings) for part in parts]
+    if total(parts) == 0:
+        said = f" ({findings[0].message})" if findings else ""
+        return None, [Fault("readings", f"no reading could be used{said}")]
+    grid, faults = _grid(parts, interval_min, phase_s)
+    if grid is None:
+        return None, faults
+    cells = [grid.cells(part, grid.part_min) for part in parts]
+    keep = without_duplicates(parts, cells, len(grid.row) * grid.slots * (interval_min // grid.part_min), findings)
+    parts = [picked(part, kept) for part, kept in zip(parts, keep, strict=True)]
+    del cells, keep
+    return _averaged(parts, grid, findings), []
+
+
+def _too_coarse(part: Timed, interval_min: int) -> list[Fault]:
+    longest = int(part.minutes.max()) if part.minutes.size else 0
+    if longest <= interval_min:
+        return []
+    advice = "coarser readings are never split: use the longer interval"
+    return [
+        Fault(
+            "study.demand_interval_min", f"is {interval_min}, but {part.name} has readings of {longest} min; {advice}"
         )
-    value = np.where(whole, energy / interval_min, np.nan).reshape(shape)
-    return Matrix(
-        customers=tuple(str(name) for name in names),
-        start_utc=np.arange(first, last + 1, dtype=np.int64) * step,
-        kw=value,
-        kvar=np.where(whole, reactive / interval_min, np.nan).reshape(shape),
-        estimated=(guess & whole).reshape(shape),
-        findings=tuple(findings),
+    ]
+
+
+def _on_grid(part: Timed, interval_min: int, phase_s: int, findings: list[Finding]) -> Timed:
+    """Readings that lie within one demand interval and begin on a whole multiple of their own length."""
+    length = part.minutes * 60
+    since = (part.start_s - phase_s) % (interval_min * 60)
+    off = (since % length != 0) | (since + length > interval_min * 60)
+    if not off.any():
+        return part
+    findings.extend(
+        left_out(
+            part,
+            off,
+            "off the grid",
+            "reading(s) do not begin on a whole multiple of their interval",
+            "they are left out; check the clock and the stamping of the file",
+        )
+    )
+    return picked(part, ~off)
+
+
+def _grid(parts: Sequence[Timed], interval_min: int, phase_s: int) -> tuple[Grid | None, list[Fault]]:
+    used = sorted({part.customers[c] for part in parts for c in np.unique(part.customer).tolist()})
+    step = interval_min * 60
+    filled = [part for part in parts if part.start_s.size]
+    first = (min(int(part.start_s.min()) for part in filled) - phase_s) // step
+    last = (max(int(part.start_s.max()) for part in filled) - phase_s) // step
+    lengths = {int(m) for part in filled for m in _distinct(part.minutes)}
+    slots = last - first + 1
+    if len(used) * slots > MOST_CELLS:
+        span = " to ".join((EPOCH + dt.timedelta(seconds=n * step)).strftime("%Y-%m-%d") for n in (first, last))
+        return None, [Fault("readings", f"stamps run from {span}, too long for a table; check the form of the dates")]
+    return Grid(
+        row={name: n for n, name in enumerate(used)},
+        first_s=first * step + phase_s,
+        slots=slots,
+        interval_min=interval_min,
+        part_min=math.gcd(interval_min, *lengths),
     ), []
 
 
-def _single(
-    customer: NDArray[np.int64],
-    start: NDArray[np.int64],
-    minutes: NDArray[np.int64],
-    kw: NDArray[np.float64],
-    place: NDArray[np.object_],
-    names: NDArray[np.object_],
-) -> tuple[NDArray[np.bool_], list[Finding]]:
-    """Which readings stand alone or come first of equal ones; repeats and conflicts as findings."""
-    order = np.lexsort((np.arange(start.size), start, customer))
-    same = np.zeros(start.size, dtype=bool)
-    same[1:] = (customer[order][1:] == customer[order][:-1]) & (start[order][1:] == start[order][:-1])
-    group = np.cumsum(~same) - 1
-    size = np.bincount(group)
-    low = np.full(size.size, np.inf)
-    high = np.full(size.size, -np.inf)
-    np.minimum.at(low, group, kw[order])
-    np.maximum.at(high, group, kw[order])
-    differs = (high - low > 1e-9 * np.maximum(np.abs(high), 1.0))[group]
-    conflict, repeat = np.zeros(start.size, bool), np.zeros(start.size, bool)
-    conflict[order] = differs & (size[group] > 1)
-    repeat[order] = same & ~differs
-    findings = _by_customer(
-        repeat,
-        customer,
-        names,
-        place,
-        "repeated reading",
-        "reading(s) repeat an earlier one of the same interval with the same value",
-        "the repeats are left out",
-    )
-    findings += _by_customer(
-        conflict,
-        customer,
-        names,
-        place,
-        "conflicting readings",
-        "reading(s) give different values for the same interval",
-        "neither value is used",
-    )
-    return ~(conflict | repeat), findings
+def _distinct(minutes: NDArray[np.int64]) -> NDArray[np.int64]:
+    return minutes[:1] if minutes.strides == (0,) else np.unique(minutes)
 
 
-def _by_customer(
-    chosen: NDArray[np.bool_],
-    customer: NDArray[np.int64],
-    names: NDArray[np.object_],
-    place: NDArray[np.object_],
-    rule: str,
-    message: str,
-    effect: str,
-) -> list[Finding]:
-    """One finding for each customer that has chosen readings, all of them left out."""
-    where = np.flatnonzero(chosen)
-    findings = []
-    for c in np.unique(customer[where]):
-        mine = where[customer[where] == c]
-        findings.append(
-            Finding(
-                rule=rule,
-                severity="excluded",
-                customer=str(names[c]),
-                place=str(place[mine[0]]),
-                count=int(mine.size),
-                excluded=int(mine.size),
-                message=f"{mine.size} {message}",
-                effect=effect,
-            )
-        )
-    return findings
+def _averaged(parts: Sequence[Timed], grid: Grid, findings: list[Finding]) -> Matrix:
+    shape = (len(grid.row), grid.slots)
+    size = shape[0] * shape[1]
+    reactive = any(part.kvar is not None for part in parts)
+    start = grid.first_s + np.arange(grid.slots, dtype=np.int64) * grid.interval_min * 60
+    kw, kvar = np.full(size, np.nan), np.full(size, np.nan) if reactive else None
+    guess = np.zeros(size, bool)
+    behind: NDArray[np.integer] = np.broadcast_to(np.int16(1), (size,))
+    whole = np.array([part.start_s.size == 0 or bool((part.minutes == grid.interval_min).all()) for part in parts])
+    if whole.all():
+        for part in parts:
+            cell = grid.cells(part, grid.interval_min)
+            kw[cell] = part.kw
+            if kvar is not None and part.kvar is not None:
+                kvar[cell] = part.kvar
+            if part.estimated.any():
+                guess[cell] |= part.estimated
+    else:
+        filled, energy = np.zeros(size, np.int32), np.zeros(size)
+        behind = np.zeros(size, np.int16)
+        twice = np.zeros(size, bool)
+        quarter = np.zeros(size) if reactive else None
+        for part in parts:
+            cell = grid.cells(part, grid.interval_min)
+            behind += np.bincount(cell, minlength=size).astype(np.int16)
+            filled += np.bincount(cell, weights=part.minutes, minlength=size).astype(np.int32)
+            energy += np.bincount(cell, weights=part.kw * part.minutes, minlength=size)
+            if quarter is not None:
+                own = part.kvar if part.kvar is not None else np.full(part.kw.size, np.nan)
+                quarter += np.bincount(cell, weights=own * part.minutes, minlength=size)
+            guess |= np.bincount(cell, weights=part.estimated, minlength=size) > 0.0
+        _mark_covered_twice(parts, grid, twice)
+        good = (filled == grid.interval_min) & ~twice
+        kw = np.where(good, energy / grid.interval_min, np.nan)
+        kvar = None if quarter is None else np.where(good, quarter / grid.interval_min, np.nan)
+        guess &= good
+        for part in parts:
+            lost = ~good[grid.cells(part, grid.interval_min)]
+            message = f"reading(s) fill only part of a demand interval of {grid.interval_min} min, or fill it twice"
+            findings.extend(left_out(part, lost, "interval not filled", message, "the intervals are left empty"))
+    return Matrix(
+        customers=tuple(grid.row),
+        start_utc=start,
+        kw=kw.reshape(shape),
+        kvar=None if kvar is None else kvar.reshape(shape),
+        estimated=guess.reshape(shape),
+        readings_behind=behind.reshape(shape),
+        findings=tuple(findings),
+    )
+
+
+def _mark_covered_twice(parts: Sequence[Timed], grid: Grid, twice: NDArray[np.bool_]) -> None:
+    """Demand intervals any part of which is covered by two readings, where meters of different intervals overlap."""
+    lengths = {int(m) for part in parts if part.minutes.size for m in np.unique(part.minutes)}
+    if len(lengths) < 2:
+        return
+    per_slot = grid.interval_min // grid.part_min
+    cover = np.zeros(twice.size * per_slot, np.uint8)
+    for part in parts:
+        units = part.minutes // grid.part_min
+        first = grid.cells(part, grid.part_min)
+        inside = np.arange(int(units.sum())) - np.repeat(np.cumsum(units) - units, units)
+        np.add.at(cover, np.repeat(first, units) + inside, 1)
+    twice |= (cover.reshape(-1, per_slot) > 1).any(axis=1)

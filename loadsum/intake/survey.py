@@ -12,15 +12,9 @@ from numpy.typing import NDArray
 
 from loadsum.errors import InputError
 from loadsum.intake.inputs import unpacked
-from loadsum.intake.readers.delimited import (
-    TIME_WORDS,
-    RawReadings,
-    decoded,
-    guessed_delimiter,
-    matching_column,
-    read_delimited,
-    table_of,
-)
+from loadsum.intake.readers.columns import TIME_WORDS, matching_header
+from loadsum.intake.readers.delimited import decoded, guessed_delimiter, read_delimited, table_of
+from loadsum.intake.readers.raw import RawReadings
 from loadsum.study.tables import MeterFiles
 
 # Forms of stamps that are tried in turn where they are not ISO 8601, strptime notation.
@@ -30,6 +24,10 @@ FORMS = (*(f"{date} {time}" for date in DATES for time in TIMES), "%Y%m%d%H%M")
 TEMPERATURE = re.compile(r"temp|outdoor|ambient|drybulb|degc|°c|_c$|_f$", re.IGNORECASE)
 UNITS = (("mwh", "energy", "MWh"), ("kwh", "energy", "kWh"), ("wh", "energy", "Wh"), ("mw", "power", "MW"),
          ("kw", "power", "kW"))  # fmt: skip
+
+
+# What is said of a file that nobody has described: nothing.
+_UNDESCRIBED = MeterFiles(files="", unit="kWh", stamp="start")
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -98,7 +96,7 @@ def _other_format(path: Path, content: bytes) -> str:
 def _delimited(name: str, content: bytes) -> Look:
     text, _ = decoded(content, name, "")
     delimiter = guessed_delimiter(text)
-    frame = table_of(text, name, delimiter)
+    frame = table_of(text, name, delimiter, _UNDESCRIBED)
     columns = [str(column) for column in frame.columns]
     if all(re.fullmatch(r"-?[\d.,]+|", column) for column in columns):
         return _bare(name, len(columns), len(frame) + 1)
@@ -149,7 +147,7 @@ def _text_columns(frame: pd.DataFrame, rest: list[str]) -> tuple[str, str]:
 def _time_column(frame: pd.DataFrame) -> str:
     """Column whose entries are stamps with a time of day; empty where there is none."""
     columns = [str(column) for column in frame.columns]
-    named = matching_column(columns, TIME_WORDS)
+    named = matching_header(columns, TIME_WORDS)
     for column in dict.fromkeys([*([named] if named else []), *columns]):
         head = frame[column].head(200)
         looks = head.str.contains(r"\d[T :]|^\d{12}$", regex=True).mean() > 0.9
@@ -278,9 +276,9 @@ def _bare(name: str, columns: int, rows: int) -> Look:
     return Look(
         name=name,
         kind="readings",
-        keys=(("header", "false", "the first row holds numbers"), ("layout", '"one column a customer"', "so it seems")),
+        keys=(("header", '"no"', "the first row holds numbers"), ("layout", '"one column a customer"', "so it seems")),
         questions=(*_ask_first(), _ask_unit(("", "", "")), _ask_stamp("start", "the first stamp is yours to state")),
-        customers=tuple(str(n) for n in range(1, columns + 1)),
+        customers=tuple(f"column {n}" for n in range(1, columns + 1)),
         remarks=(f"{columns} columns, {rows} rows, neither header nor stamps",),
     )
 
@@ -291,7 +289,7 @@ def _stampless(name: str, columns: list[str], rows: int) -> Look:
     value = next((c for c in likely if re.search(r"electric", c, re.IGNORECASE)), likely[0] if likely else "")
     unit = _unit([value])
     keys = [
-        ("named_by_file", "true", "no column holds an identifier"),
+        ("customer", '"file name"', "no column holds an identifier"),
         ("layout", '"one column a customer"', "so it seems"),
     ]
     return Look(

@@ -7,8 +7,9 @@ import numpy as np
 import pandas as pd
 
 from loadsum.errors import Fault, InputError
-from loadsum.intake.clock import NAT, local_calendar, read_stamps
+from loadsum.intake.clock import NAT, AmbiguousDatesError, local_calendar, read_stamps
 from loadsum.intake.inputs import InputFile, digest, unpacked
+from loadsum.intake.instants import counted
 from loadsum.intake.readers.delimited import read_delimited
 from loadsum.intake.readings import TemperatureRecord
 from loadsum.study.tables import MeterFiles, Weather
@@ -35,13 +36,25 @@ def read_temperature(
         stamp="start",
         quantity="power",
         clock=keys.clock,
+        first_stamp=keys.first_stamp,
+        interval_min=keys.interval_min,
     )
     stamps, values = [], []
     choices: tuple[str, ...] = ()
     for name, content in unpacked(path):
         raw = read_delimited(content, name, source)
         choices = raw.choices
-        read = read_stamps(pd.Series(raw.stamps), keys.time_format, keys.clock, place)
+        if keys.first_stamp:
+            said: list[str] = []
+            start, _ = counted(raw, source, place, said)
+            choices = (*choices, *said)
+            stamps.append(start)
+            values.append(raw.value)
+            continue
+        try:
+            read = read_stamps(pd.Series(list(raw.stamps), dtype=str), keys.time_format, keys.clock, place)
+        except AmbiguousDatesError as error:
+            raise InputError(name, [Fault(name, f"{error}; state weather.time_format")]) from error
         if read.unread.any():
             bad = int(np.flatnonzero(read.unread)[0])
             line = int(raw.line[raw.stamp == bad][0])

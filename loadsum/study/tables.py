@@ -99,13 +99,29 @@ class MeterFiles:
         default="local",
     )
     day_first: str = key("Order of day and month in stamps such as 03/04/2031.", default="", choices=("yes", "no"))
-    header: bool = key("Whether the first row names the columns; without it they are called 1, 2, 3.", default=True)
+    header: str = key(
+        "Whether a table begins with a row of names; columns without one are called column 1, column 2 and so on.",
+        default="yes",
+        choices=("yes", "no"),
+    )
     first_stamp: str = key(
-        "Stamp of the first reading of a file that has no stamps and no gaps; needs interval_min. ISO 8601.",
+        "Stamp of the first row of a table without stamps, ISO 8601; the others follow at interval_min, which must be"
+        " stated too.",
         default="",
         example='"2031-01-01T00:00"',
     )
-    named_by_file: bool = key("Whether each file holds one customer, called as the file is.", default=False)
+    meters: str = key(
+        "Whose demand the files hold: each customer's, or the sum that a meter at the transformer or feeder head"
+        " measures, which is compared and never added.",
+        default="customers",
+        choices=("customers", "group"),
+    )
+    register_digits: int = key(
+        "Digits before the decimal point of a register that rolls over; 0 where a fall means a new meter.",
+        default=0,
+        at_least=0,
+        at_most=12,
+    )
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -178,8 +194,41 @@ class Weather:
     record_file: str = key(
         "Longer record of temperature over which the year is averaged; the file above when left out.", default=""
     )
+    first_stamp: str = key("Stamp of the first row of a series without stamps, ISO 8601.", default="")
+    interval_min: int = key("Interval of a series without stamps. [min]", default=0, at_least=0)
     beyond_metered_range: bool = key(
         "Whether days outside the metered range of temperature are extrapolated, marked.", default=False
+    )
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class FindingLimits:
+    """``[findings]``: limits of the rules that readings are held against, common practice where not set."""
+
+    spike_factor: float = key(
+        "Times the level exceeded 0.1 % of the time above which a reading is a spike.", default=5.0, above=1.0
+    )
+    stuck_h: float = key("Hours of the same value, not zero, that are a stuck run. [h]", default=12.0, above=0.0)
+    zero_h: float = key("Hours of exact zeros that look like a filled gap. [h]", default=24.0, above=0.0)
+    outage_share: float = key(
+        "Share of the customers that read zero together in an outage.", default=0.8, above=0.0, at_most=1.0
+    )
+    unit_ratio: float = key(
+        "Ratio of a customer's mean demand to the middle customer's above which, or below whose inverse, the unit is in"
+        " doubt.",
+        default=300.0,
+        above=1.0,
+    )
+    moved_share: float = key(
+        "Share of a customer's earlier or later mean below which it has moved in or out.",
+        default=0.1,
+        above=0.0,
+        at_most=1.0,
+    )
+    exclude: tuple[str, ...] = key(
+        "Rules whose readings are left out of the study, named as in docs/findings.md.",
+        default=(),
+        choices=("spike", "stuck value", "zeros like a gap", "outage", "negative demand", "above service rating"),
     )
 
 
@@ -329,6 +378,7 @@ class Study:
     season: tuple[Season, ...] = key("Seasons; the whole year as one when none is listed.", default=())
     day_types: DayTypes = key("Day types.", default_factory=DayTypes)
     weather: Weather = key("Outdoor temperature.", default_factory=Weather)
+    findings: FindingLimits = key("Limits of the rules that readings are held against.", default_factory=FindingLimits)
     model: ModelKeys = key("Demand model.", default_factory=ModelKeys)
     transformer: tuple[Transformer, ...] = key("Transformer, or transformers.", advice="describe the transformer")
     allowed_loading: tuple[AllowedLoading, ...] = key("Allowed loading by season.", default=())

@@ -1,0 +1,53 @@
+"""One meter file, whatever its format."""
+
+import datetime as dt
+from collections.abc import Iterator
+from dataclasses import dataclass
+from pathlib import Path
+
+from loadsum.intake.findings import Finding
+from loadsum.intake.inputs import unpacked
+from loadsum.intake.instants import timed_readings
+from loadsum.intake.readers.delimited import read_delimited
+from loadsum.intake.timed import Timed
+from loadsum.study.tables import MeterFiles
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class FileReadings:
+    """Readings of one file, or of one file inside an archive.
+
+    Parameters
+    ----------
+    timed : Timed
+        Readings that can be used.
+    rows : int
+        Readings in the file, used or standing in a finding. [-]
+    layout : str
+        Layout they were read as.
+    choices : list of str
+        The choices made, in words.
+    """
+
+    timed: Timed
+    rows: int
+    layout: str
+    choices: list[str]
+
+
+def read_file(path: Path, source: MeterFiles, place: dt.tzinfo, findings: list[Finding]) -> Iterator[FileReadings]:
+    """Readings of one meter file.
+
+    Raises
+    ------
+    InputError
+        The file is at fault.
+    MissingExtraError
+        The format needs an optional package.
+    """
+    for name, content in unpacked(path):
+        raw = read_delimited(content, name, source)
+        del content
+        choices = list(raw.choices)
+        timed = timed_readings(raw, source, place, findings, choices)
+        yield FileReadings(timed=timed, rows=int(raw.value.size), layout=raw.layout, choices=choices)
