@@ -130,7 +130,7 @@ def test_a_table_without_header_or_stamps_asks_for_its_first_stamp(tmp_path):
         ("interval_min = 60  #", "interval_min = 15  #"),
     )
     loaded = load_readings(load_study(tmp_path / "study.toml"), tmp_path)
-    assert loaded.readings.customers == ("1", "2")
+    assert loaded.readings.customers == ("column 1", "column 2")
     assert loaded.readings.kw[:, 0].tolist() == pytest.approx([0.375, 1.375])
 
 
