@@ -97,6 +97,39 @@ def test_tails_of_awkward_shapes_agree_with_whole_number_arithmetic(shape):
     check_against_exact(weights, counts, 8)
 
 
+def random_shape(rng):
+    """Up to eight terms of random kinds, some of them many times."""
+    weights, counts = [], []
+    for _ in range(rng.integers(1, 9)):
+        kind = rng.integers(6)
+        if kind == 0:
+            body = rng.lognormal(rng.uniform(0.0, 4.5), rng.uniform(0.1, 1.2), 90)
+            row = np.bincount(np.rint(body).astype(int).clip(0, 2000)).tolist()
+        elif kind == 1:
+            row = sparse({0: int(10 ** rng.uniform(0, 14)), int(rng.integers(1, 2000)): int(10 ** rng.uniform(0, 3))})
+        elif kind == 2:
+            row = [int(w) + 1 for w in 10 ** rng.uniform(0, 12, int(rng.integers(2, 200)))]
+        elif kind == 3:
+            places = rng.integers(0, 1500, 20).tolist()
+            row = sparse({p: int(w) for p, w in zip(places, 10 ** rng.uniform(0, 8, 20), strict=True)})
+        elif kind == 4:
+            row = [1] * int(rng.integers(2, 900))
+        else:
+            step = int(rng.integers(2, 60))
+            row = sparse({step * int(p): 1 + int(w) for p, w in zip(range(8), rng.integers(0, 100, 8), strict=True)})
+        weights.append(row)
+        counts.append(int(rng.choice([1, 1, 1, 2, 5, 20])))
+    return weights, counts
+
+
+@pytest.mark.slow
+@pytest.mark.parametrize("seed", range(150))
+def test_tails_of_random_shapes_agree_with_whole_number_arithmetic(seed):
+    weights, counts = random_shape(np.random.default_rng(seed))
+    weights.append([1, 2, 1])  # so that there is a tail to look at
+    check_against_exact(weights, [*counts, 10], 6)
+
+
 def adopted_model():
     """Customers with borrowed readings, a smoothed common component and an uncertain mean."""
     rng = np.random.default_rng(5)

@@ -126,13 +126,13 @@ def test_the_weather_mixture_agrees_with_the_law_of_total_probability():
     truth = float(values["P_mixture"])
     lower, upper = (
         mixture(
-            [normal_mass(m, s, 0.002, way) for m, s in zip(values["mu"], values["sd"], strict=True)], values["pi"]
+            [normal_mass(m, s, 0.02, way) for m, s in zip(values["mu"], values["sd"], strict=True)], values["pi"]
         ).above(float(values["L"]))
         for way in ("down", "up")
     )
     assert lower < truth
     assert upper == pytest.approx(truth, rel=1e-10)  # the level is a lattice point, and rounding up keeps it
-    assert lower == pytest.approx(truth, rel=1e-3)
+    assert lower == pytest.approx(truth, rel=1e-2)
 
 
 def test_scaling_and_shifting_round_in_the_direction_asked():
