@@ -292,6 +292,7 @@ def one_transformer(
         asked.customer,
         [readings.customers[c] for c in usable],
         {customer.id: billed_kwh(customer) for customer in asked.customer},
+        head=unit.feeder_head,
     )
     reason = cannot_be_studied(served)
     if reason:

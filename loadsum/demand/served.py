@@ -44,6 +44,8 @@ def served_by(
     listed: Sequence[Customer],
     metered: Sequence[str],
     annual_kwh: Mapping[str, float],
+    *,
+    head: bool = False,
 ) -> Served:
     """The group of one transformer.
 
@@ -59,6 +61,8 @@ def served_by(
         Identifiers in the order of the readings' rows; only those with a usable reading.
     annual_kwh : mapping of str to float
         Billed energy per year of customers that give it. [kWh]
+    head : bool
+        Whether it is the head of the feeder, which serves the customers of every transformer.
     """
     known = {customer.id: customer for customer in listed}
     if not listed:
@@ -66,7 +70,7 @@ def served_by(
     classes = tuple(known[name].customer_class if name in known else "" for name in metered)
 
     def counts(customer: Customer) -> bool:
-        here = customer.transformer == unit or (alone and not customer.transformer)
+        here = head or customer.transformer == unit or (alone and not customer.transformer)
         return here and customer.role in COUNTS
 
     inside = [customer for customer in known.values() if counts(customer)]

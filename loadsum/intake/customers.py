@@ -7,7 +7,7 @@ import numpy as np
 from loadsum.intake.findings import Finding
 from loadsum.intake.readings import Readings
 from loadsum.study.checks import billed_kwh
-from loadsum.study.tables import Customer, Study
+from loadsum.study.tables import Study
 
 HOURS_PER_YEAR = 8766.0  # mean calendar year
 SERVED = ("existing", "planned", "transferred in")
@@ -35,6 +35,7 @@ def customer_findings(study: Study, readings: Readings) -> tuple[Finding, ...]:
         *_against_bills(study, readings),
         *_without_transformer(study),
         *_idle_transformers(study),
+        *_of_other_transformers(study),
     )
 
 
@@ -122,7 +123,7 @@ def _idle_transformers(study: Study) -> Iterator[Finding]:
         return
     served = {customer.transformer for customer in study.customer if customer.role in SERVED}
     for unit in study.transformer:
-        if unit.id not in served:
+        if unit.id not in served and not unit.feeder_head:
             yield Finding(
                 rule="transformer without customers",
                 severity="caution",
@@ -132,14 +133,15 @@ def _idle_transformers(study: Study) -> Iterator[Finding]:
             )
 
 
-def customers_of(study: Study, transformer: str) -> tuple[Customer, ...]:
-    """Customers of one transformer; all of them where the study has only one.
-
-    Reference customers, which serve no transformer, and customers that leave are not among them.
-    """
-    alone = len(study.transformer) == 1
-    return tuple(
-        customer
-        for customer in study.customer
-        if customer.role in SERVED and (alone or customer.transformer == transformer)
-    )
+def _of_other_transformers(study: Study) -> Iterator[Finding]:
+    if len(study.transformer) > 1 or not study.transformer[0].id:
+        return
+    others = [c for c in study.customer if c.transformer and c.transformer != study.transformer[0].id]
+    if others:
+        yield Finding(
+            rule="customers of other transformers",
+            severity="note",
+            count=len(others),
+            message=f"{len(others)} listed customers name another transformer than {study.transformer[0].id}",
+            effect="not served here; those with readings lend them to their class",
+        )

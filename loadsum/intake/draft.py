@@ -87,7 +87,7 @@ def draft_study(folder: Path) -> tuple[tuple[Path, ...], tuple[str, ...]]:
     groups = _alike((look for look in looks if look.kind == "readings"), folder)
     body = [*(_readings(group) for group in groups), *(_weather(look) for look in looks if look.kind == "temperature")]
     body += [_strange(look) for look in looks if look.kind == "not understood"]
-    customers = list(dict.fromkeys(name for look in looks for name in look.customers))
+    customers = list(dict.fromkeys(name for look in looks if look.kind == "readings" for name in look.customers))
     written = _write_study(study, body, looks) + _write_table(table, customers)
     return written, tuple(f"{look.name}: {'; '.join([look.kind, *look.remarks])}" for look in looks)
 

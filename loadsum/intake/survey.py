@@ -343,6 +343,7 @@ def _ask_first() -> tuple[tuple[str, str, str], ...]:
     return (
         ("first_stamp", "2031-01-01T00:00:00", "the instant at which the first reading begins"),
         ("interval_min", "60", "minutes from one reading to the next"),
+        ("clock", '"standard"', '"local", "utc" or "standard"? readings without a gap or a repeated hour: not "local"'),
     )
 
 

@@ -156,7 +156,9 @@ def _customers(study: Study) -> Iterator[Fault]:
         if customer.id in seen:
             yield Fault(f"{where}.id", f"customer {shown(customer.id)} is listed twice")
         seen.add(customer.id)
-        if customer.transformer and customer.transformer not in units:
+        # A study of one transformer may use the customer table of its feeder: the others lend to their class.
+        elsewhere = len(study.transformer) == 1 and bool(units)
+        if customer.transformer and customer.transformer not in units and not elsewhere:
             known = ", ".join(sorted(units)) or "none has an id"
             yield Fault(
                 f"{where}.transformer", f"no transformer has the id {shown(customer.transformer)}; known: {known}"

@@ -288,6 +288,10 @@ class Transformer:
         "Short-circuit impedance, % of rated voltage; 0 where unknown.", default=0.0, at_least=0.0, at_most=100.0
     )
     year_made: int = key("Year of manufacture; 0 where unknown.", default=0, at_least=0)
+    feeder_head: bool = key(
+        "Whether this is the head of the feeder, which serves the customers of every transformer of the study.",
+        default=False,
+    )
     sources: tuple[str, ...] = key(
         "Source and date of figures of this table, each led by the key it is about.",
         default=(),

@@ -1,9 +1,11 @@
 """Customers held against readings."""
 
+import dataclasses
+
 import numpy as np
 import pytest
 
-from loadsum.intake.customers import customer_findings, customers_of
+from loadsum.intake.customers import customer_findings
 from loadsum.intake.readings import Readings
 from loadsum.study.load import study_from
 from loadsum.study.tables import Study
@@ -89,13 +91,15 @@ def test_monthly_bills_are_summed():
     assert "1200 kWh billed" in customer_findings(asked, readings(A=0.5))[0].message
 
 
-def test_a_transformer_serves_its_own_existing_planned_and_transferred_customers():
-    asked = study(
-        {"id": "A", "transformer": "T-1"},
-        {"id": "B", "transformer": "T-2"},
-        {"id": "C", "transformer": "T-1", "role": "leaving"},
-        {"id": "D", "transformer": "T-1", "role": "planned"},
-        {"id": "E", "role": "reference only"},
-        units=("T-1", "T-2"),
-    )
-    assert [customer.id for customer in customers_of(asked, "T-1")] == ["A", "D"]
+def test_a_study_of_one_transformer_says_that_the_customers_of_others_are_not_served():
+    asked = study({"id": "A", "transformer": "T-1"}, {"id": "B", "transformer": "T-2"})
+    (found,) = customer_findings(asked, readings(A=0.5, B=0.5))
+    assert (found.rule, found.count) == ("customers of other transformers", 1)
+
+
+def test_the_head_of_a_feeder_is_no_transformer_without_customers():
+    asked = study({"id": "A", "transformer": "T-1"}, units=("T-1", "head"))
+    assert rules(customer_findings(asked, readings(A=0.5))) == [("transformer without customers", "head")]
+    head = dataclasses.replace(asked.transformer[1], feeder_head=True)
+    asked = dataclasses.replace(asked, transformer=(asked.transformer[0], head))
+    assert customer_findings(asked, readings(A=0.5)) == ()

@@ -139,11 +139,13 @@ def test_a_temperature_series_is_known_for_one_and_a_strange_file_is_named(tmp_p
     (tmp_path / "weather.csv").write_text(
         "time,outdoor_f\n" + "".join(f"{t:%Y-%m-%d %H:%M},50.0\n" for t in HOURS[:48]), encoding="utf-8"
     )
+    (tmp_path / "prices.csv").write_text("month,price\n1,7\n2,8\n", encoding="utf-8")
     (tmp_path / "notes.txt").write_text("call the meter shop\n", encoding="utf-8")
     draft_study(tmp_path)
     assert read_tree(tmp_path / "study.toml")["weather"]["temperature_column"] == "outdoor_f"
     assert '#? unit = "F"' in text_of(tmp_path)
     assert "# not understood: notes.txt" in text_of(tmp_path)
+    assert (tmp_path / "customers.csv").read_text(encoding="utf-8") == f"{CUSTOMERS_HEAD}\nA,,,,,,,\n"
 
 
 def test_a_folder_without_meter_files_is_the_users_fault(tmp_path):
