@@ -30,6 +30,8 @@ from loadsum.intake.hourclass import Calendar, DayBlock, calendar, day_blocks, m
 from loadsum.intake.load import Loaded, load_readings
 from loadsum.intake.readings import shared_resolution
 from loadsum.intake.revised import reading_changes, with_changes
+from loadsum.peak.dayandyear import day_and_year
+from loadsum.peak.diversity import diversity
 from loadsum.peak.exceedance import days_by_month, exceedance_hours
 from loadsum.progress import Progress
 from loadsum.report import document, figures, revision
@@ -46,7 +48,9 @@ from loadsum.study.checks import billed_kwh
 from loadsum.study.load import load_study
 from loadsum.study.pseudonyms import key_beside, pseudonyms
 from loadsum.study.tables import Study, Transformer
+from loadsum.transformer.criterionfigures import annual_probability, life_of, missing_for_life, temperature_figures
 from loadsum.transformer.loading import loadings
+from loadsum.transformer.losses import losses
 from loadsum.transformer.ratings import ratings_of
 from loadsum.transformer.selection import evaluate
 
@@ -339,7 +343,27 @@ def one_transformer(
         )
         for of, share in loadings(demand, asked.allowed_loading).items()
     }
-    selection = evaluate(demand, ratings, asked.criterion, asked.allowed_loading, installed_kva=unit.installed_kva)
+    together = day_and_year(
+        demand,
+        calendar=days,
+        calendar_years_metered=years,
+        metered=loaded.temperature,
+        record=loaded.record,
+        reference=group_blocks,
+    )
+    lived = life_of(unit, asked.criterion, together, ratings, rng)
+    selection = evaluate(
+        demand,
+        ratings,
+        asked.criterion,
+        asked.allowed_loading,
+        installed_kva=unit.installed_kva,
+        others={
+            "annual exceedance probability": annual_probability(together, asked.allowed_loading, asked.study.seed),
+            **temperature_figures(lived, missing_for_life(unit)),
+        },
+    )
+    shown = list(loadings(demand, asked.allowed_loading).values())[-1]
     return TransformerResults(
         id=unit.id,
         installed_kva=unit.installed_kva,
@@ -353,6 +377,27 @@ def one_transformer(
         exceedance=tuple(row for of, table in above.items() for row in exceedance_rows(demand, table, ratings, of)),
         hour_map=hour_map(demand.blocks, ratings, list(above.values())[-1].levels),
         selection=selection,
+        peaks=together.peaks({f"{rating:g} kVA": rating * shown for rating in ratings}, rng),
+        diversity=diversity(
+            demand.blocks,
+            interval_min=readings.interval_min,
+            power_factor=unit.power_factor,
+            rng=rng,
+            rating_kva=unit.installed_kva,
+        )
+        if demand.blocks[0].kw.shape[0]
+        else None,
+        thermal=lived,
+        losses=losses(
+            demand,
+            unit.ratings_kva,
+            unit.no_load_losses_w,
+            unit.load_losses_w,
+            a_per_w=unit.loss_factor_a_per_w,
+            b_per_w=unit.loss_factor_b_per_w,
+            prices=unit.prices,
+            currency=unit.currency,
+        ),
         evidence=tested,
         diagnostics=demand.diagnostics,
         assumptions=assumptions(asked, unit, served, demand),

@@ -15,11 +15,15 @@ from loadsum.demand.hourly import BlockDiagnostics
 from loadsum.evidence.holdout import HoldOut
 from loadsum.intake.findings import Finding
 from loadsum.intake.inputs import InputFile
+from loadsum.peak.diversity import Diversity
+from loadsum.peak.peaks import Peaks
 from loadsum.report.energybymonth import CustomerMonths
 from loadsum.report.hourmap import HourMap
 from loadsum.report.quality import QualityCalendar
 from loadsum.study.assumptions import Assumption
 from loadsum.study.tables import Heading, Person
+from loadsum.transformer.life import Life
+from loadsum.transformer.losses import Losses
 from loadsum.transformer.selection import Selection
 
 SCHEMA_VERSION = 1
@@ -202,6 +206,10 @@ class TransformerResults:
     exceedance: tuple[ExceedanceRow, ...] = ()
     hour_map: HourMap | None = None
     selection: Selection | None = None
+    peaks: Peaks | None = None
+    diversity: Diversity | None = None
+    thermal: Life | None = None
+    losses: Losses | None = None
     evidence: HoldOut | None = None
     diagnostics: tuple[BlockDiagnostics, ...] = ()
     assumptions: tuple[Assumption, ...] = ()

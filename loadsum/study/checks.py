@@ -10,6 +10,7 @@ from pathlib import Path
 from loadsum.errors import Fault
 from loadsum.study.futurechecks import check_load_to_come
 from loadsum.study.tables import Customer, Study, Transformer
+from loadsum.study.thermalchecks import check_transformers
 from loadsum.study.values import shown
 
 OFFSET = re.compile(r"[+-](0\d|1[0-4]):[0-5]\d")
@@ -27,6 +28,7 @@ def check_study(study: Study) -> list[Fault]:
         *_transformers(study),
         *_loading(study),
         *check_load_to_come(study),
+        *check_transformers(study),
     ]
 
 

@@ -297,6 +297,63 @@ class Transformer:
         default=(),
         example='["impedance_pct: nameplate, read 2031-02-03"]',
     )
+    loading_guide: str = key(
+        "Loading guide whose equations give the temperatures; none is computed when left out.",
+        default="",
+        choices=("", "IEEE C57.91", "IEC 60076-7"),
+    )
+    paper: str = key(
+        "Insulation paper of the windings.", default="thermally upgraded", choices=("kraft", "thermally upgraded")
+    )
+    top_oil_rise_k: float = key(
+        "Top-oil rise over ambient at rated load; 0 where unknown. [K]", default=0.0, at_least=0.0
+    )
+    hot_spot_gradient_k: float = key(
+        "Hot-spot rise over top oil at rated load; 0 where unknown. [K]", default=0.0, at_least=0.0
+    )
+    loss_ratio: float = key(
+        "Load losses at rated load over no-load losses; 0 where unknown.", default=0.0, at_least=0.0
+    )
+    oil_exponent: float = key("Oil exponent, n or x of the guide; 0 where unknown.", default=0.0, at_least=0.0)
+    winding_exponent: float = key("Winding exponent, m or y of the guide; 0 where unknown.", default=0.0, at_least=0.0)
+    oil_time_constant_min: float = key(
+        "Oil time constant at rated load; 0 where unknown. [min]", default=0.0, at_least=0.0
+    )
+    winding_time_constant_min: float = key(
+        "Winding time constant at rated load; 0 where unknown. [min]", default=0.0, at_least=0.0
+    )
+    k11: float = key("Constant k11 of IEC 60076-7.", default=1.0, above=0.0)
+    k21: float = key("Constant k21 of IEC 60076-7.", default=1.0, above=0.0)
+    k22: float = key("Constant k22 of IEC 60076-7.", default=1.0, above=0.0)
+    thermal_source: str = key("Where the thermal data come from.", default="")
+    derating_pu: float = key(
+        "Altitude and enclosure: rating that counts over nameplate, by the utility's own rule. [pu]",
+        default=1.0,
+        above=0.0,
+        at_most=1.0,
+    )
+    ambient_c: float = key(
+        "Constant ambient temperature where no series is given, a stated high one; -100 where none. [°C]",
+        default=-100.0,
+        at_least=-100.0,
+        at_most=60.0,
+    )
+    no_load_losses_w: tuple[float, ...] = key(
+        "No-load losses of each rating compared, from test reports, in their order. [W]", default=(), at_least=0.0
+    )
+    load_losses_w: tuple[float, ...] = key(
+        "Load losses at rated load of each rating compared, in their order. [W]", default=(), at_least=0.0
+    )
+    loss_factor_a_per_w: float = key(
+        "Worth of a watt of no-load losses; 0 where none. [currency/W]", default=0.0, at_least=0.0
+    )
+    loss_factor_b_per_w: float = key(
+        "Worth of a watt of rated load losses; 0 where none. [currency/W]", default=0.0, at_least=0.0
+    )
+    prices: tuple[float, ...] = key(
+        "Price of each rating compared, in their order. [currency]", default=(), at_least=0.0
+    )
+    currency: str = key("Unit of money.", default="")
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)

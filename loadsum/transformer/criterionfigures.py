@@ -1,0 +1,97 @@
+"""Figures that criteria on whole years, temperatures and ageing are held against."""
+
+from collections.abc import Sequence
+
+import numpy as np
+
+from loadsum.demand.hourly import Direction
+from loadsum.peak.dayandyear import DayAndYear
+from loadsum.study.tables import AllowedLoading, Criterion, Transformer
+from loadsum.study.thermalchecks import missing_thermal
+from loadsum.transformer.life import Life, LifeAtRating, life
+from loadsum.transformer.loading import allowed_pu
+from loadsum.transformer.selection import Figure, FigureSource
+from loadsum.transformer.thermalkeys import ambient_of, thermal_data
+
+YEARS = 200  # drawn for temperatures; a probability per year below 1/200 is not supported by them
+
+
+def annual_probability(together: DayAndYear, allowed: Sequence[AllowedLoading], seed: int) -> FigureSource:
+    """Probability that a year passes the loading of a criterion, days independent within their class and weather."""
+
+    def figure(criterion: Criterion, rating_kva: float) -> Figure:
+        level = rating_kva * allowed_pu(together.demand, criterion.of, allowed)
+        if np.isnan(level).any():
+            return Figure(value=float("nan"), reason=f"the study file states no {criterion.of} for every season")
+        direction: Direction = criterion.direction  # type: ignore[assignment]
+        return Figure(value=together.year_probability(level, seed, direction))
+
+    return figure
+
+
+def missing_for_life(unit: Transformer) -> str:
+    """Why temperatures are not computed; empty where they are."""
+    if not unit.loading_guide:
+        return "the study file names no loading guide and no thermal data"
+    missing = missing_thermal(unit)
+    return f"the study file leaves out {', '.join(missing)}" if missing else ""
+
+
+def life_of(
+    unit: Transformer,
+    criteria: Sequence[Criterion],
+    together: DayAndYear,
+    ratings_kva: Sequence[float],
+    rng: np.random.Generator,
+) -> Life | None:
+    """Temperatures and ageing of every rating; None where thermal data, ambient or readings are missing."""
+    data = thermal_data(unit)
+    if data is None or not together.demand.covered().all():
+        return None
+    paths = together.paths(YEARS, rng)
+    ambient, words = ambient_of(unit, paths)
+    if ambient is None:
+        return None
+    limit = next((c.limit for c in criteria if c.quantity == "hot-spot temperature"), None)
+    assumed = [
+        words,
+        f"thermal data the same per unit for every rating: {unit.thermal_source or 'no source given'}",
+        f"{YEARS} years drawn; the first day of each is warm-up",
+        f"load is taken as constant within {paths.interval_min} min; what it does inside is hidden",
+    ]
+    if unit.derating_pu < 1.0:
+        assumed.append(f"altitude and enclosure: {unit.derating_pu:g} of nameplate, stated")
+    return life(
+        paths,
+        ambient,
+        ratings_kva,
+        data,
+        unit.loading_guide,  # type: ignore[arg-type]
+        unit.paper,  # type: ignore[arg-type]
+        derating_pu=unit.derating_pu,
+        hot_spot_limit_c=limit,
+        assumed=assumed,
+    )
+
+
+def temperature_figures(lived: Life | None, missing: str) -> dict[str, FigureSource]:
+    """Sources of figures for criteria on temperature and ageing."""
+    reason = missing or "ambient temperature or readings for part of the year are missing"
+
+    def at(rating_kva: float) -> LifeAtRating | None:
+        return None if lived is None else next(row for row in lived.by_rating if row.rating_kva == rating_kva)
+
+    def hottest(criterion: Criterion, rating_kva: float) -> Figure:
+        row = at(rating_kva)
+        if row is None:
+            return Figure(value=float("nan"), reason=reason)
+        oil = criterion.quantity == "top-oil temperature"
+        highest = row.top_oil_quantiles_c if oil else row.hot_spot_quantiles_c
+        share = (np.arange(highest.size) + 0.5) / highest.size
+        return Figure(value=float(np.interp(1.0 - criterion.probability, share, highest)))
+
+    def aged(criterion: Criterion, rating_kva: float) -> Figure:
+        row = at(rating_kva)
+        return Figure(value=float("nan"), reason=reason) if row is None else Figure(value=row.ageing_pu)
+
+    return {"hot-spot temperature": hottest, "top-oil temperature": hottest, "ageing per year": aged}
