@@ -3,7 +3,7 @@
 import json
 import logging
 import platform
-from collections.abc import Sequence
+from collections.abc import Mapping, Sequence
 from dataclasses import replace
 from importlib import metadata
 from pathlib import Path
@@ -12,14 +12,18 @@ from typing import Any
 import numpy as np
 
 from loadsum import __version__
-from loadsum.demand.group import group_demand
+from loadsum.demand.group import Group, group_demand
+from loadsum.demand.hourly import GroupDemand
+from loadsum.demand.planned import Planned
 from loadsum.demand.served import (
     cannot_be_studied,
     held_out_settings,
+    numbers_by_class,
     record_by_class,
     scaled,
     served_by,
     settings_of,
+    with_more,
     with_unmetered_block,
 )
 from loadsum.errors import Fault, InputError
@@ -50,6 +54,7 @@ from loadsum.study.pseudonyms import key_beside, pseudonyms
 from loadsum.study.tables import Study, Transformer
 from loadsum.transformer.criterionfigures import annual_probability, life_of, missing_for_life, temperature_figures
 from loadsum.transformer.loading import loadings
+from loadsum.transformer.loadtocome import load_to_come
 from loadsum.transformer.losses import losses
 from loadsum.transformer.ratings import ratings_of
 from loadsum.transformer.selection import evaluate
@@ -322,16 +327,25 @@ def one_transformer(
         if group.served.any()
         else None
     )
-    demand = group_demand(
-        group_blocks,
-        interval_min=readings.interval_min,
-        power_factor=unit.power_factor,
-        settings=settings,
-        group=group,
-        resolution_kw=shared_resolution(readings) * allowance,
-        record_c=record_by_class(loaded.record, days),
-        rng=rng,
-    )
+
+    def modelled(changed: Group, changed_blocks: Sequence[DayBlock], resolution_kw: float) -> GroupDemand:
+        return group_demand(
+            changed_blocks,
+            interval_min=readings.interval_min,
+            power_factor=unit.power_factor,
+            settings=settings,
+            group=changed,
+            resolution_kw=resolution_kw,
+            record_c=record_by_class(loaded.record, days),
+            rng=np.random.default_rng(asked.study.seed),
+        )
+
+    def rebuilt(planned: Sequence[Planned], factors: Mapping[str, float]) -> GroupDemand:
+        changed, changed_blocks = with_more(group, group_blocks, planned, factors)
+        return modelled(changed, changed_blocks, 0.0 if factors else resolution)
+
+    resolution = shared_resolution(readings) * allowance
+    demand = modelled(group, group_blocks, resolution)
     if not demand.covered().any():
         reason = "the readings leave no demand interval with at least two days"
         return TransformerResults(id=unit.id, reason=reason, installed_kva=unit.installed_kva)
@@ -363,6 +377,14 @@ def one_transformer(
             **temperature_figures(lived, missing_for_life(unit)),
         },
     )
+    scenarios, rooms = load_to_come(
+        asked,
+        demand,
+        ratings,
+        profiles=loaded.profiles,
+        customers=numbers_by_class(served.customers),
+        rebuild=rebuilt,
+    )
     shown = list(loadings(demand, asked.allowed_loading).values())[-1]
     return TransformerResults(
         id=unit.id,
@@ -379,14 +401,19 @@ def one_transformer(
         selection=selection,
         peaks=together.peaks({f"{rating:g} kVA": rating * shown for rating in ratings}, rng),
         diversity=diversity(
-            demand.blocks,
+            [scaled(block, usable[served.group.served], allowance) for block in blocks],
             interval_min=readings.interval_min,
             power_factor=unit.power_factor,
             rng=rng,
             rating_kva=unit.installed_kva,
+            rusck=asked.rusck,
+            velander=asked.velander,
+            tables=asked.diversity_table,
         )
-        if demand.blocks[0].kw.shape[0]
+        if served.group.served.any()
         else None,
+        scenarios=scenarios,
+        headroom=rooms,
         thermal=lived,
         losses=losses(
             demand,

@@ -144,6 +144,36 @@ def with_unmetered_block(
     ), extended
 
 
+def numbers_by_class(customers: Sequence[Customer]) -> dict[str, int]:
+    """Number of customers of each class. [-]"""
+    found: dict[str, int] = {}
+    for customer in customers:
+        found[customer.customer_class] = found.get(customer.customer_class, 0) + customer.count
+    return found
+
+
+def with_more(
+    group: Group, blocks: Sequence[DayBlock], planned: Sequence[Planned], factors: Mapping[str, float]
+) -> tuple[Group, list[DayBlock]]:
+    """The group with further customers, and with the readings of some classes multiplied.
+
+    Parameters
+    ----------
+    group, blocks
+        The group as it is.
+    planned : sequence of Planned
+        Customers to come.
+    factors : mapping of str to float
+        Factor on every reading of a class; 1 where a class is not named. [-]
+    """
+    own = np.array([factors.get(name, 1.0) for name in group.classes])
+    grown = [replace(block, kw=block.kw * own[:, None, None]) if factors else block for block in blocks]
+    before = [
+        replace(entry, annual_kwh=entry.annual_kwh * factors.get(entry.customer_class, 1.0)) for entry in group.planned
+    ]
+    return replace(group, planned=(*before, *planned)), grown
+
+
 def settings_of(keys: ModelKeys) -> ModelSettings:
     """Settings of the demand model that the study file asks for."""
     standard = ModelSettings()

@@ -1,10 +1,12 @@
 """Meter files of a study -> readings aligned to its demand interval, with the choices made for each file."""
 
 import datetime as dt
-from dataclasses import dataclass
+from collections.abc import Mapping
+from dataclasses import dataclass, field
 from pathlib import Path
 
 import numpy as np
+from numpy.typing import NDArray
 
 from loadsum.errors import Fault, InputError
 from loadsum.intake.align import Matrix, aligned
@@ -12,6 +14,7 @@ from loadsum.intake.clock import grid_phase_s, local_calendar, zone
 from loadsum.intake.findings import Finding
 from loadsum.intake.grouprules import judged
 from loadsum.intake.inputs import InputFile, digest, matching
+from loadsum.intake.profile import read_profiles
 from loadsum.intake.readers.formats import read_file
 from loadsum.intake.readings import Readings, TemperatureRecord
 from loadsum.intake.reconcile import Reconciliation, reconciled
@@ -38,6 +41,8 @@ class Loaded:
         Longer record over which the year is mixed; None where none was given.
     reconciliation : Reconciliation or None
         Sum of the customers against a meter of the group; None where none was given.
+    profiles : mapping of str to (D, I) float64
+        Demand of one device by the name of its profile file. [kW]
     """
 
     readings: Readings
@@ -45,6 +50,7 @@ class Loaded:
     temperature: TemperatureRecord | None
     record: TemperatureRecord | None
     reconciliation: Reconciliation | None = None
+    profiles: Mapping[str, NDArray[np.float64]] = field(default_factory=dict)
 
 
 def load_readings(study: Study, folder: Path) -> Loaded:
@@ -79,6 +85,12 @@ def load_readings(study: Study, folder: Path) -> Loaded:
             rows_in += rows
             inputs.append(file)
     temperature, record = _temperatures(study, folder, place, interval_min, inputs, faults)
+    profiles: Mapping[str, NDArray[np.float64]] = {}
+    try:
+        profiles, described = read_profiles(study, folder)
+        inputs.extend(described)
+    except InputError as error:
+        faults.extend(error.faults)
     if faults:
         raise InputError("the study's files", faults)
     phase_s = grid_phase_s(place, interval_min)
@@ -120,7 +132,12 @@ def load_readings(study: Study, folder: Path) -> Loaded:
         rows_in=rows_in,
     )
     return Loaded(
-        readings=readings, inputs=tuple(inputs), temperature=temperature, record=record, reconciliation=comparison
+        readings=readings,
+        inputs=tuple(inputs),
+        temperature=temperature,
+        record=record,
+        reconciliation=comparison,
+        profiles=profiles,
     )
 
 

@@ -6,6 +6,41 @@ import numpy as np
 from numpy.typing import NDArray
 
 from loadsum.errors import Fault, InputError
+from loadsum.intake.inputs import InputFile, digest
+from loadsum.study.tables import Study
+
+
+def read_profiles(study: Study, folder: Path) -> tuple[dict[str, NDArray[np.float64]], tuple[InputFile, ...]]:
+    """Every profile that the additions of a study name, by its name in the study file, and what was read.
+
+    Raises
+    ------
+    InputError
+        Faults of all profiles together.
+    """
+    found: dict[str, NDArray[np.float64]] = {}
+    inputs: list[InputFile] = []
+    faults: list[Fault] = []
+    for name in dict.fromkeys(row.profile for row in study.addition if row.profile):
+        try:
+            found[name] = read_profile(folder / name, study.study.demand_interval_min)
+        except InputError as error:
+            faults.extend(error.faults)
+            continue
+        sha256, size = digest(folder / name)
+        inputs.append(
+            InputFile(
+                name=name,
+                sha256=sha256,
+                bytes=size,
+                format="delimited text",
+                layout="one row a day",
+                choices=("demand of one device in kW",),
+            )
+        )
+    if faults:
+        raise InputError("profiles", faults)
+    return found, tuple(inputs)
 
 
 def read_profile(path: Path, interval_min: int) -> NDArray[np.float64]:

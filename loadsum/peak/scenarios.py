@@ -1,6 +1,6 @@
 """Load to come, side by side: what each scenario does to the exceedance of each rating, and when it first fails."""
 
-from collections.abc import Callable, Sequence
+from collections.abc import Callable, Mapping, Sequence
 from dataclasses import dataclass
 from typing import Literal
 
@@ -16,7 +16,7 @@ GrowthOf = Literal["every reading", "number of customers", "customer class"]
 Meets = Callable[[GroupDemand, float], bool | None]
 """Whether a rating meets every criterion; None where the data do not decide."""
 
-Rebuild = Callable[[Sequence[Planned], dict[str, float]], GroupDemand]
+Rebuild = Callable[[Sequence[Planned], Mapping[str, float]], GroupDemand]
 """Demand model of the group with further customers, and with the readings of some classes multiplied."""
 
 
@@ -167,7 +167,8 @@ def scenario_demand(demand: GroupDemand, scenario: Scenario, *, rebuild: Rebuild
     ValueError
         The scenario needs ``rebuild`` and there is none, or names more outages than it can.
     """
-    planned, factors, whole = list(scenario.customers), {}, 1.0
+    planned, whole = list(scenario.customers), 1.0
+    factors: dict[str, float] = {}
     if scenario.growth is not None and year:
         grown = (1.0 + scenario.growth.pct_per_year / 100.0) ** year
         if scenario.growth.of == "every reading":

@@ -17,11 +17,13 @@ from loadsum.intake.findings import Finding
 from loadsum.intake.inputs import InputFile
 from loadsum.peak.diversity import Diversity
 from loadsum.peak.peaks import Peaks
+from loadsum.peak.scenarios import ScenarioResult
 from loadsum.report.energybymonth import CustomerMonths
 from loadsum.report.hourmap import HourMap
 from loadsum.report.quality import QualityCalendar
 from loadsum.study.assumptions import Assumption
 from loadsum.study.tables import Heading, Person
+from loadsum.transformer.headroom import Headroom
 from loadsum.transformer.life import Life
 from loadsum.transformer.losses import Losses
 from loadsum.transformer.selection import Selection
@@ -208,6 +210,8 @@ class TransformerResults:
     selection: Selection | None = None
     peaks: Peaks | None = None
     diversity: Diversity | None = None
+    scenarios: tuple[ScenarioResult, ...] = ()
+    headroom: tuple[Headroom, ...] = ()
     thermal: Life | None = None
     losses: Losses | None = None
     evidence: HoldOut | None = None
