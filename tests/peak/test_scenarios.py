@@ -186,7 +186,7 @@ def test_headroom_says_what_limits_it_and_when_the_search_ended_first():
         [10.0],
         "block of 1 kW",
         lambda n: with_added(base, [profiled("block", n, np.ones((1, 24)), synchronised=True)]),
-        meets(0.0),
+        meets(1e-6),
         kw_each=1.0,
         limited_by=lambda demand, rating: "exceedance hours per year",
     )
