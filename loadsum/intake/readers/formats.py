@@ -8,6 +8,7 @@ from pathlib import Path
 from loadsum.intake.findings import Finding
 from loadsum.intake.inputs import unpacked
 from loadsum.intake.instants import timed_readings
+from loadsum.intake.readers.channels import read_nem12
 from loadsum.intake.readers.delimited import read_delimited
 from loadsum.intake.timed import Timed
 from loadsum.study.tables import MeterFiles
@@ -46,6 +47,11 @@ def read_file(path: Path, source: MeterFiles, place: dt.tzinfo, findings: list[F
         The format needs an optional package.
     """
     for name, content in unpacked(path):
+        if source.format == "nem12":
+            choices: list[str] = []
+            timed, rows = read_nem12(content, name, findings, choices)
+            yield FileReadings(timed=timed, rows=rows, layout="records", choices=choices)
+            continue
         raw = read_delimited(content, name, source)
         del content
         choices = list(raw.choices)
