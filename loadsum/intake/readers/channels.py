@@ -8,7 +8,7 @@ from numpy.typing import NDArray
 from loadsum.errors import Fault, InputError
 from loadsum.intake.findings import Finding
 from loadsum.intake.readers.nem12 import CHANNELS, LENGTHS, Channel, parse_nem12
-from loadsum.intake.timed import Timed, left_out, picked
+from loadsum.intake.timed import Timed, joined, left_out, picked
 
 MARKET_OFFSET_S = 10 * 3600  # market time is ten hours ahead of UTC all year (provenance: memory)
 
@@ -78,7 +78,7 @@ def read_nem12(content: bytes, name: str, findings: list[Finding], choices: list
                 )
     if not parts:
         raise InputError(name, [Fault(name, "holds no channel of active energy")])
-    return _joined(parts), rows
+    return joined(parts), rows
 
 
 @dataclass(frozen=True, slots=True, kw_only=True, eq=False)
@@ -216,19 +216,3 @@ def _left_out(part: Timed, channels: list[ChannelDays], findings: list[Finding])
     ):
         findings.extend(left_out(part, chosen, rule, f"reading(s) {what}", "they count as missing"))
     return picked(part, ~absent)
-
-
-def _joined(parts: list[Timed]) -> Timed:
-    reactive = any(part.kvar is not None for part in parts)
-    none = [np.full(part.kw.size, np.nan) if part.kvar is None else part.kvar for part in parts]
-    return Timed(
-        name=parts[0].name,
-        customers=parts[0].customers,
-        customer=np.concatenate([part.customer for part in parts]),
-        start_s=np.concatenate([part.start_s for part in parts]),
-        minutes=np.concatenate([part.minutes for part in parts]),
-        kw=np.concatenate([part.kw for part in parts]),
-        kvar=np.concatenate(none) if reactive else None,
-        estimated=np.concatenate([part.estimated for part in parts]),
-        line=np.concatenate([part.line for part in parts]),
-    )
