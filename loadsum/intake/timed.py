@@ -89,6 +89,25 @@ def picked(part: Timed, keep: NDArray[np.bool_]) -> Timed:
     )
 
 
+def joined(parts: Sequence[Timed]) -> Timed:
+    """Readings of parts that share one list of customers, one after the other."""
+    if len(parts) == 1:
+        return parts[0]
+    reactive = any(part.kvar is not None for part in parts)
+    kvar = [np.full(part.kw.size, np.nan) if part.kvar is None else part.kvar for part in parts]
+    return Timed(
+        name=parts[0].name,
+        customers=parts[0].customers,
+        customer=np.concatenate([part.customer for part in parts]),
+        start_s=np.concatenate([part.start_s for part in parts]),
+        minutes=np.concatenate([part.minutes for part in parts]),
+        kw=np.concatenate([part.kw for part in parts]),
+        kvar=np.concatenate(kvar) if reactive else None,
+        estimated=np.concatenate([part.estimated for part in parts]),
+        line=np.concatenate([part.line for part in parts]),
+    )
+
+
 def total(parts: Sequence[Timed]) -> int:
     """Readings of all files. [-]"""
     return sum(part.start_s.size for part in parts)

@@ -8,7 +8,9 @@ from pathlib import Path
 from loadsum.intake.findings import Finding
 from loadsum.intake.inputs import unpacked
 from loadsum.intake.instants import timed_readings
+from loadsum.intake.readers.channels import read_nem12
 from loadsum.intake.readers.delimited import read_delimited
+from loadsum.intake.readers.usage import read_espi
 from loadsum.intake.timed import Timed
 from loadsum.study.tables import MeterFiles
 
@@ -46,6 +48,14 @@ def read_file(path: Path, source: MeterFiles, place: dt.tzinfo, findings: list[F
         The format needs an optional package.
     """
     for name, content in unpacked(path):
+        choices: list[str] = []
+        if source.format in ("nem12", "espi"):
+            if source.format == "nem12":
+                timed, rows = read_nem12(content, name, findings, choices)
+            else:
+                timed, rows = read_espi(content, name, source, findings, choices)
+            yield FileReadings(timed=timed, rows=rows, layout="records", choices=choices)
+            continue
         raw = read_delimited(content, name, source)
         del content
         choices = list(raw.choices)
