@@ -246,3 +246,8 @@ def test_a_failed_hold_out_test_is_a_caution_on_page_1(results: dict[str, Any]) 
     text = page_text(failed)
     place = text.index("Caution. Held-out demand exceeded the 99 % level 3.1 % of the time")
     assert place < text.index("Finding")
+
+
+def test_the_caution_on_personal_data_says_what_the_document_really_shows(results: dict[str, Any]) -> None:
+    assert "show customers under the identifiers of the study file" in page_text(results)
+    assert "identifiers are replaced by pseudonyms" in page_text({**results, "pseudonymised": True})
