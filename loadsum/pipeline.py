@@ -97,7 +97,7 @@ def study(path: Path, *, out: Path, progress: Progress, overrides: Sequence[str]
     if not asked.privacy.raw_identifiers:
         key, made = key_beside(path, asked.privacy.key_file)
         named = pseudonyms(identifiers(asked, results), key)
-        results, study_file = named.results(results), named.toml(study_file)
+        results, study_file = {**named.results(results), "pseudonymised": True}, named.toml(study_file)
         if made:
             said.append(f"customers have pseudonyms; keep their key: {path.parent / asked.privacy.key_file}")
     progress("drawing the report", 0.8)

@@ -221,7 +221,13 @@ class TransformerResults:
 
 @dataclass(frozen=True, slots=True, kw_only=True, eq=False)
 class StudyResults:
-    """Everything a study found."""
+    """Everything a study found.
+
+    Parameters
+    ----------
+    pseudonymised : bool
+        Whether customers stand under pseudonyms; the report says which it is.
+    """
 
     schema_version: int
     program: Program
@@ -233,6 +239,7 @@ class StudyResults:
     quality: QualityCalendar
     transformers: tuple[TransformerResults, ...]
     months: tuple[CustomerMonths, ...] = ()
+    pseudonymised: bool = False
 
 
 def encode(value: Any) -> Any:

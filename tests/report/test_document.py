@@ -1,5 +1,7 @@
 import copy
 import io
+import random
+import re
 from collections.abc import Sequence
 from typing import Any
 
@@ -7,7 +9,7 @@ import pikepdf
 import pytest
 
 from loadsum.report.archive import Attachment
-from loadsum.report.document import render
+from loadsum.report.document import compose, render
 from tests.report.pdf_structure import elements, structure_faults
 
 
@@ -57,3 +59,18 @@ def test_running_titles_are_outside_the_reading_order(report: bytes) -> None:
         stream = pdf.pages[1].Contents.read_bytes()
     assert b"/Pagination" in stream
     assert {"/H1", "/P", "/Table", "/Figure", "/Form"} <= kinds
+
+
+@pytest.mark.parametrize("seed", range(6))
+def test_figures_that_are_missing_here_and_there_leave_gaps_and_no_crash(results: dict[str, Any], seed: int) -> None:
+    dice = random.Random(seed)
+
+    def holed(value: Any) -> Any:
+        if isinstance(value, dict):
+            return {name: holed(item) if name != "quality" else item for name, item in value.items()}
+        if isinstance(value, list):
+            return [holed(item) for item in value]
+        return None if isinstance(value, float) and dice.random() < 0.02 else value
+
+    html, _, _ = compose(holed(results), attachments=(), overrides=None)
+    assert re.findall(r">None<|\bNone[ .,]k|\bnan\b", html) == []

@@ -234,3 +234,20 @@ def test_extracted_text_keeps_the_reading_order_of_the_pages(report: bytes, tmp_
         )
     ]
     assert places == sorted(places)
+
+
+def test_a_failed_hold_out_test_is_a_caution_on_page_1(results: dict[str, Any]) -> None:
+    failed = copy.deepcopy(results)
+    failed["transformers"][0]["evidence"].update(
+        passed=False,
+        sentence="Held-out demand exceeded the 99 % level 3.1 % of the time, expected 1 %: treat exceedance below"
+        " 1 % as understated.",
+    )
+    text = page_text(failed)
+    place = text.index("Caution. Held-out demand exceeded the 99 % level 3.1 % of the time")
+    assert place < text.index("Finding")
+
+
+def test_the_caution_on_personal_data_says_what_the_document_really_shows(results: dict[str, Any]) -> None:
+    assert "show customers under the identifiers of the study file" in page_text(results)
+    assert "identifiers are replaced by pseudonyms" in page_text({**results, "pseudonymised": True})

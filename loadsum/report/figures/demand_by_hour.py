@@ -16,7 +16,8 @@ BANDS = (("q90_kw", 0.1, "#8f8f8f"), ("q99_kw", 0.01, "#bdbdbd"), ("q999_kw", 0.
 
 def figure(m: Material, unit: Unit) -> DrawnFigure | None:
     """The class of days with the highest 99 % level, and beside it the one with the lowest."""
-    rows = [row for row in unit.rows("hours") if row.get("q50_kw") is not None]
+    wanted = ("interval", "q50_kw", "q90_kw", "q99_kw", "q999_kw")
+    rows = [row for row in unit.rows("hours") if all(row.get(name) is not None for name in wanted)]
     if not rows:
         return None
     by_class: dict[tuple[str, str], list[Mapping[str, Any]]] = {}
@@ -58,7 +59,7 @@ def ratings_kw(unit: Unit) -> list[tuple[float, float]]:
     """Each rating of the study, and its nameplate at the group's power factor. [kVA, kW]"""
     pf = unit.results.get("power_factor") or 1.0
     ratings = (unit.part("hour_map") or {}).get("ratings_kva") or unit.part("ratings_kva") or ()
-    return [(float(rating), float(rating) * pf) for rating in ratings]
+    return [(float(rating), float(rating) * pf) for rating in ratings if rating is not None]
 
 
 def _supports(rows: Sequence[Mapping[str, Any]], probability: float) -> bool:

@@ -19,21 +19,24 @@ def figure(m: Material, unit: Unit) -> DrawnFigure | None:
     curve = unit.part("curve")
     if not curve or not curve.get("levels_kw"):
         return None
-    levels, adopted = values(curve, "levels_kw"), values(curve, "adopted")
+    whole = whole_points(curve)
+    levels, adopted = values(curve, "levels_kw")[whole], values(curve, "adopted")[whole]
+    if levels.size < 2:
+        return None
     floor = pooled_floor(unit)
     lowest = 10.0 ** np.floor(np.log10(floor / 12.0))
-    lines = {name: values(curve, name) for name in MODELS if curve.get(name)}
+    lines = {name: values(curve, name)[whole] for name in MODELS if curve.get(name)}
     right = _right_edge(levels, lines, lowest, [kw for _, kw in ratings_kw(unit)])
     with plate(84.0) as fig:
         ax = axes_mm(fig, 19.0, 11.0, 40.0, 7.0)
         if curve.get("lower") and curve.get("upper"):
-            low, high = (np.clip(values(curve, name), lowest / 100.0, 1.0) for name in ("lower", "upper"))
+            low, high = (np.clip(values(curve, name)[whole], lowest / 100.0, 1.0) for name in ("lower", "upper"))
             ax.fill_between(levels, low, high, color="#bdbdbd", linewidth=0)
         for name, line in lines.items():
             colour, dashes, width = MODELS[name]
             ax.plot(levels, line, color=colour, linestyle=dashes, linewidth=width)
         if curve.get("observed"):
-            observed = values(curve, "observed")
+            observed = values(curve, "observed")[whole]
             some = np.flatnonzero(observed > 0)[::3]
             ax.plot(levels[some], observed[some], "o", markersize=1.8, color=INK, fillstyle="none", markeredgewidth=0.5)
         decades(ax, "y", lowest, 1.0, lambda share: m.n.percent(share, 1))
@@ -58,6 +61,12 @@ def figure(m: Material, unit: Unit) -> DrawnFigure | None:
         alt=_alt(m, unit, levels, lines, adopted),
         figure=fig,
     )
+
+
+def whole_points(curve: Mapping[str, Any]) -> NDArray[np.bool_]:
+    """Points of the curve at which every line has a value."""
+    names = [name for name in ("levels_kw", "lower", "upper", *MODELS) if curve.get(name)]
+    return np.asarray(np.isfinite([values(curve, name) for name in names]).all(axis=0))
 
 
 def pooled_floor(unit: Unit) -> float:
@@ -85,10 +94,10 @@ def _intervals(ax: Any, unit: Unit, lowest: float) -> None:
     hours = (unit.part("coverage") or {}).get("covered_hours") or 8766.0
     pf = unit.results.get("power_factor") or 1.0
     for row in exceedance_rows(unit.results):
-        low, high = row.get("hours_low"), row.get("hours_high")
-        if low is not None and high is not None and high / hours > lowest:
-            kw = row["level_kva"] * pf
-            ax.plot([kw, kw], [max(low / hours, lowest), high / hours], color=INK, linewidth=2.6, solid_capstyle="butt")
+        low, high, level = row.get("hours_low"), row.get("hours_high"), row.get("level_kva")
+        if low is not None and high is not None and level is not None and high / hours > lowest:
+            ends = [max(low / hours, lowest), high / hours]
+            ax.plot([level * pf] * 2, ends, color=INK, linewidth=2.6, solid_capstyle="butt")
 
 
 def _name_lines(

@@ -1,8 +1,10 @@
 """Hot-spot temperature and ageing of each rating, as distributions."""
 
+from collections.abc import Mapping
 from typing import Any
 
 import numpy as np
+from numpy.typing import NDArray
 
 from loadsum.report.figures.plate import GREY, INK, DrawnFigure, axes_mm, plate
 from loadsum.report.material import Material, Unit
@@ -25,7 +27,7 @@ def figure(m: Material, unit: Unit) -> DrawnFigure | None:
         right = axes_mm(fig, 93.0, 11.0, 13.0, 5.0)
         for index, row in enumerate(rows[: len(DASHES)]):
             for ax, name in ((left, "hot_spot_quantiles_c"), (right, "ageing_quantiles_pu")):
-                values = np.array(row[name], dtype=np.float64)
+                values = _known(row, name)
                 if name.endswith("_c") and m.fahrenheit:
                     values = 1.8 * values + 32.0
                 share = 1.0 - (np.arange(values.size) + 0.5) / values.size
@@ -66,8 +68,8 @@ def figure(m: Material, unit: Unit) -> DrawnFigure | None:
         m.t(
             f"figure.{NAME}.alt_part",
             rating=m.kva(row["rating_kva"]),
-            temperature=m.temperature(float(np.median(row["hot_spot_quantiles_c"]))),
-            ageing=m.n.significant(float(np.median(row["ageing_quantiles_pu"])), 2),
+            temperature=m.temperature(float(np.median(_known(row, "hot_spot_quantiles_c")))),
+            ageing=m.n.significant(float(np.median(_known(row, "ageing_quantiles_pu"))), 2),
         )
         for row in rows
     ]
@@ -78,3 +80,8 @@ def figure(m: Material, unit: Unit) -> DrawnFigure | None:
         alt=m.t(f"figure.{NAME}.alt", parts=" ".join(parts)),
         figure=fig,
     )
+
+
+def _known(row: Mapping[str, Any], name: str) -> NDArray[np.float64]:
+    """Quantiles of one rating, without those that are not numbers."""
+    return np.array([value for value in row[name] if value is not None], dtype=np.float64)

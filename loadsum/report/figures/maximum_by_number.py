@@ -14,7 +14,7 @@ LAWS = ((BLUE, (0, (7, 2))), (ORANGE, (0, (2.2, 1.3))), (GREEN, (0, (7, 1.6, 1.2
 def figure(m: Material, unit: Unit) -> DrawnFigure | None:
     """Expected maximum and its 90 % level for groups of the class, and what each law gives."""
     growth = (unit.part("diversity") or {}).get("growth")
-    if not growth or len(growth.get("customers") or ()) < 2:
+    if not growth or len(growth.get("customers") or ()) < 2 or None in growth["customers"]:
         return None
     n = np.array(growth["customers"], dtype=np.float64)
     lines: list[tuple[str, Any, str, Any, float]] = [

@@ -2,7 +2,7 @@
 
 import numpy as np
 
-from loadsum.report.figures.exceedance_curve import pooled_floor, values
+from loadsum.report.figures.exceedance_curve import pooled_floor, values, whole_points
 from loadsum.report.figures.plate import GREY, INK, MODELS, DrawnFigure, axes_mm, decades, plate
 from loadsum.report.material import Material, Unit
 
@@ -16,7 +16,7 @@ def figure(m: Material, unit: Unit) -> DrawnFigure | None:
         return None
     adopted = values(curve, "adopted")
     floor = pooled_floor(unit)
-    inside = (adopted <= 0.5) & (adopted >= floor) & np.isfinite(adopted)
+    inside = (adopted <= 0.5) & (adopted >= floor) & whole_points(curve)
     if inside.sum() < 5:
         return None
     share = adopted[inside]

@@ -10,6 +10,7 @@ from loadsum.report.sections.verdict import exceedance_of, exceedance_rows, meet
 
 MOST_ON_FIRST_PAGE = 8
 MOST_RATINGS = 6
+MOST_WARNINGS = 3
 
 
 def content(m: Material) -> dict[str, Any]:
@@ -159,10 +160,23 @@ def _rests_on(m: Material) -> list[str]:
         lines.append(m.t("first_page.assumptions", count=count))
     if not any(unit.part("evidence") for unit in m.units):
         lines.append(m.t("first_page.no_hold_out"))
-    sentences = [str((unit.part("evidence") or {}).get("sentence") or "") for unit in m.units]
+    sentences = [text for unit in m.units for text, passed in _tested(unit) if passed]
     lines.extend([text for text in dict.fromkeys(sentences) if text][:2])
     return lines
 
 
 def _warnings(m: Material) -> list[str]:
-    return [str(text) for text in m.results.get("warnings") or []]
+    """Warnings of the study, and every hold-out test that the model failed, in its own words."""
+    failed = [
+        (m.t("word.transformer", id=unit.id) + ": " if unit.several else "") + text
+        for unit in m.units
+        for text, passed in _tested(unit)
+        if not passed
+    ]
+    return [*(str(text) for text in m.results.get("warnings") or []), *failed][:MOST_WARNINGS]
+
+
+def _tested(unit: Unit) -> Sequence[tuple[str, bool]]:
+    """The hold-out test's sentence and whether the model passed; empty where there was no test."""
+    found = unit.part("evidence") or {}
+    return [(str(found["sentence"]), found.get("passed") is not False)] if found.get("sentence") else []
