@@ -156,16 +156,15 @@ def _table(n: int, nodes: NDArray[np.int64], length: int) -> _Table | None:
     return None
 
 
-@lru_cache(maxsize=256)
+@lru_cache(maxsize=16)
 def _chebyshev(n: int, points: int) -> tuple[NDArray[np.float64], NDArray[np.float64]]:
     """Values at 0 .. n - 1 of the polynomials that are one at one of the points, (n, points), and the points."""
     angle = (np.arange(points) + 0.5) * (np.pi / points)
-    order = np.arange(points)
-    x = np.arange(n) * (2.0 / (n - 1)) - 1.0
-    basis = np.cos(np.outer(np.arccos(np.clip(x, -1.0, 1.0)), order))
-    back = np.cos(np.outer(order, angle)) * np.where(order == 0, 1.0, 2.0)[:, None] / points
-    gather = basis @ back
     places = (np.cos(angle) + 1.0) * (0.5 * (n - 1))
+    away = np.arange(n)[:, None] - places
+    hit = away == 0.0
+    shares = np.where(np.arange(points) % 2, -1.0, 1.0) * np.sin(angle) / np.where(hit, 1.0, away)
+    gather = np.where(hit.any(axis=1)[:, None], hit, shares / shares.sum(axis=1)[:, None])  # barycentric formula
     gather.flags.writeable = places.flags.writeable = False
     return gather, places
 
