@@ -126,5 +126,5 @@ def test_expected_hours_lie_near_the_hours_observed_at_a_level_often_passed(resu
     (unit,) = results["transformers"]
     limit_kw = 25 * 0.95
     observed = sum(float((columns.sum(axis=0) > limit_kw).sum()) for columns in classes.values())
-    row = next(r for r in unit["exceedance"]["nameplate"]["rows"] if r["rating_kva"] == 25)
-    assert row["expected_h"] == pytest.approx(observed, rel=0.25)
+    row = next(r for r in unit["exceedance"] if r["rating_kva"] == 25 and r["of"] == "nameplate")
+    assert row["hours_per_year"] == pytest.approx(observed, rel=0.25)
