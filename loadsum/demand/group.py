@@ -275,7 +275,7 @@ class _Block:
             scale = max(target - held, 0.0) ** 0.5 / (1.0 + width**2) ** 0.5
             still = with_term(still, shape * scale, np.full(shape.size, 1.0 / shape.size), width * scale)
         if self.settings.mean_uncertainty:
-            still = with_normal(still, mean_variance_kw2**0.5)
+            still = with_normal(still, (mean_variance_kw2 + target * _spread_uncertainty(self._days(adjusted))) ** 0.5)
         total = self._over_the_record(still, response)
         whole_down, whole_up = plain_distributions(total)
         nearest = DemandSum(
@@ -371,6 +371,11 @@ class _Block:
             record_days_outside=outside,
             share_below_zero=max(below, default=0.0),
         )
+
+
+def _spread_uncertainty(days: int) -> float:
+    """Share by which not knowing the variance widens a predictive law: that of Student's law with days - 1. [-]"""
+    return 2.0 / (days - 3) if days > 4 else 2.0
 
 
 def _nearest(values: NDArray[np.float64], step: float, weights: NDArray[np.float64] | None) -> LatticeMass:
