@@ -3,6 +3,7 @@
 from loadsum.demand.hourly import GroupDemand
 from loadsum.demand.served import Served
 from loadsum.study.assumptions import Assumption
+from loadsum.study.record import transformer_record
 from loadsum.study.tables import Study, Transformer
 from loadsum.transformer.loading import seasons_without_allowance
 
@@ -34,6 +35,7 @@ def assumptions(asked: Study, unit: Transformer, served: Served, demand: GroupDe
             decided_by=FILE if unit.unmetered_kw else DEFAULT,
         ),
     ]
+    listed += transformer_record(unit)
     missing = seasons_without_allowance(demand, asked.allowed_loading)
     if asked.allowed_loading and missing:
         listed.append(
