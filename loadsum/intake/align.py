@@ -97,6 +97,9 @@ def aligned(parts: Sequence[Timed], interval_min: int, phase_s: int = 0) -> tupl
     cells = [grid.cells(part, grid.part_min) for part in parts]
     keep = without_duplicates(parts, cells, len(grid.row) * grid.slots * (interval_min // grid.part_min), findings)
     parts = [picked(part, kept) for part, kept in zip(parts, keep, strict=True)]
+    cells = [cell if kept.all() else cell[kept] for cell, kept in zip(cells, keep, strict=True)]
+    if all((part.minutes == interval_min).all() for part in parts):
+        return _scattered(parts, cells, grid, findings), []
     del cells, keep
     return _averaged(parts, grid, findings), []
 
@@ -117,6 +120,8 @@ def _on_grid(part: Timed, interval_min: int, phase_s: int, findings: list[Findin
     """Readings that lie within one demand interval and begin on a whole multiple of their own length."""
     length = part.minutes * 60
     since = (part.start_s - phase_s) % (interval_min * 60)
+    if not since.any():
+        return part
     off = (since % length != 0) | (since + length > interval_min * 60)
     if not off.any():
         return part
@@ -156,52 +161,63 @@ def _distinct(minutes: NDArray[np.int64]) -> NDArray[np.int64]:
     return minutes[:1] if minutes.strides == (0,) else np.unique(minutes)
 
 
-def _averaged(parts: Sequence[Timed], grid: Grid, findings: list[Finding]) -> Matrix:
+def _scattered(
+    parts: Sequence[Timed], cells: Sequence[NDArray[np.int64]], grid: Grid, findings: list[Finding]
+) -> Matrix:
+    """Readings of the demand interval itself, each in its cell."""
     shape = (len(grid.row), grid.slots)
     size = shape[0] * shape[1]
     reactive = any(part.kvar is not None for part in parts)
-    start = grid.first_s + np.arange(grid.slots, dtype=np.int64) * grid.interval_min * 60
-    kw, kvar = np.full(size, np.nan), np.full(size, np.nan) if reactive else None
-    guess = np.zeros(size, bool)
-    behind: NDArray[np.integer] = np.broadcast_to(np.int16(1), (size,))
-    whole = np.array([part.start_s.size == 0 or bool((part.minutes == grid.interval_min).all()) for part in parts])
-    if whole.all():
-        for part in parts:
-            cell = grid.cells(part, grid.interval_min)
-            kw[cell] = part.kw
-            if kvar is not None and part.kvar is not None:
-                kvar[cell] = part.kvar
-            if part.estimated.any():
-                guess[cell] |= part.estimated
-    else:
-        filled, energy = np.zeros(size, np.int32), np.zeros(size)
-        behind = np.zeros(size, np.int16)
-        twice = np.zeros(size, bool)
-        quarter = np.zeros(size) if reactive else None
-        for part in parts:
-            cell = grid.cells(part, grid.interval_min)
-            behind += np.bincount(cell, minlength=size).astype(np.int16)
-            filled += np.bincount(cell, weights=part.minutes, minlength=size).astype(np.int32)
-            energy += np.bincount(cell, weights=part.kw * part.minutes, minlength=size)
-            if quarter is not None:
-                own = part.kvar if part.kvar is not None else np.full(part.kw.size, np.nan)
-                quarter += np.bincount(cell, weights=own * part.minutes, minlength=size)
-            guess |= np.bincount(cell, weights=part.estimated, minlength=size) > 0.0
-        _mark_covered_twice(parts, grid, twice)
-        good = (filled == grid.interval_min) & ~twice
-        kw = np.where(good, energy / grid.interval_min, np.nan)
-        kvar = None if quarter is None else np.where(good, quarter / grid.interval_min, np.nan)
-        guess &= good
-        for part in parts:
-            lost = ~good[grid.cells(part, grid.interval_min)]
-            message = f"reading(s) fill only part of a demand interval of {grid.interval_min} min, or fill it twice"
-            findings.extend(left_out(part, lost, "interval not filled", message, "the intervals are left empty"))
+    kw, kvar, guess = np.full(size, np.nan), np.full(size, np.nan) if reactive else None, np.zeros(size, bool)
+    for part, cell in zip(parts, cells, strict=True):
+        kw[cell] = part.kw
+        if kvar is not None and part.kvar is not None:
+            kvar[cell] = part.kvar
+        if part.estimated.any():
+            guess[cell] = part.estimated
     return Matrix(
         customers=tuple(grid.row),
-        start_utc=start,
+        start_utc=_starts(grid),
         kw=kw.reshape(shape),
         kvar=None if kvar is None else kvar.reshape(shape),
         estimated=guess.reshape(shape),
+        readings_behind=np.broadcast_to(np.int16(1), shape),
+        findings=tuple(findings),
+    )
+
+
+def _starts(grid: Grid) -> NDArray[np.int64]:
+    return grid.first_s + np.arange(grid.slots, dtype=np.int64) * (grid.interval_min * 60)
+
+
+def _averaged(parts: Sequence[Timed], grid: Grid, findings: list[Finding]) -> Matrix:
+    """Readings averaged up; an interval that they do not fill exactly once is left empty."""
+    shape = (len(grid.row), grid.slots)
+    size = shape[0] * shape[1]
+    filled, behind, energy = np.zeros(size, np.int32), np.zeros(size, np.int16), np.zeros(size)
+    guess, twice = np.zeros(size, bool), np.zeros(size, bool)
+    quarter = np.zeros(size) if any(part.kvar is not None for part in parts) else None
+    for part in parts:
+        cell = grid.cells(part, grid.interval_min)
+        behind += np.bincount(cell, minlength=size).astype(np.int16)
+        filled += np.bincount(cell, weights=part.minutes, minlength=size).astype(np.int32)
+        energy += np.bincount(cell, weights=part.kw * part.minutes, minlength=size)
+        if quarter is not None:
+            own = part.kvar if part.kvar is not None else np.full(part.kw.size, np.nan)
+            quarter += np.bincount(cell, weights=own * part.minutes, minlength=size)
+        guess |= np.bincount(cell, weights=part.estimated, minlength=size) > 0.0
+    _mark_covered_twice(parts, grid, twice)
+    good = (filled == grid.interval_min) & ~twice
+    for part in parts:
+        lost = ~good[grid.cells(part, grid.interval_min)]
+        message = f"reading(s) fill only part of a demand interval of {grid.interval_min} min, or fill it twice"
+        findings.extend(left_out(part, lost, "interval not filled", message, "the intervals are left empty"))
+    return Matrix(
+        customers=tuple(grid.row),
+        start_utc=_starts(grid),
+        kw=np.where(good, energy / grid.interval_min, np.nan).reshape(shape),
+        kvar=None if quarter is None else np.where(good, quarter / grid.interval_min, np.nan).reshape(shape),
+        estimated=(guess & good).reshape(shape),
         readings_behind=behind.reshape(shape),
         findings=tuple(findings),
     )

@@ -15,8 +15,9 @@ from loadsum.intake.registers import differences
 from loadsum.intake.timed import Timed, left_out, picked
 from loadsum.study.tables import MeterFiles
 
-POWER_KW = {"W": 1e-3, "kW": 1.0, "MW": 1e3}
-ENERGY_KWH = {"Wh": 1e-3, "kWh": 1.0, "MWh": 1e3}
+# Unit -> how many make, and how many are in, a kilowatt (hour): kept apart so that a value is rounded only once.
+POWER_KW = {"W": (1.0, 1e3), "kW": (1.0, 1.0), "MW": (1e3, 1.0)}
+ENERGY_KWH = {"Wh": (1.0, 1e3), "kWh": (1.0, 1.0), "MWh": (1e3, 1.0)}
 
 
 def timed_readings(
@@ -223,13 +224,15 @@ def _as_power(part: Timed, source: MeterFiles, exported: NDArray[np.float64] | N
             "study file",
             [Fault("readings.unit", f"{source.unit} is no unit of {source.quantity}: one of {', '.join(units)}")],
         )
-    scale: float | NDArray[np.float64] = units[source.unit] * source.multiplier
+    times, per = units[source.unit]
+    times *= source.multiplier
+    divisor: float | NDArray[np.float64] = per
     if source.quantity != "power":
         uniform = part.minutes.strides == (0,) and part.minutes.size
-        scale = scale * 60.0 / (int(part.minutes[0]) if uniform else part.minutes)
-    kw = part.kw * scale
+        divisor = per * int(part.minutes[0]) / 60.0 if uniform else np.asarray(per * part.minutes / 60.0, np.float64)
+    kw = part.kw * times / divisor
     if exported is not None:
-        kw = kw - np.nan_to_num(exported) * scale
+        kw = kw - np.nan_to_num(exported) * times / divisor
     return Timed(
         name=part.name,
         customers=part.customers,
@@ -237,7 +240,7 @@ def _as_power(part: Timed, source: MeterFiles, exported: NDArray[np.float64] | N
         start_s=part.start_s,
         minutes=part.minutes,
         kw=kw,
-        kvar=None if part.kvar is None else part.kvar * scale,
+        kvar=None if part.kvar is None else part.kvar * times / divisor,
         estimated=part.estimated,
         line=part.line,
     )

@@ -94,7 +94,7 @@ class ChannelDays:
     day : (D,) int64
         Market day, increasing. [d]
     value : (D, n) float64
-        Energy; NaN where empty, flagged N, or in conflict. [kWh or kvarh]
+        Average power; NaN where empty, flagged N, or in conflict. [kW or kvar]
     observed : (D, n) bool
         Flagged A.
     conflict : (D,) bool
@@ -116,7 +116,7 @@ class ChannelDays:
 
 
 def _once(channel: Channel, name: str, findings: list[Finding]) -> ChannelDays:
-    value = np.array(channel.values) * channel.scale
+    value = np.array(channel.values) / (channel.per_kilo * channel.minutes / 60.0)
     observed, absent = np.ones(value.shape, bool), np.zeros(value.shape, bool)
     for row, flag in enumerate(channel.quality):
         if isinstance(flag, list):
@@ -183,15 +183,14 @@ def _meter(channels: list[ChannelDays], code: int, meters: tuple[str, ...], name
         line[row] = np.where(line[row] == 0, channel.line, line[row])
     length_s = 86400 // count
     start = days[:, None] * 86400 + np.arange(count) * length_s - MARKET_OFFSET_S
-    hours = length_s / 3600.0
     return Timed(
         name=name,
         customers=meters,
         customer=np.full(start.size, code, dtype=np.int32),
         start_s=start.ravel(),
         minutes=np.full(start.size, length_s // 60, dtype=np.int64),
-        kw=sums[False].ravel() / hours,
-        kvar=sums[True].ravel() / hours if any(channel.reactive for channel in channels) else None,
+        kw=sums[False].ravel(),
+        kvar=sums[True].ravel() if any(channel.reactive for channel in channels) else None,
         estimated=~observed.ravel(),
         line=np.repeat(line, count),
     )

@@ -147,19 +147,20 @@ def table_of(text: str, name: str, delimiter: str, source: MeterFiles) -> pd.Dat
             io.StringIO(text),
             sep=delimiter,
             dtype=str,
-            header=None if source.header == "no" else 0,
+            header=None,
             keep_default_na=False,
             skip_blank_lines=False,
-            index_col=False,
             quoting=csv.QUOTE_MINIMAL,
         )
     except (pd.errors.ParserError, pd.errors.EmptyDataError, csv.Error, ValueError) as error:
         raise InputError(name, [Fault(name, f"is not delimited text: {str(error).strip()}")]) from error
-    frame.columns = (
-        [f"column {n + 1}" for n in range(frame.shape[1])]
-        if source.header == "no"
-        else [str(column).strip() for column in frame.columns]
-    )
+    if source.header == "no":
+        frame.columns = [f"column {n + 1}" for n in range(frame.shape[1])]
+    else:
+        names = [str(column).strip() for column in frame.iloc[0].fillna("")]
+        frame = frame.iloc[1:].reset_index(drop=True)
+        frame.columns = names
+    frame = frame.fillna("")  # fields that a short row lacks
     if frame.empty or (frame.shape[1] < 2 and not source.first_stamp):
         raise InputError(
             name, [Fault(name, "holds no table of readings: need a header, a column of stamps and one of values")]

@@ -129,13 +129,13 @@ def _uniform(body: bytes, head: bytes, tail: bytes) -> Block | None:
     with warnings.catch_warnings():
         warnings.simplefilter("error")
         try:
-            numbers = np.fromstring(body.translate(TO_BLANKS), dtype=np.float64, sep=" ")
+            numbers = np.fromstring(body.translate(TO_BLANKS), dtype=np.int64, sep=" ")
         except (DeprecationWarning, ValueError):
             return None
     if numbers.size != number * len(leaves):
         return None
-    table = numbers.reshape(number, len(leaves))
-    if not np.array_equal(table, np.rint(table)) or np.abs(table).max() >= 2.0**53:
+    table = numbers.reshape(number, len(leaves)).astype(np.float64)
+    if np.abs(table).max() >= 2**53:
         return None
 
     def column(leaf: bytes) -> NDArray[np.float64]:

@@ -9,8 +9,10 @@ from loadsum.intake.findings import Finding
 from loadsum.intake.inputs import unpacked
 from loadsum.intake.instants import timed_readings
 from loadsum.intake.readers.channels import read_nem12
-from loadsum.intake.readers.delimited import read_delimited
+from loadsum.intake.readers.delimited import read_delimited, read_table
+from loadsum.intake.readers.parquet import read_parquet
 from loadsum.intake.readers.usage import read_espi
+from loadsum.intake.readers.workbook import read_workbook
 from loadsum.intake.timed import Timed
 from loadsum.study.tables import MeterFiles
 
@@ -47,6 +49,12 @@ def read_file(path: Path, source: MeterFiles, place: dt.tzinfo, findings: list[F
     MissingExtraError
         The format needs an optional package.
     """
+    if source.format == "parquet":
+        for raw in read_parquet(path, path.name, source):
+            said = list(raw.choices)
+            timed = timed_readings(raw, source, place, findings, said)
+            yield FileReadings(timed=timed, rows=int(raw.value.size), layout=raw.layout, choices=said)
+        return
     for name, content in unpacked(path):
         choices: list[str] = []
         if source.format in ("nem12", "espi"):
@@ -56,7 +64,11 @@ def read_file(path: Path, source: MeterFiles, place: dt.tzinfo, findings: list[F
                 timed, rows = read_espi(content, name, source, findings, choices)
             yield FileReadings(timed=timed, rows=rows, layout="records", choices=choices)
             continue
-        raw = read_delimited(content, name, source)
+        if source.format == "workbook":
+            frame = read_workbook(content, name, choices)
+            raw = read_table(frame, name, source, choices)
+        else:
+            raw = read_delimited(content, name, source)
         del content
         choices = list(raw.choices)
         timed = timed_readings(raw, source, place, findings, choices)

@@ -8,14 +8,14 @@ from dataclasses import dataclass, field
 from loadsum.errors import Fault, InputError
 
 LENGTHS = (5, 15, 30)
-# Unit -> (kWh or kvarh of one, whether reactive); written in any case.
+# Unit -> (how many make a kWh or kvarh, whether reactive); written in any case.
 UNITS = {
-    "wh": (1e-3, False),
+    "wh": (1e3, False),
     "kwh": (1.0, False),
-    "mwh": (1e3, False),
-    "varh": (1e-3, True),
+    "mwh": (1e-3, False),
+    "varh": (1e3, True),
     "kvarh": (1.0, True),
-    "mvarh": (1e3, True),
+    "mvarh": (1e-3, True),
 }
 # First letter of a channel -> (reactive, sign as seen from the network); import to the customer is E, export B.
 CHANNELS = {"E": (False, 1.0), "B": (False, -1.0), "Q": (True, 1.0), "K": (True, -1.0)}
@@ -32,7 +32,7 @@ class Channel:
     meter: str
     suffix: str
     minutes: int
-    scale: float
+    per_kilo: float
     day: list[int] = field(default_factory=list)
     line: list[int] = field(default_factory=list)
     values: list[list[float]] = field(default_factory=list)
@@ -150,7 +150,7 @@ def _channel(
         return None
     key = (meter, suffix, int(length), UNITS[unit][0])
     if key not in channels:
-        channels[key] = Channel(meter=meter, suffix=suffix, minutes=int(length), scale=UNITS[unit][0])
+        channels[key] = Channel(meter=meter, suffix=suffix, minutes=int(length), per_kilo=UNITS[unit][0])
     return channels[key]
 
 

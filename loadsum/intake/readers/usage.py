@@ -254,7 +254,7 @@ def _timed(
         customer=np.full(starts.size, code, dtype=np.int32),
         start_s=np.where(bad, 0.0, starts).astype(np.int64),
         minutes=np.where(bad, 60.0, lengths / 60.0).astype(np.int64),
-        kw=np.concatenate(value) * kind.scale / 1e3,
+        kw=np.concatenate(value) * kind.scale,
         kvar=None,
         estimated=np.isin(marks, ESTIMATED),
         line=np.concatenate(line),
@@ -269,9 +269,8 @@ def _timed(
     part = picked(part, ~(bad | empty | rejected))
     if kind.register:
         part = differences(part, 0, findings)
-    if kind.unit in (ENERGY, REACTIVE_ENERGY):
-        part = replace(part, kw=part.kw * 60.0 / part.minutes)
-    return part
+    hours = part.minutes / 60.0 if kind.unit in (ENERGY, REACTIVE_ENERGY) else 1.0
+    return replace(part, kw=part.kw / (1e3 * hours))
 
 
 def _common_step(starts: NDArray[np.float64]) -> float:
