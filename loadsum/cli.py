@@ -55,6 +55,7 @@ def parser() -> argparse.ArgumentParser:
         metavar="KEY=VALUE",
         help="a value that stands for the study file's, as in transformer.power_factor=0.9; may be repeated",
     )
+    study.add_argument("--xlsx", action="store_true", help="write tables.xlsx as well (needs the extra xlsx)")
 
     inspect = command("inspect", "read the meter files and list every finding, without running the study")
     inspect.add_argument("file", type=Path, metavar="FILE", help="study file (TOML)")
@@ -108,9 +109,11 @@ def main(argv: Sequence[str] | None = None) -> int:
             text = pipeline.draft(args.folder)
         elif args.command == "compare":
             studies = (args.studies[0], args.studies[1]) if args.studies else None
-            text = pipeline.compare(args.old, args.new, progress=progress, studies=studies)
+            from loadsum import comparison
+
+            text = comparison.compare(args.old, args.new, progress=progress, studies=studies)
         else:
-            text = pipeline.study(args.file, out=args.out, progress=progress, overrides=args.overrides)
+            text = pipeline.study(args.file, out=args.out, progress=progress, overrides=args.overrides, xlsx=args.xlsx)
     except LoadsumError as error:
         line.clear()
         print(f"loadsum: {error}", file=sys.stderr)

@@ -1,6 +1,5 @@
 """The order of the stages and nothing else."""
 
-import json
 import logging
 import platform
 from collections.abc import Mapping, Sequence
@@ -26,14 +25,12 @@ from loadsum.demand.served import (
     with_more,
     with_unmetered_block,
 )
-from loadsum.errors import Fault, InputError
 from loadsum.evidence.holdout import hold_out
 from loadsum.intake.customers import customer_findings
 from loadsum.intake.draft import draft_study
 from loadsum.intake.hourclass import Calendar, DayBlock, calendar, day_blocks, metered_years
 from loadsum.intake.load import Loaded, load_readings
 from loadsum.intake.readings import shared_resolution
-from loadsum.intake.revised import reading_changes, with_changes
 from loadsum.peak.dayandyear import day_and_year
 from loadsum.peak.diversity import diversity
 from loadsum.peak.exceedance import days_by_month, exceedance_hours
@@ -48,6 +45,7 @@ from loadsum.report.quality import quality_calendar
 from loadsum.report.register import assumptions
 from loadsum.report.results import SCHEMA_VERSION, Program, StudyResults, TransformerResults, encode, to_json
 from loadsum.report.tables import coverage, curve, curve_levels, customer_rows, exceedance_rows, hour_rows
+from loadsum.report.workbook import workbook
 from loadsum.study.checks import billed_kwh
 from loadsum.study.load import load_study
 from loadsum.study.pseudonyms import key_beside, pseudonyms
@@ -64,7 +62,7 @@ log = logging.getLogger(__name__)
 STANDS_ON = ("numpy", "scipy", "pandas", "jinja2", "weasyprint", "matplotlib", "holidays")
 
 
-def study(path: Path, *, out: Path, progress: Progress, overrides: Sequence[str] = ()) -> str:
+def study(path: Path, *, out: Path, progress: Progress, overrides: Sequence[str] = (), xlsx: bool = False) -> str:
     """Make a study and write its outputs; returns what to tell the user.
 
     Parameters
@@ -77,6 +75,8 @@ def study(path: Path, *, out: Path, progress: Progress, overrides: Sequence[str]
         Told how far the work is.
     overrides : sequence of str
         ``key=value`` each: values that stand for those of the study file.
+    xlsx : bool
+        Whether the result tables are written as a workbook as well.
 
     Raises
     ------
@@ -101,8 +101,21 @@ def study(path: Path, *, out: Path, progress: Progress, overrides: Sequence[str]
         if made:
             said.append(f"customers have pseudonyms; keep their key: {path.parent / asked.privacy.key_file}")
     progress("drawing the report", 0.8)
-    write_outputs(out, outputs(results, study_file.encode()))
+    files = outputs(results, study_file.encode())
+    if xlsx:
+        files["tables.xlsx"] = workbook(result_tables(results))
+    write_outputs(out, files)
     return "\n".join(said)
+
+
+def result_tables(results: dict[str, Any]) -> dict[str, list[dict[str, Any]]]:
+    """The tables that people paste, by title; the transformer stands in the first column."""
+    units = results["transformers"]
+    by_unit = {
+        name: [{"transformer": unit["id"], **row} for unit in units for row in unit[name]]
+        for name in ("hours", "exceedance", "customers", "assumptions")
+    }
+    return {**by_unit, "findings": results["findings"]}
 
 
 def identifiers(asked: Study, results: dict[str, Any]) -> list[str]:
@@ -156,87 +169,6 @@ def draft(folder: Path) -> str:
     files, said = draft_study(folder)
     end = [f"written: {path}" for path in files] or ["nothing new; nothing written"]
     return "\n".join([*said, *end])
-
-
-def compare(old: Path, new: Path, *, progress: Progress, studies: tuple[Path, Path] | None = None) -> str:
-    """What changed from one study to its revision, and how much each cause moved the verdict.
-
-    Parameters
-    ----------
-    old, new : Path
-        results.json of either study, or the folder that holds it.
-    progress : Progress
-        Told how far the work is.
-    studies : (Path, Path) or None
-        Study files of the two with their meter files; without them the causes have no shares.
-    """
-    changes = revision.compare(read_results(old), read_results(new))
-    lines = [str(change) for change in changes] or ["nothing changed"]
-    if studies is not None:
-        lines += shares_of_change(*studies, progress=progress)
-    return "\n".join(lines)
-
-
-def read_results(path: Path) -> dict[str, Any]:
-    """Results as a study wrote them.
-
-    Raises
-    ------
-    InputError
-        The file cannot be read or is no results.json.
-    """
-    file = path / RESULTS_FILE if path.is_dir() else path
-    try:
-        found = json.loads(file.read_text(encoding="utf-8"))
-    except OSError as error:
-        raise InputError(str(file), [Fault(str(file), f"cannot be read: {error.strerror}")]) from error
-    except ValueError as error:
-        raise InputError(str(file), [Fault(str(file), f"is no results.json: {error}")]) from error
-    version = found.get("schema_version") if isinstance(found, dict) else None
-    if version != SCHEMA_VERSION:
-        message = f"results of version {version}; this program compares version {SCHEMA_VERSION}"
-        raise InputError(str(file), [Fault(str(file), message)])
-    return dict(found)
-
-
-def shares_of_change(old: Path, new: Path, *, progress: Progress) -> list[str]:
-    """How much each cause moved the room under the governing criterion, in words."""
-    asked = load_study(old), load_study(new)
-    loaded = load_readings(asked[0], old.parent), load_readings(asked[1], new.parent)
-    if asked[0].study.demand_interval_min != asked[1].study.demand_interval_min:
-        return ["shares of the change: none, the two studies have different demand intervals"]
-    by_readings = {change.cause: change for change in reading_changes(loaded[0].readings, loaded[1].readings)}
-    tables = [name for name in revision.STUDY_CAUSES if getattr(asked[0], name) != getattr(asked[1], name)]
-    by_table = {f"[{name}] changed": name for name in tables}
-    causes = [*by_readings, *by_table]
-    if not causes:
-        return ["shares of the change: there is no cause"]
-    unit, rating = revision.judged(asked[1])
-    asked_for = 0
-
-    def room(chosen: frozenset[str]) -> float:
-        nonlocal asked_for
-        asked_for += 1
-        progress("computing with some of the causes", min(asked_for / 2 ** min(len(causes), 5), 1.0))
-        hybrid = replace(asked[0], **{by_table[c]: getattr(asked[1], by_table[c]) for c in chosen if c in by_table})
-        parts = [change for cause, change in by_readings.items() if cause in chosen]
-        weather = loaded[1] if any(change.kind == "period added" for change in parts) else loaded[0]
-        readings = with_changes(loaded[0].readings, loaded[1].readings, parts)
-        results = with_readings(hybrid, replace(weather, readings=readings), only=unit)
-        return revision.room_at(encode(results)["selection"], rating)
-
-    found = revision.shares(causes, room)
-    if not asked[1].privacy.raw_identifiers:
-        key, _ = key_beside(new, asked[1].privacy.key_file)
-        everybody = {*loaded[0].readings.customers, *loaded[1].readings.customers}
-        named = pseudonyms(sorted(everybody), key)
-        renamed = [replace(share, cause=named.cause(share.cause)) for share in found]
-    else:
-        renamed = list(found)
-    head = (
-        f"room under the governing criterion at {rating:g} kVA{f', {unit}' if unit else ''}, as a share of its limit:"
-    )
-    return [head, *(f"  {share.cause}: {share.change:+.4f} ({share.share:.0%} of the change)" for share in renamed)]
 
 
 def compute(asked: Study, folder: Path, *, progress: Progress) -> StudyResults:

@@ -91,8 +91,9 @@ def test_no_output_of_a_study_holds_an_identifier_and_a_customer_keeps_its_pseud
 
 def test_raw_identifiers_are_printed_only_on_request(folder: Path) -> None:
     out = folder / "raw"
-    given = ["--with", "privacy.raw_identifiers=true", "--out", str(out), "--quiet"]
+    given = ["--with", "privacy.raw_identifiers=true", "--xlsx", "--out", str(out), "--quiet"]
     assert main(["study", str(folder / "old.toml"), *given]) == 0
+    assert (out / "tables.xlsx").stat().st_size > 1000
     assert "MTR-4711" in (out / "results.json").read_text(encoding="utf-8")
 
 

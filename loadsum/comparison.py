@@ -1,0 +1,98 @@
+"""Two studies held against each other: what changed, and the stages run again with some of the causes."""
+
+import json
+from dataclasses import replace
+from pathlib import Path
+from typing import Any
+
+from loadsum import pipeline
+from loadsum.errors import Fault, InputError
+from loadsum.intake.load import load_readings
+from loadsum.intake.revised import reading_changes, with_changes
+from loadsum.progress import Progress
+from loadsum.report import revision
+from loadsum.report.archive import RESULTS_FILE
+from loadsum.report.results import SCHEMA_VERSION, encode
+from loadsum.study.load import load_study
+from loadsum.study.pseudonyms import key_beside, pseudonyms
+
+
+def compare(old: Path, new: Path, *, progress: Progress, studies: tuple[Path, Path] | None = None) -> str:
+    """What changed from one study to its revision, and how much each cause moved the verdict.
+
+    Parameters
+    ----------
+    old, new : Path
+        results.json of either study, or the folder that holds it.
+    progress : Progress
+        Told how far the work is.
+    studies : (Path, Path) or None
+        Study files of the two with their meter files; without them the causes have no shares.
+    """
+    changes = revision.compare(read_results(old), read_results(new))
+    lines = [str(change) for change in changes] or ["nothing changed"]
+    if studies is not None:
+        lines += shares_of_change(*studies, progress=progress)
+    return "\n".join(lines)
+
+
+def read_results(path: Path) -> dict[str, Any]:
+    """Results as a study wrote them.
+
+    Raises
+    ------
+    InputError
+        The file cannot be read or is no results.json.
+    """
+    file = path / RESULTS_FILE if path.is_dir() else path
+    try:
+        found = json.loads(file.read_text(encoding="utf-8"))
+    except OSError as error:
+        raise InputError(str(file), [Fault(str(file), f"cannot be read: {error.strerror}")]) from error
+    except ValueError as error:
+        raise InputError(str(file), [Fault(str(file), f"is no results.json: {error}")]) from error
+    version = found.get("schema_version") if isinstance(found, dict) else None
+    if version != SCHEMA_VERSION:
+        message = f"results of version {version}; this program compares version {SCHEMA_VERSION}"
+        raise InputError(str(file), [Fault(str(file), message)])
+    return dict(found)
+
+
+def shares_of_change(old: Path, new: Path, *, progress: Progress) -> list[str]:
+    """How much each cause moved the room under the governing criterion, in words."""
+    asked = load_study(old), load_study(new)
+    loaded = load_readings(asked[0], old.parent), load_readings(asked[1], new.parent)
+    if asked[0].study.demand_interval_min != asked[1].study.demand_interval_min:
+        return ["shares of the change: none, the two studies have different demand intervals"]
+    by_readings = {change.cause: change for change in reading_changes(loaded[0].readings, loaded[1].readings)}
+    tables = [name for name in revision.STUDY_CAUSES if getattr(asked[0], name) != getattr(asked[1], name)]
+    by_table = {f"[{name}] changed": name for name in tables}
+    causes = [*by_readings, *by_table]
+    if not causes:
+        return ["shares of the change: there is no cause"]
+    unit, rating = revision.judged(asked[1])
+    asked_for = 0
+
+    def room(chosen: frozenset[str]) -> float:
+        nonlocal asked_for
+        asked_for += 1
+        progress("computing with some of the causes", min(asked_for / 2 ** min(len(causes), 5), 1.0))
+        hybrid = replace(asked[0], **{by_table[c]: getattr(asked[1], by_table[c]) for c in chosen if c in by_table})
+        parts = [change for cause, change in by_readings.items() if cause in chosen]
+        weather = loaded[1] if any(change.kind == "period added" for change in parts) else loaded[0]
+        readings = with_changes(loaded[0].readings, loaded[1].readings, parts)
+        results = pipeline.with_readings(hybrid, replace(weather, readings=readings), only=unit)
+        return revision.room_at(encode(results)["selection"], rating)
+
+    found = revision.shares(causes, room)
+    if not asked[1].privacy.raw_identifiers:
+        key, _ = key_beside(new, asked[1].privacy.key_file)
+        everybody = {*loaded[0].readings.customers, *loaded[1].readings.customers}
+        named = pseudonyms(sorted(everybody), key)
+        renamed = [replace(share, cause=named.cause(share.cause)) for share in found]
+    else:
+        renamed = list(found)
+    head = (
+        f"room under the governing criterion at {rating:g} kVA{f', {unit}' if unit else ''}, as a share of its limit:"
+    )
+    return [head, *(f"  {share.cause}: {share.change:+.4f} ({share.share:.0%} of the change)" for share in renamed)]
