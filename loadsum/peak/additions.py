@@ -153,6 +153,7 @@ def scaled_demand(demand: GroupDemand, factor: float) -> GroupDemand:
 
 def _with(hour: HourDemand, added: Sequence[AddedLoad]) -> HourDemand:
     """One interval with load added."""
+    added = [load for load in added if np.any(load.kw[hour.interval][load.weight[hour.interval] > 0.0])]
     if not added:
         return hour
     step = hour.total.up.step_kw
