@@ -199,13 +199,16 @@ def signatures(report: Received) -> Sequence[SignatureState]:
         embedded = list(reader.embedded_signatures)
     except reading_faults() as error:
         raise InputError("report", [Fault("signatures", f"cannot be read: {type(error).__name__}")]) from error
-    quick = [_judge(signature, last=True, compare=False) for signature in embedded]
+    quick = [_judge(signature, report.content, last=True, compare=False) for signature in embedded]
     if not all(state.intact for state in quick):
         return quick
-    return [_judge(signature, last=n == len(embedded) - 1, compare=True) for n, signature in enumerate(embedded)]
+    return [
+        _judge(signature, report.content, last=n == len(embedded) - 1, compare=True)
+        for n, signature in enumerate(embedded)
+    ]
 
 
-def _judge(signature: Any, *, last: bool, compare: bool) -> SignatureState:
+def _judge(signature: Any, content: bytes, *, last: bool, compare: bool) -> SignatureState:
     """State of one signature; ``compare`` looks into what was added after it."""
     from pyhanko.sign.diff_analysis import ModificationLevel
     from pyhanko.sign.general import UnacceptableSignerError
@@ -231,7 +234,7 @@ def _judge(signature: Any, *, last: bool, compare: bool) -> SignatureState:
             reason=f"cannot be read: {type(error).__name__}: {str(error)[:160]}",
         )
     certificate = status.signing_cert
-    intact = bool(status.intact and status.valid)
+    intact = bool(status.intact and status.valid) and _written_plainly(content, signature.byte_range)
     whole = status.coverage == SignatureCoverageLevel.ENTIRE_FILE
     later = (
         status.coverage == SignatureCoverageLevel.ENTIRE_REVISION
@@ -257,6 +260,27 @@ def _judge(signature: Any, *, last: bool, compare: bool) -> SignatureState:
         covers_all=covers,
         reason=reason,
     )
+
+
+def _written_plainly(content: bytes, byte_range: Any) -> bool:
+    """Whether the gap that a signature leaves for itself holds the signature and zeros, in capital digits.
+
+    No signature covers its own gap, so spare bytes there, or the case of a digit, could be changed unseen.
+    """
+    _, first, second, _ = (int(place) for place in byte_range)
+    gap = content[first:second]
+    if gap[:1] != b"<" or gap[-1:] != b">":
+        return False
+    try:
+        der = bytes.fromhex(gap[1:-1].decode("ascii"))
+    except ValueError:
+        return False
+    if der.hex().upper().encode() != gap[1:-1] or len(der) < 4 or der[0] != 0x30:
+        return False
+    long_form = der[1] & 0x80
+    head = 2 + (der[1] & 0x7F) if long_form else 2
+    length = int.from_bytes(der[2:head], "big") if long_form else der[1]
+    return not any(der[head + length :])
 
 
 @contextmanager
