@@ -1,6 +1,7 @@
 """The command: arguments in, exit status out."""
 
 import argparse
+import getpass
 import logging
 import sys
 from collections.abc import Sequence
@@ -15,6 +16,7 @@ exit status:
   0  done
   1  the machine is at fault: a library is missing, the disk is full
   2  the input is at fault; every fault is named with its place and what to do
+  3  the audit found a difference
 
 A first study:
   loadsum draft meters/                  look at a folder of meter files and write a study file to fill in
@@ -74,6 +76,23 @@ def parser() -> argparse.ArgumentParser:
         metavar=("OLD_FILE", "NEW_FILE"),
         help="study files of the two, with their meter files: computes how much each cause moved the verdict",
     )
+
+    report = command("report", "draw the report again from results.json, without computing")
+    report.add_argument("results", type=Path, metavar="RESULTS", help="results.json of a study")
+    report.add_argument("--out", type=Path, required=True, metavar="PDF", help="where the report goes")
+    report.add_argument("--templates", type=Path, metavar="DIR", help="the utility's own blocks, texts and logo")
+
+    sign = command("sign", "sign an issued report with your own certificate; asks for its passphrase")
+    sign.add_argument("report", type=Path, metavar="PDF", help="an issued report")
+    sign.add_argument("--role", required=True, metavar="ROLE", help="role in the sign-off block that you sign as")
+    sign.add_argument("--certificate", type=Path, required=True, metavar="FILE", help="PKCS#12 file with your key")
+    sign.add_argument("--out", type=Path, required=True, metavar="PDF", help="where the signed report goes")
+
+    audit = command("audit", "check a report: signatures, attachments, inputs, and every number computed again")
+    audit.add_argument("report", type=Path, metavar="PDF", help="a report of this program")
+    audit.add_argument("--inputs", type=Path, metavar="FOLDER", help="folder of the study's input files")
+    audit.add_argument("--key", type=Path, metavar="FILE", help="key file of the customers' pseudonyms")
+    audit.add_argument("--templates", type=Path, metavar="DIR", help="the templates that it was drawn with")
     return top
 
 
@@ -88,7 +107,7 @@ def main(argv: Sequence[str] | None = None) -> int:
     Returns
     -------
     int
-        0 done, 1 the machine is at fault, 2 the input is at fault.
+        0 done, 1 the machine is at fault, 2 the input is at fault, 3 an audit found a difference.
     """
     args = parser().parse_args(argv)
     logging.basicConfig(
@@ -99,9 +118,10 @@ def main(argv: Sequence[str] | None = None) -> int:
     )
     line = TerminalLine()
     progress = silent if args.quiet else line
+    status = 0
     try:
-        # The pipeline is imported here so that --help answers at once.
-        from loadsum import pipeline
+        # The stages are imported here so that --help answers at once.
+        from loadsum import comparison, documents, pipeline
 
         if args.command == "inspect":
             text = pipeline.inspect(args.file, out=args.out, progress=progress)
@@ -109,9 +129,17 @@ def main(argv: Sequence[str] | None = None) -> int:
             text = pipeline.draft(args.folder)
         elif args.command == "compare":
             studies = (args.studies[0], args.studies[1]) if args.studies else None
-            from loadsum import comparison
-
             text = comparison.compare(args.old, args.new, progress=progress, studies=studies)
+        elif args.command == "report":
+            text = documents.redraw(args.results, out=args.out, templates=args.templates)
+        elif args.command == "sign":
+            passphrase = getpass.getpass("passphrase of the certificate: ")
+            text = documents.sign(
+                args.report, role=args.role, certificate=args.certificate, passphrase=passphrase, out=args.out
+            )
+        elif args.command == "audit":
+            found = documents.audited(args.report, inputs=args.inputs, key=args.key, templates=args.templates)
+            text, status = found.text(), found.exit_status
         else:
             text = pipeline.study(args.file, out=args.out, progress=progress, overrides=args.overrides, xlsx=args.xlsx)
     except LoadsumError as error:
@@ -121,7 +149,7 @@ def main(argv: Sequence[str] | None = None) -> int:
     line.clear()
     if not args.quiet:
         print(text)
-    return 0
+    return status
 
 
 def entry() -> None:

@@ -1,18 +1,15 @@
 """Two studies held against each other: what changed, and the stages run again with some of the causes."""
 
-import json
 from dataclasses import replace
 from pathlib import Path
-from typing import Any
 
 from loadsum import pipeline
-from loadsum.errors import Fault, InputError
 from loadsum.intake.load import load_readings
 from loadsum.intake.revised import reading_changes, with_changes
 from loadsum.progress import Progress
 from loadsum.report import revision
 from loadsum.report.archive import RESULTS_FILE
-from loadsum.report.results import SCHEMA_VERSION, encode
+from loadsum.report.results import encode
 from loadsum.study.load import load_study
 from loadsum.study.pseudonyms import key_beside, pseudonyms
 
@@ -29,33 +26,11 @@ def compare(old: Path, new: Path, *, progress: Progress, studies: tuple[Path, Pa
     studies : (Path, Path) or None
         Study files of the two with their meter files; without them the causes have no shares.
     """
-    changes = revision.compare(read_results(old), read_results(new))
+    changes = revision.compare(read_results(_file(old)), read_results(_file(new)))
     lines = [str(change) for change in changes] or ["nothing changed"]
     if studies is not None:
         lines += shares_of_change(*studies, progress=progress)
     return "\n".join(lines)
-
-
-def read_results(path: Path) -> dict[str, Any]:
-    """Results as a study wrote them.
-
-    Raises
-    ------
-    InputError
-        The file cannot be read or is no results.json.
-    """
-    file = path / RESULTS_FILE if path.is_dir() else path
-    try:
-        found = json.loads(file.read_text(encoding="utf-8"))
-    except OSError as error:
-        raise InputError(str(file), [Fault(str(file), f"cannot be read: {error.strerror}")]) from error
-    except ValueError as error:
-        raise InputError(str(file), [Fault(str(file), f"is no results.json: {error}")]) from error
-    version = found.get("schema_version") if isinstance(found, dict) else None
-    if version != SCHEMA_VERSION:
-        message = f"results of version {version}; this program compares version {SCHEMA_VERSION}"
-        raise InputError(str(file), [Fault(str(file), message)])
-    return dict(found)
 
 
 def shares_of_change(old: Path, new: Path, *, progress: Progress) -> list[str]:
@@ -96,3 +71,8 @@ def shares_of_change(old: Path, new: Path, *, progress: Progress) -> list[str]:
         f"room under the governing criterion at {rating:g} kVA{f', {unit}' if unit else ''}, as a share of its limit:"
     )
     return [head, *(f"  {share.cause}: {share.change:+.4f} ({share.share:.0%} of the change)" for share in renamed)]
+
+
+def _file(path: Path) -> Path:
+    """results.json, given itself or as the folder that holds it."""
+    return path / RESULTS_FILE if path.is_dir() else path

@@ -13,8 +13,8 @@ from loadsum.progress import silent
 from loadsum.report import document, signature
 from loadsum.report.audit import Audit, audit
 from loadsum.report.outputs import write_outputs
+from loadsum.report.received import read_results
 from loadsum.report.results import encode
-from loadsum.report.revision import read_results
 from loadsum.study.load import study_from
 from loadsum.study.pseudonyms import pseudonyms, read_key
 from loadsum.study.tables import Study

@@ -124,25 +124,38 @@ def identifiers(asked: Study, results: dict[str, Any]) -> list[str]:
     return list(dict.fromkeys([*metered, *(customer.id for customer in asked.customer)]))
 
 
-def outputs(results: dict[str, Any], study_file: bytes) -> dict[str, bytes]:
-    """Everything that a study leaves behind, by name relative to its folder."""
-    tables = {
+def tables_of(results: dict[str, Any]) -> dict[str, bytes]:
+    """Results and their tables as files, by name."""
+    hours = [{"transformer": unit["id"], **row} for unit in results["transformers"] for row in unit["hours"]]
+    return {
         RESULTS_FILE: to_json(results).encode(),
-        "hours.csv": csv_table(
-            [{"transformer": unit["id"], **row} for unit in results["transformers"] for row in unit["hours"]]
-        ),
+        "hours.csv": csv_table(hours),
         "findings.csv": csv_table(results["findings"]),
     }
+
+
+def attachments(results: dict[str, Any], study_file: bytes | None) -> list[Attachment]:
+    """What the report carries beside its pages."""
+    tables = tables_of(results)
     attached = [
-        Attachment(name=STUDY_FILE, content=study_file, description="Study file", relationship="Source"),
         Attachment(name=RESULTS_FILE, content=tables[RESULTS_FILE], description="Results"),
         Attachment(
             name="hours.csv", content=tables["hours.csv"], description="Demand in every interval of every class"
         ),
         Attachment(name="findings.csv", content=tables["findings.csv"], description="Findings on the readings"),
     ]
+    if study_file is not None:
+        attached.insert(
+            0, Attachment(name=STUDY_FILE, content=study_file, description="Study file", relationship="Source")
+        )
+    return attached
+
+
+def outputs(results: dict[str, Any], study_file: bytes) -> dict[str, bytes]:
+    """Everything that a study leaves behind, by name relative to its folder."""
     drawn = {f"figures/{name}": content for name, content in figures.draw(results).items()}
-    return {"report.pdf": document.render(results, attachments=attached), **tables, **drawn}
+    report = document.render(results, attachments=attachments(results, study_file))
+    return {"report.pdf": report, STUDY_FILE: study_file, **tables_of(results), **drawn}
 
 
 def inspect(path: Path, *, out: Path | None, progress: Progress) -> str:
