@@ -9,6 +9,7 @@ from loadsum.intake.revised import reading_changes, with_changes
 from loadsum.progress import Progress
 from loadsum.report import revision
 from loadsum.report.archive import RESULTS_FILE
+from loadsum.report.received import read_results
 from loadsum.report.results import encode
 from loadsum.study.load import load_study
 from loadsum.study.pseudonyms import key_beside, pseudonyms

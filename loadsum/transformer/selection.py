@@ -232,7 +232,11 @@ def _held(rating: float, figure: Figure, criterion: Criterion) -> CriterionAtRat
     else:
         margin = criterion.limit - counts
         inside = figure.low is not None and figure.high is not None and figure.low <= criterion.limit < figure.high
-        if criterion.statistic == "predictive value" and inside:
+        unsupported = figure.floor is not None and criterion.limit < figure.floor and counts <= criterion.limit
+        if unsupported:
+            outcome, meets = "not decided by these data", None
+            reason = f"the record supports no probability below {figure.floor:.2g}"
+        elif criterion.statistic == "predictive value" and inside:
             outcome, meets = "not decided by these data", None
         elif margin >= 0.0:
             outcome, meets = "met", True
