@@ -1,5 +1,6 @@
 """The order of the stages and nothing else."""
 
+import json
 import logging
 import platform
 from collections.abc import Mapping, Sequence
@@ -101,6 +102,7 @@ def study(path: Path, *, out: Path, progress: Progress, overrides: Sequence[str]
         if made:
             said.append(f"customers have pseudonyms; keep their key: {path.parent / asked.privacy.key_file}")
     progress("drawing the report", 0.8)
+    results = json.loads(to_json(results))  # drawn from what is written, so that it can be drawn again
     files = outputs(results, study_file.encode())
     if xlsx:
         files["tables.xlsx"] = workbook(result_tables(results))
