@@ -119,7 +119,8 @@ def _too_coarse(part: Timed, interval_min: int) -> list[Fault]:
 def _on_grid(part: Timed, interval_min: int, phase_s: int, findings: list[Finding]) -> Timed:
     """Readings that lie within one demand interval and begin on a whole multiple of their own length."""
     length = part.minutes * 60
-    since = (part.start_s - phase_s) % (interval_min * 60)
+    since = part.start_s - phase_s
+    since -= since // (interval_min * 60) * (interval_min * 60)  # a remainder, the quick way
     if not since.any():
         return part
     off = (since % length != 0) | (since + length > interval_min * 60)
@@ -138,7 +139,7 @@ def _on_grid(part: Timed, interval_min: int, phase_s: int, findings: list[Findin
 
 
 def _grid(parts: Sequence[Timed], interval_min: int, phase_s: int) -> tuple[Grid | None, list[Fault]]:
-    used = sorted({part.customers[c] for part in parts for c in np.unique(part.customer).tolist()})
+    used = sorted({part.customers[c] for part in parts for c in np.flatnonzero(np.bincount(part.customer)).tolist()})
     step = interval_min * 60
     filled = [part for part in parts if part.start_s.size]
     first = (min(int(part.start_s.min()) for part in filled) - phase_s) // step

@@ -86,7 +86,7 @@ def _quickly(content: bytes, name: str, source: MeterFiles) -> RawReadings | Non
     except UnicodeDecodeError:
         return None
     delimiter = source.delimiter or guessed_delimiter(text)
-    columns = [column.strip() for column in text.split("\n", 1)[0].split(delimiter)]
+    columns = [column.strip() for column in next(csv.reader([text.split("\n", 1)[0]], delimiter=delimiter), [])]
     if len(set(columns)) != len(columns) or not 2 <= len(columns) <= MOST_COLUMNS:
         return None
     said = [_delimiter_said(delimiter, source)]

@@ -71,5 +71,6 @@ def read_file(path: Path, source: MeterFiles, place: dt.tzinfo, findings: list[F
             raw = read_delimited(content, name, source)
         del content
         choices = list(raw.choices)
-        timed = timed_readings(raw, source, place, findings, choices)
-        yield FileReadings(timed=timed, rows=int(raw.value.size), layout=raw.layout, choices=choices)
+        timed, rows, layout = timed_readings(raw, source, place, findings, choices), int(raw.value.size), raw.layout
+        del raw  # so that the text's codes are gone before the next file
+        yield FileReadings(timed=timed, rows=rows, layout=layout, choices=choices)

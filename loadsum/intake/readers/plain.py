@@ -30,7 +30,11 @@ def read_plain(content: bytes, name: str, wanted: Wanted, layout: str, said: lis
 
     Stamps and identifiers become integer codes as the file is parsed, so that only distinct ones are looked at.
     """
-    if importlib.util.find_spec("pyarrow") is None or b'"' in content or b"\x00" in content:
+    if (
+        importlib.util.find_spec("pyarrow") is None
+        or content.find(b'"', content.find(b"\n")) >= 0
+        or b"\x00" in content
+    ):
         return None
     pa, pacsv = importlib.import_module("pyarrow"), importlib.import_module("pyarrow.csv")
     coded = pa.dictionary(pa.int32(), pa.string())
@@ -63,6 +67,7 @@ def read_plain(content: bytes, name: str, wanted: Wanted, layout: str, said: lis
     for n, column in enumerate(wanted.values):
         value[n * rows : (n + 1) * rows] = table.column(column).to_numpy()
     empty = sum(table.column(column).null_count for column in wanted.values)
+    table = table.select(keys)  # lets the parsed values go
     with np.errstate(invalid="ignore"):
         if int(np.count_nonzero(np.abs(value) < LARGEST)) != value.size - empty:
             return None
