@@ -15,6 +15,6 @@ for name in "$@"; do
         exit 2
     fi
     # readings that are not in the checkout are made by their seeded generator
-    [ "$name" = pole_transformer ] || [ -d "$folder/meters" ] || "$PYTHON" -m "demo_feeders.$name.generate"
+    [ "$name" = pole_transformer ] || [ -d "$folder/readings" ] || "$PYTHON" -m "demo_feeders.$name.generate"
     .venv/bin/loadsum study "$folder/study.toml" --out "$folder/out"
 done

@@ -319,6 +319,7 @@ def one_transformer(
         asked.criterion,
         asked.allowed_loading,
         installed_kva=unit.installed_kva,
+        above=above,
         others={
             "annual exceedance probability": annual_probability(together, asked.allowed_loading, asked.study.seed),
             **temperature_figures(lived, missing_for_life(unit)),

@@ -245,11 +245,12 @@ class _Block:
         step = self.settings.lattice_kw or lattice_step(
             [*own, *(v for _, v, _ in like)], target_raw**0.5, self.resolution_kw
         )
+        by_class = self._by_class(adjusted)
         down, up, counts, spreads, held = [], [], [], [], 0.0
         for c in served.tolist():
             values = adjusted[c][np.isfinite(adjusted[c])]
             spreads.append(float(values.std(ddof=1)))
-            low, high, variance = self._customer(c, values, adjusted, step, response is not None)
+            low, high, variance = self._customer(c, values, by_class, step, response is not None)
             down.append(low)
             up.append(high)
             counts.append(1)
@@ -302,23 +303,36 @@ class _Block:
             resamples=resamples,
         )
 
+    def _by_class(self, adjusted: NDArray[np.float64]) -> dict[str, tuple[list[int], list[NDArray[np.float64]]]]:
+        """Members of each class and their readings relative to their own means."""
+        found = {}
+        for name in dict.fromkeys(self.group.classes):
+            alike = [n for n, other in enumerate(self.group.classes) if other == name]
+            found[name] = alike, relative_readings(adjusted[alike])
+        return found
+
     def _days(self, adjusted: NDArray[np.float64]) -> int:
         """Days of readings of the counted customer that has fewest, of those with any. [d]"""
         count = np.isfinite(adjusted[self.weights() > 0.0]).sum(axis=1)
         return int(count[count > 0].min())
 
     def _customer(
-        self, c: int, values: NDArray[np.float64], adjusted: NDArray[np.float64], step: float, moved: bool
+        self,
+        c: int,
+        values: NDArray[np.float64],
+        by_class: Mapping[str, tuple[list[int], list[NDArray[np.float64]]]],
+        step: float,
+        moved: bool,
     ) -> tuple[LatticeMass, LatticeMass, float]:
         """Predictive distribution of one customer rounded down and up (one object where exact), and its variance.
 
         What is adjusted or borrowed is stated to the lattice, as a meter would state it; only readings as they were
         metered are rounded outward.
         """
-        alike = [n for n, name in enumerate(self.group.classes) if name == self.group.classes[c]]
         extra, share = np.empty(0), np.empty(0)
         if self.settings.shrinkage and self.settings.borrowed_days > 0.0:
-            extra, share = borrowed(relative_readings(adjusted[alike]), alike.index(c), float(values.mean()))
+            alike, relative = by_class[self.group.classes[c]]
+            extra, share = borrowed(relative, alike.index(c), float(values.mean()))
         weight = self.settings.borrowed_days / (self.settings.borrowed_days + values.size) if extra.size else 0.0
         if moved:
             values = np.rint(values / step) * step

@@ -131,11 +131,23 @@ def part_of(block: DayBlock, rows: NDArray[np.bool_]) -> DayBlock:
     )
 
 
+def thinned(block: DayBlock, every: int) -> DayBlock:
+    """A block with one in so many intervals of the day."""
+    if every == 1:
+        return block
+    return replace(
+        block,
+        kw=block.kw[:, :, ::every].copy(),
+        kvar=None if block.kvar is None else block.kvar[:, :, ::every].copy(),
+    )
+
+
 def hold_out(
     blocks: Sequence[DayBlock],
     *,
     fit: Callable[[Sequence[DayBlock]], GroupDemand],
     served: NDArray[np.bool_] | None = None,
+    most_hours: int = 200,
 ) -> HoldOut | None:
     """Alternate whole weeks fitted and tested, then the other way round.
 
@@ -147,12 +159,17 @@ def hold_out(
         Makes the adopted model from readings.
     served : (C,) bool or None
         Customers whose sum is tested; all when None.
+    most_hours : int
+        Demand intervals of all classes of days that are tested; where there are more, every second, third or so of
+        the day. [-]
 
     Returns
     -------
     HoldOut or None
         None where fewer than eight weeks have a reading of every customer served.
     """
+    every = max(-(-len(blocks) * blocks[0].kw.shape[2] // most_hours), 1)
+    blocks = [thinned(block, every) for block in blocks]
     sums = [block.kw.sum(axis=0) if served is None else block.kw[served].sum(axis=0) for block in blocks]
     with_sums = [week_of(b.day)[np.isfinite(s).any(axis=1)] for b, s in zip(blocks, sums, strict=True)]
     weeks = np.unique(np.concatenate(with_sums))
@@ -191,7 +208,7 @@ def hold_out(
                     )
     if not tally.day:
         return None
-    return _summary(tally, int(weeks.size))
+    return _summary(tally, int(weeks.size), every)
 
 
 def _score(
@@ -259,7 +276,7 @@ def _moved(hour: HourDemand, warmth: NDArray[np.float64] | None) -> _Moved | Non
     return _Moved(hour.without_temperature(spread), hour.response.shift_kw(warmth))
 
 
-def _summary(tally: _Tally, weeks: int) -> HoldOut:
+def _summary(tally: _Tally, weeks: int, every: int) -> HoldOut:
     day = np.concatenate(tally.day)
     week = np.unique(week_of(day), return_inverse=True)[1]
     intervals = np.bincount(week).astype(np.float64)
@@ -298,7 +315,8 @@ def _summary(tally: _Tally, weeks: int) -> HoldOut:
     return HoldOut(
         how=(
             "Whole weeks in turn were fitted and held out, then swapped: "
-            f"{weeks} weeks, {day.size} demand intervals scored."
+            f"{weeks} weeks, {day.size} demand intervals scored"
+            f"{'' if every == 1 else f', one in {every} of the day'}."
         ),
         sentence=plain_sentence(mine),
         passed=all(row.observed_share <= row.chance_high for row in mine[1:]),

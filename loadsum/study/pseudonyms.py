@@ -95,7 +95,7 @@ def pseudonyms(identifiers: Iterable[str], key: bytes) -> Pseudonyms:
 
     References
     ----------
-    .. [1] RFC 2104, HMAC: Keyed-Hashing for Message Authentication, 1997.
+    .. [1] RFC 2104, HMAC: Keyed-Hashing for Message Authentication, 1997; cited from memory.
     """
     if len(key) < 16:
         raise ValueError(f"a key of {len(key)} bytes can be guessed; it needs at least 16")

@@ -7,7 +7,7 @@ from typing import Literal
 import numpy as np
 
 from loadsum.demand.hourly import Direction, GroupDemand
-from loadsum.peak.exceedance import LevelExceedance, exceedance_hours
+from loadsum.peak.exceedance import ExceedanceTable, LevelExceedance, exceedance_hours
 from loadsum.study.tables import AllowedLoading, Criterion
 from loadsum.transformer.loading import allowed_pu
 
@@ -141,6 +141,7 @@ def evaluate(
     *,
     installed_kva: float = 0.0,
     others: Mapping[str, FigureSource] | None = None,
+    above: Mapping[str, ExceedanceTable] | None = None,
 ) -> Selection:
     """The choice of rating by the user's own criteria.
 
@@ -158,8 +159,12 @@ def evaluate(
         Rating in service; 0 where the unit is new. [kVA]
     others : mapping of str to callable
         Sources of figures that other stages compute (annual probability, temperatures, ageing), by quantity.
+    above : mapping of str to ExceedanceTable
+        Exceedance of every rating that was computed already, both directions and all seasons, by loading.
     """
-    results = tuple(_criterion(demand, ratings_kva, criterion, allowed, others or {}) for criterion in criteria)
+    results = tuple(
+        _criterion(demand, ratings_kva, criterion, allowed, others or {}, above or {}) for criterion in criteria
+    )
     results = _with_governing(results)
     return _choice(ratings_kva, results, installed_kva)
 
@@ -180,11 +185,17 @@ def _criterion(
     criterion: Criterion,
     allowed: Sequence[AllowedLoading],
     others: Mapping[str, FigureSource],
+    above: Mapping[str, ExceedanceTable],
 ) -> CriterionResult:
     rows = []
-    for rating in ratings_kva:
+    known = above.get(criterion.of) if criterion.season == "all" and criterion.direction == "both" else None
+    for n, rating in enumerate(ratings_kva):
         if criterion.quantity in ("exceedance hours per year", "exceedance probability in any interval"):
-            figure = _exceedance(demand, rating, criterion, allowed)
+            figure = (
+                exceedance_figure(known.levels[n], criterion.quantity)
+                if known is not None
+                else _exceedance(demand, rating, criterion, allowed)
+            )
         elif criterion.quantity in others:
             figure = others[criterion.quantity](criterion, rating)
         else:
