@@ -6,11 +6,13 @@ import itertools
 import json
 from pathlib import Path
 
+import jsonschema
 import numpy as np
 import pytest
 from numpy.typing import NDArray
 
 from loadsum.cli import main
+from loadsum.report.schema import results_schema
 from tests.datasets import FIRST_STAMP, real_homes
 
 STUDY = """\
@@ -90,6 +92,38 @@ def test_all_outputs_are_there(folder: Path) -> None:
     assert {"report.pdf", "results.json", "hours.csv"} <= names
     assert any(name.startswith("figures/") and name.endswith(".svg") for name in names)
     assert any(name.startswith("figures/") and name.endswith(".png") for name in names)
+
+
+def test_the_results_are_what_their_schema_says(results: dict) -> None:
+    errors = list(jsonschema.Draft202012Validator(results_schema()).iter_errors(results))
+    assert not errors, [(list(error.path), error.message) for error in errors[:3]]
+
+
+def test_held_out_weeks_pass_the_99_percent_level_about_as_often_as_meant(results: dict) -> None:
+    (unit,) = results["transformers"]
+    (level,) = [r for r in unit["evidence"]["levels"] if r["model"] == "adopted" and r["expected_share"] == 0.01]
+    share, scored = level["observed_share"], unit["evidence"]["intervals"]
+    print(f"held-out demand above the 99 % level: {share:.2%} of {scored} intervals")
+    assert 0.003 < share < 0.03
+
+
+def test_independent_sums_agree_with_a_brute_force_convolution(results: dict, classes: dict) -> None:
+    (unit,) = results["transformers"]
+    levels = np.array(unit["curve"]["levels_kw"])
+    step = 0.05
+    mean = {"down": np.zeros(levels.size), "up": np.zeros(levels.size)}
+    hours = 0.0
+    for columns in classes.values():
+        hours += columns.shape[1]
+        for way, rounded in (("down", np.floor), ("up", np.ceil)):
+            law = np.ones(1)
+            for customer in columns:
+                law = np.convolve(law, np.bincount(rounded(customer / step).astype(int)) / customer.size)
+            points = np.arange(law.size) * step
+            mean[way] += columns.shape[1] * np.array([law[points > level + 1e-9].sum() for level in levels])
+    found = np.array(unit["curve"]["independent"])
+    assert np.all(found >= mean["down"] / hours - 2e-3)
+    assert np.all(found <= mean["up"] / hours + 2e-3)
 
 
 def test_every_reading_is_used_and_the_whole_year_is_covered(results: dict) -> None:

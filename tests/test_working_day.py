@@ -146,7 +146,7 @@ def test_a_month_added_a_meter_replaced_and_a_criterion_changed_are_the_three_ca
 
 def test_results_that_are_none_are_the_users_fault(folder: Path, capsys: pytest.CaptureFixture[str]) -> None:
     assert main(["compare", str(folder / "old"), str(folder / "old.toml")]) == 2
-    assert "is no results.json" in capsys.readouterr().err
+    assert "is not JSON" in capsys.readouterr().err
 
 
 def test_a_drafted_folder_is_reported_file_by_file(tmp_path: Path, capsys: pytest.CaptureFixture[str]) -> None:

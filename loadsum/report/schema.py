@@ -2,9 +2,12 @@
 
 import collections.abc
 import dataclasses
+import json
+import sys
 import types
 import typing
 from enum import Enum
+from pathlib import Path
 from typing import Any
 
 import numpy as np
@@ -33,6 +36,8 @@ def _schema_of(kind: Any, definitions: dict[str, Any]) -> dict[str, Any]:
         return _object_of(kind, definitions)
     if origin is np.ndarray:
         return {"type": "array"}
+    if origin is tuple and Ellipsis not in arguments:
+        return {"type": "array", "prefixItems": [_schema_of(part, definitions) for part in arguments]}
     if origin in (tuple, list, frozenset, set, collections.abc.Sequence):
         return {"type": "array", "items": _schema_of(arguments[0], definitions) if arguments else {}}
     if origin in (dict, collections.abc.Mapping):
@@ -69,3 +74,13 @@ def _object_of(kind: type, definitions: dict[str, Any]) -> dict[str, Any]:
             "additionalProperties": False,
         }
     return {"$ref": f"#/$defs/{name}"}
+
+
+def main() -> None:
+    """Write the schema into the folder given."""
+    text = json.dumps(results_schema(), indent=1, sort_keys=True, ensure_ascii=False) + "\n"
+    (Path(sys.argv[1]) / "results.schema.json").write_text(text, encoding="utf-8")
+
+
+if __name__ == "__main__":
+    main()

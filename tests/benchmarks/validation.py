@@ -1,0 +1,80 @@
+"""Writes docs/validation.md: ``python -m tests.benchmarks.validation`` (about ten minutes)."""
+
+import json
+from pathlib import Path
+
+from tests.benchmarks import calibration
+
+ROOT = Path(__file__).parents[2]
+PAGE = ROOT / "docs" / "validation.md"
+REFERENCE = ROOT / "tests" / "reference"
+
+HEAD = """# Validation
+
+Written by `python -m tests.benchmarks.validation`; do not edit by hand. What is computed here is computed anew on each
+run, from seeds fixed in tests/benchmarks/calibration.py before anything was scored.
+
+## Published values
+
+Every value stands in tests/reference/ with its citation and provenance (`source_read`, `source_read_secondary`,
+`memory`, `computed_from_formula`) and is held to half its last printed digit or better by the tests of its stage. A
+value from memory is never a default of the program.
+
+"""
+
+KNOWN = """
+## Known weaknesses
+
+- Where the spread of demand grows with cold or heat (many electrically heated homes), the model takes the
+  temperature's shift out but not its effect on the spread: on the invented pole transformer the 1 % level was passed
+  on about 2 % of held-out intervals. The study says so on its page 1.
+- The correction for not knowing the variance is that of Student's law, added as a normal term.
+- A class of days with few days (weekends of one season) is the weakest part: its tail rests on what is borrowed.
+- Intervals move and stretch the adopted model with resampled weeks; they do not draw new shapes of tail.
+- None of this tests another year's weather, nor customers that were not metered.
+- The 17 homes are one small set from one place, and the groups drawn from them share members, so their intervals are
+  on the narrow side.
+"""
+
+
+def published() -> str:
+    """Published values by file, with citation and provenance."""
+    lines = ["| value | citation | provenance |", "|---|---|---|"]
+    entries = []
+    for path in sorted(REFERENCE.glob("*.json")):
+        content = json.loads(path.read_text(encoding="utf-8"))
+        entries += content["values"] if isinstance(content, dict) else content
+    seen = set()
+    for entry in entries:
+        if entry["id"] in seen:
+            continue
+        seen.add(entry["id"])
+        cells = (entry["id"], entry["citation"], entry["provenance"])
+        lines.append("| " + " | ".join(str(cell).replace("|", "/") for cell in cells) + " |")
+    return "\n".join(lines)
+
+
+def main() -> None:
+    """Compute everything and write the page."""
+    variance = calibration.variance_ratios()
+    covered = calibration.interval_coverage()
+    real = calibration.real_rows()
+    invented = calibration.synthetic_rows()
+    parts = [HEAD, published(), "\n\n## Hold-out on 17 real homes (CityLearn 1.8.0, one year, four seasons)\n\n"]
+    parts.append(
+        "Share of held-out demand intervals above the level that each model says is exceeded 50, 10, 1 and 0.1 % of the"
+        " time; every third hour; interval by resampling groups.\n\n"
+    )
+    parts += [calibration.table(real), "\n\n## Hold-out on populations of known truth\n\n", calibration.table(invented)]
+    parts.append("\n\n## Variance of the model over the true variance\n\n")
+    parts.append("| correlation | customers metered | ratio |\n|---|---|---|\n")
+    parts += [f"| {c:g} | {n} | {ratio:.3f} |\n" for c, n, ratio in variance]
+    parts.append("\n## Intervals meant to cover 90 %\n\n")
+    parts.append("| true probability | covered | truth above the upper end |\n|---|---|---|\n")
+    parts += [f"| {p:g} | {100 * inside:.0f} % | {100 * above:.0f} % |\n" for p, inside, above in covered]
+    parts.append(KNOWN)
+    PAGE.write_text("".join(parts), encoding="utf-8")
+
+
+if __name__ == "__main__":
+    main()
