@@ -50,7 +50,8 @@ from loadsum.report.workbook import workbook
 from loadsum.study.checks import billed_kwh
 from loadsum.study.load import load_study
 from loadsum.study.pseudonyms import key_beside, pseudonyms
-from loadsum.study.tables import Study, Transformer
+from loadsum.study.tables import Study
+from loadsum.study.unittables import Transformer
 from loadsum.transformer.criterionfigures import annual_probability, life_of, missing_for_life, temperature_figures
 from loadsum.transformer.loading import loadings
 from loadsum.transformer.loadtocome import load_to_come

@@ -11,7 +11,8 @@ from loadsum.demand.planned import Planned
 from loadsum.demand.settings import ModelSettings
 from loadsum.intake.hourclass import Calendar, DayBlock, lagged_daily_mean
 from loadsum.intake.readings import TemperatureRecord
-from loadsum.study.tables import Customer, ModelKeys, Transformer
+from loadsum.study.tables import Customer, ModelKeys
+from loadsum.study.unittables import Transformer
 
 COUNTS = ("existing", "planned", "transferred in")
 

@@ -4,7 +4,8 @@ from loadsum.demand.hourly import GroupDemand
 from loadsum.demand.served import Served
 from loadsum.study.assumptions import Assumption
 from loadsum.study.record import transformer_record
-from loadsum.study.tables import Study, Transformer
+from loadsum.study.tables import Study
+from loadsum.study.unittables import Transformer
 from loadsum.transformer.loading import seasons_without_allowance
 
 FILE = "study file"

@@ -9,8 +9,9 @@ from pathlib import Path
 
 from loadsum.errors import Fault
 from loadsum.study.futurechecks import check_load_to_come
-from loadsum.study.tables import Customer, Study, Transformer
+from loadsum.study.tables import Customer, Study
 from loadsum.study.thermalchecks import check_transformers
+from loadsum.study.unittables import Transformer
 from loadsum.study.values import shown
 
 OFFSET = re.compile(r"[+-](0\d|1[0-4]):[0-5]\d")

@@ -1,7 +1,7 @@
 """The record of a transformer in service: each figure with its source, and what is missing."""
 
 from loadsum.study.assumptions import Assumption
-from loadsum.study.tables import Transformer
+from loadsum.study.unittables import Transformer
 
 FIGURES = {
     "connection": ("connection of the windings", ""),

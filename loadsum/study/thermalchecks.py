@@ -1,7 +1,8 @@
 """What must hold of thermal data, losses and money in a study file."""
 
 from loadsum.errors import Fault
-from loadsum.study.tables import Study, Transformer
+from loadsum.study.tables import Study
+from loadsum.study.unittables import Transformer
 
 NEEDED = (
     "top_oil_rise_k",

@@ -6,8 +6,8 @@ import numpy as np
 
 from loadsum.demand.hourly import Direction
 from loadsum.peak.dayandyear import DayAndYear
-from loadsum.study.tables import AllowedLoading, Criterion, Transformer
 from loadsum.study.thermalchecks import missing_thermal
+from loadsum.study.unittables import AllowedLoading, Criterion, Transformer
 from loadsum.transformer.life import Life, LifeAtRating, life
 from loadsum.transformer.loading import allowed_pu
 from loadsum.transformer.selection import Figure, FigureSource

@@ -6,7 +6,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from loadsum.demand.hourly import GroupDemand
-from loadsum.study.tables import AllowedLoading
+from loadsum.study.unittables import AllowedLoading
 
 NAMEPLATE = "nameplate"
 NORMAL = "allowed loading, normal"

@@ -1,6 +1,6 @@
 """Ratings to compare: the study's own list, or a published preferred series."""
 
-from loadsum.study.tables import Transformer
+from loadsum.study.unittables import Transformer
 
 # Preferred ratings of the IEEE C57.12 family, read in two public restatements that agree (source_read_secondary);
 # the standard itself was not at hand: confirm on a licensed copy. [kVA]

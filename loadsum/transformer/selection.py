@@ -8,7 +8,7 @@ import numpy as np
 
 from loadsum.demand.hourly import Direction, GroupDemand
 from loadsum.peak.exceedance import ExceedanceTable, LevelExceedance, exceedance_hours
-from loadsum.study.tables import AllowedLoading, Criterion
+from loadsum.study.unittables import AllowedLoading, Criterion
 from loadsum.transformer.loading import allowed_pu
 
 Outcome = Literal["met", "not met", "not decided by these data", "cannot be evaluated"]

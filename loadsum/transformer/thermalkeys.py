@@ -4,8 +4,8 @@ import numpy as np
 from numpy.typing import NDArray
 
 from loadsum.peak.paths import DemandPaths
-from loadsum.study.tables import Transformer
 from loadsum.study.thermalchecks import NEEDED, missing_thermal
+from loadsum.study.unittables import Transformer
 from loadsum.transformer.thermal import ThermalData
 
 NO_AMBIENT = -100.0

@@ -1,7 +1,7 @@
 """The record of a transformer in service."""
 
 from loadsum.study.record import transformer_record
-from loadsum.study.tables import Transformer
+from loadsum.study.unittables import Transformer
 
 
 def test_each_figure_stands_with_its_source_and_the_missing_ones_are_listed():
