@@ -17,6 +17,7 @@ from loadsum.demand.dependence import (
 )
 from loadsum.demand.hourly import BlockDiagnostics, GroupDemand, HourDemand, with_normal, with_term
 from loadsum.demand.lattice import LatticeMass, lattice_mass
+from loadsum.demand.latticestep import affordable_step
 from loadsum.demand.planned import Planned, PlannedTerm, planned_terms, pooled
 from loadsum.demand.samplingerror import Resamples, resample_weeks
 from loadsum.demand.settings import ModelSettings
@@ -24,7 +25,6 @@ from loadsum.demand.temperature import TemperatureResponse, take_out_temperature
 from loadsum.intake.hourclass import DayBlock
 
 FEWEST_DAYS = 2
-MOST_POINTS = 2**14
 
 
 @dataclass(frozen=True, slots=True, kw_only=True, eq=False)
@@ -242,7 +242,7 @@ class _Block:
             + [weighted_variance(v, w) ** 0.5 for term, v, w in like for _ in range(term.count)]
         )
         target_raw = float((1.0 - raw_correlation) * (raw_spreads**2).sum() + raw_correlation * raw_spreads.sum() ** 2)
-        step = self.settings.lattice_kw or lattice_step(
+        step = self.settings.lattice_kw or affordable_step(
             [*own, *(v for _, v, _ in like)], target_raw**0.5, self.resolution_kw
         )
         by_class = self._by_class(adjusted)
@@ -394,18 +394,3 @@ def _spread_uncertainty(days: int) -> float:
 
 def _nearest(values: NDArray[np.float64], step: float, weights: NDArray[np.float64] | None) -> LatticeMass:
     return lattice_mass(np.rint(values / step) * step, step, "down", weights)
-
-
-def lattice_step(readings: Sequence[NDArray[np.float64]], spread_kw: float, resolution_kw: float) -> float:
-    """Step of the lattice on which a group's demands are summed. [kW]
-
-    A whole fraction of the meters' resolution, so that their readings need no rounding, or where they share none a
-    step so fine that rounding every customer outward hardly moves the sum; either as far as the number of points
-    stays affordable.
-    """
-    reach = sum(float(np.ptp(row)) for row in readings)
-    coarsest = max(reach / MOST_POINTS, 1e-5)
-    if resolution_kw > 0.0:
-        fine = max(0.001 * spread_kw, coarsest)
-        return resolution_kw / max(int(np.ceil(resolution_kw / fine)), 1) if fine < resolution_kw else resolution_kw
-    return max(0.003 * spread_kw / len(readings), coarsest)

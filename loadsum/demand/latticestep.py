@@ -10,6 +10,7 @@ from loadsum.demand.convolution import BracketedSum
 
 UNITS_PER_KW = 12_000_000  # readings are taken as multiples of 1 mW, or of a twelfth: averages of up to four, or six
 MOST_POINTS = 1_000_000  # points of all terms together up to which a lattice is affordable
+GROUP_POINTS = 2**14  # points of a group's sum up to which hundreds of demand intervals are affordable
 ROUNDS = 8
 SMALLEST = 1e-15  # probabilities below this are not asked of the bracket
 
@@ -129,3 +130,18 @@ def refined(
         step_kw = finer
     lower.flags.writeable = upper.flags.writeable = False
     return RefinedSum(bracket=bracket, lower=lower, upper=upper, widest=widest, tight=widest <= within)
+
+
+def affordable_step(readings: Sequence[NDArray[np.float64]], spread_kw: float, resolution_kw: float) -> float:
+    """Step of the lattice on which a group's demands are summed. [kW]
+
+    A whole fraction of the meters' resolution, so that their readings need no rounding, or where they share none a
+    step so fine that rounding every customer outward hardly moves the sum; either as far as the number of points
+    stays affordable.
+    """
+    reach = sum(float(np.ptp(row)) for row in readings)
+    coarsest = max(reach / GROUP_POINTS, 1e-5)
+    if resolution_kw > 0.0:
+        fine = max(0.001 * spread_kw, coarsest)
+        return resolution_kw / max(int(np.ceil(resolution_kw / fine)), 1) if fine < resolution_kw else resolution_kw
+    return max(0.003 * spread_kw / len(readings), coarsest)
