@@ -4,7 +4,6 @@ import json
 import logging
 import platform
 from collections.abc import Mapping, Sequence
-from dataclasses import replace
 from importlib import metadata
 from pathlib import Path
 from typing import Any
@@ -23,6 +22,7 @@ from loadsum.demand.served import (
     scaled,
     served_by,
     settings_of,
+    tested_group,
     with_more,
     with_unmetered_block,
 )
@@ -260,20 +260,18 @@ def one_transformer(
         served.group, [scaled(block, usable, allowance) for block in blocks], unit, readings.interval_min
     )
     settings = settings_of(asked.model)
-    tested = (
-        hold_out(
-            group_blocks,
-            fit=lambda fitting: group_demand(
-                fitting,
-                interval_min=readings.interval_min,
-                power_factor=unit.power_factor,
-                settings=held_out_settings(settings, shared_resolution(readings) * allowance),
-                group=replace(group, planned=()),
-            ),
-            served=group.served,
-        )
-        if group.served.any()
-        else None
+    judged, note = tested_group(group, bool(served.group.served.any()))
+    tested = hold_out(
+        group_blocks,
+        fit=lambda fitting: group_demand(
+            fitting,
+            interval_min=readings.interval_min,
+            power_factor=unit.power_factor,
+            settings=held_out_settings(settings, shared_resolution(readings) * allowance),
+            group=judged,
+        ),
+        served=judged.served,
+        note=note,
     )
 
     def modelled(changed: Group, changed_blocks: Sequence[DayBlock], resolution_kw: float) -> GroupDemand:

@@ -18,7 +18,7 @@ from loadsum.demand.dependence import (
 from loadsum.demand.hourly import BlockDiagnostics, GroupDemand, HourDemand, with_normal, with_term
 from loadsum.demand.lattice import LatticeMass, lattice_mass
 from loadsum.demand.latticestep import affordable_step
-from loadsum.demand.planned import Planned, PlannedTerm, planned_terms, pooled
+from loadsum.demand.planned import Planned, PlannedTerm, planned_terms, pooled, total_variance, within
 from loadsum.demand.samplingerror import Resamples, resample_weeks
 from loadsum.demand.settings import ModelSettings
 from loadsum.demand.temperature import TemperatureResponse, take_out_temperature
@@ -237,19 +237,20 @@ class _Block:
         own = [raw[c][np.isfinite(raw[c])] for c in served]
         like = [(term, *pooled(term, raw)) for term in self.terms]
         like = [(term, values, weights) for term, values, weights in like if values.size]
-        raw_spreads = np.array(
-            [values.std(ddof=1) for values in own]
-            + [weighted_variance(v, w) ** 0.5 for term, v, w in like for _ in range(term.count)]
+        target_raw = total_variance(
+            [float(values.var(ddof=1)) for values in own],
+            [(term, within(term, raw)) for term, _, _ in like],
+            [weighted_variance(v, w) for _, v, w in like],
+            raw_correlation,
         )
-        target_raw = float((1.0 - raw_correlation) * (raw_spreads**2).sum() + raw_correlation * raw_spreads.sum() ** 2)
         step = self.settings.lattice_kw or affordable_step(
             [*own, *(v for _, v, _ in like)], target_raw**0.5, self.resolution_kw
         )
         by_class = self._by_class(adjusted)
-        down, up, counts, spreads, held = [], [], [], [], 0.0
+        down, up, counts, variances, pooled_variances, held = [], [], [], [], [], 0.0
         for c in served.tolist():
             values = adjusted[c][np.isfinite(adjusted[c])]
-            spreads.append(float(values.std(ddof=1)))
+            variances.append(float(values.var(ddof=1)))
             low, high, variance = self._customer(c, values, by_class, step, response is not None)
             down.append(low)
             up.append(high)
@@ -263,10 +264,11 @@ class _Block:
             down.append(low)
             up.append(low)
             counts.append(term.count)
-            spreads.extend([variance**0.5] * term.count)
+            pooled_variances.append(variance)
             held += variance * term.count
-        sd = np.array(spreads)
-        target = float((1.0 - correlation) * (sd**2).sum() + correlation * sd.sum() ** 2)
+        target = total_variance(
+            variances, [(term, within(term, adjusted)) for term, _, _ in like], pooled_variances, correlation
+        )
         exact = all(a is b for a, b in zip(down, up, strict=True))
         lower = DemandSum(terms=tuple(down), counts=tuple(counts))
         still = BracketedSum(down=lower, up=lower if exact else DemandSum(terms=tuple(up), counts=tuple(counts)))

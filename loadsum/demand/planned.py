@@ -96,3 +96,39 @@ def pooled(term: PlannedTerm, kw: NDArray[np.float64]) -> tuple[NDArray[np.float
     if not rows:
         return np.empty(0), np.empty(0)
     return np.concatenate(rows), np.concatenate([np.full(row.size, 1.0 / (row.size * len(rows))) for row in rows])
+
+
+def within(term: PlannedTerm, kw: NDArray[np.float64]) -> float:
+    """Mean over the members of their own standard deviations, scaled: what days do to one planned customer. [kW]"""
+    spreads = [
+        float(kw[m][np.isfinite(kw[m])].std(ddof=1)) * scale
+        for m, scale in zip(term.members, term.scale, strict=True)
+        if np.isfinite(kw[m]).sum() >= 2
+    ]
+    return float(np.mean(spreads)) if spreads else 0.0
+
+
+def total_variance(
+    metered_kw2: Sequence[float],
+    planned: Sequence[tuple[PlannedTerm, float]],
+    planned_kw2: Sequence[float],
+    correlation: float,
+) -> float:
+    """Variance of a group: every customer's own, and the covariance of what days do to them. [kW²]
+
+    Parameters
+    ----------
+    metered_kw2 : sequence of float
+        Variance of each metered customer. [kW²]
+    planned : sequence of (PlannedTerm, float)
+        Planned entries with the standard deviation that days make, without what tells members apart. [kW]
+    planned_kw2 : sequence of float
+        Variance of one planned customer of each entry, members told apart. [kW²]
+    correlation : float
+        Mean correlation between customers. [-]
+    """
+    spreads = [variance**0.5 for variance in metered_kw2]
+    spreads += [spread for term, spread in planned for _ in range(term.count)]
+    own = sum(metered_kw2) + sum(term.count * v for (term, _), v in zip(planned, planned_kw2, strict=True))
+    pairs = sum(spreads) ** 2 - sum(spread**2 for spread in spreads)
+    return float(own + correlation * pairs)

@@ -206,3 +206,15 @@ def record_by_class(
 def held_out_settings(settings: ModelSettings, resolution_kw: float) -> ModelSettings:
     """The same model for the hold-out test, which asks for levels only: no intervals, and a coarser lattice. [kW]"""
     return replace(settings, resamples=0, lattice_kw=max(resolution_kw, 0.02))
+
+
+def tested_group(group: Group, metered: bool) -> tuple[Group, str]:
+    """The metered customers that a hold-out test can judge, and what to say of them.
+
+    Where nobody served is metered, the customers metered elsewhere stand in: the test then judges the model on them.
+    """
+    if metered:
+        return replace(group, planned=()), ""
+    elsewhere = np.array([name not in ("", UNMETERED) for name in group.classes], dtype=bool)
+    note = "No customer served is metered; the customers metered elsewhere were tested in their place, as one group."
+    return replace(group, planned=(), served=elsewhere), note

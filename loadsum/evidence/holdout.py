@@ -148,6 +148,7 @@ def hold_out(
     fit: Callable[[Sequence[DayBlock]], GroupDemand],
     served: NDArray[np.bool_] | None = None,
     most_hours: int = 200,
+    note: str = "",
 ) -> HoldOut | None:
     """Alternate whole weeks fitted and tested, then the other way round.
 
@@ -162,6 +163,8 @@ def hold_out(
     most_hours : int
         Demand intervals of all classes of days that are tested; where there are more, every second, third or so of
         the day. [-]
+    note : str
+        What else to say of how it was done.
 
     Returns
     -------
@@ -208,7 +211,7 @@ def hold_out(
                     )
     if not tally.day:
         return None
-    return _summary(tally, int(weeks.size), every)
+    return _summary(tally, int(weeks.size), every, note)
 
 
 def _score(
@@ -276,7 +279,7 @@ def _moved(hour: HourDemand, warmth: NDArray[np.float64] | None) -> _Moved | Non
     return _Moved(hour.without_temperature(spread), hour.response.shift_kw(warmth))
 
 
-def _summary(tally: _Tally, weeks: int, every: int) -> HoldOut:
+def _summary(tally: _Tally, weeks: int, every: int, note: str) -> HoldOut:
     day = np.concatenate(tally.day)
     week = np.unique(week_of(day), return_inverse=True)[1]
     intervals = np.bincount(week).astype(np.float64)
@@ -317,6 +320,7 @@ def _summary(tally: _Tally, weeks: int, every: int) -> HoldOut:
             "Whole weeks in turn were fitted and held out, then swapped: "
             f"{weeks} weeks, {day.size} demand intervals scored"
             f"{'' if every == 1 else f', one in {every} of the day'}."
+            f"{f' {note}' if note else ''}"
         ),
         sentence=plain_sentence(mine),
         passed=all(row.observed_share <= row.chance_high for row in mine[1:]),
