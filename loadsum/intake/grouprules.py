@@ -13,8 +13,8 @@ FEWEST_CUSTOMERS = 4
 USUALLY_ALIVE = 0.2  # a customer at zero more often than this tells nothing of an outage
 DRIFT_H = 2.0  # greatest shift looked for [h]
 DRIFT_DAYS = 56  # shortest record in which a drift is looked for [d]
-DRIFT_CORRELATION = 0.3  # with the group, below which the shift is not to be told
-DRIFT_GAIN = 0.05  # by which the shifted correlation must beat the unshifted
+DRIFT_CORRELATION = 0.5  # with the group, below which the shift is not to be told
+DRIFT_GAIN = 0.1  # by which the shifted correlation must beat the unshifted
 
 
 def outages(held: Held) -> Iterator[Doubt]:
