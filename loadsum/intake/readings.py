@@ -7,6 +7,8 @@ from numpy.typing import NDArray
 
 from loadsum.intake.findings import Finding
 
+UNITS_PER_KW = 12_000_000  # resolutions are taken as multiples of a twelfth of a milliwatt, for averages of intervals
+
 
 def read_only(array: NDArray[np.generic]) -> None:
     """Make an array read-only in place; every array that crosses a stage boundary is."""
@@ -85,9 +87,15 @@ class Readings:
 
 
 def shared_resolution(readings: Readings) -> float:
-    """Resolution that all meters share, as demand; 0 where they differ or one is unknown. [kW]"""
-    found = np.unique(readings.resolution_kw)
-    return float(found[0]) if found.size == 1 else 0.0
+    """Largest step of which the readings of every meter are multiples; 0 where one has no resolution. [kW]"""
+    moving = np.array([np.any(row[np.isfinite(row)] != 0.0) for row in readings.kw], dtype=bool)
+    known = readings.resolution_kw[moving]
+    if known.size == 0 or np.any(known <= 0.0):
+        return 0.0
+    units = np.rint(known * UNITS_PER_KW)
+    if np.any(np.abs(known * UNITS_PER_KW - units) > 1e-3 * units):
+        return 0.0
+    return float(np.gcd.reduce(units.astype(np.int64))) / UNITS_PER_KW
 
 
 @dataclass(frozen=True, slots=True, kw_only=True, eq=False)
