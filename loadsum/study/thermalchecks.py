@@ -38,6 +38,16 @@ def check_transformers(study: Study) -> list[Fault]:
         )
         if bool(unit.no_load_losses_w) != bool(unit.load_losses_w):
             faults.append(Fault(f"{where}.load_losses_w", "no-load and load losses must be given together"))
+        if bool(unit.loss_factor_a_per_w) != bool(unit.loss_factor_b_per_w):
+            faults.append(Fault(f"{where}.loss_factor_b_per_w", "both worths of a watt must be given together"))
+        if unit.energy_price_per_kwh and (unit.loss_factor_a_per_w or unit.loss_factor_b_per_w):
+            faults.append(
+                Fault(f"{where}.energy_price_per_kwh", "stands beside the worth of a watt; keep one of the two")
+            )
+        if bool(unit.energy_price_per_kwh) != bool(unit.worth_years):
+            faults.append(
+                Fault(f"{where}.worth_years", "must be given together with energy_price_per_kwh; no horizon is assumed")
+            )
     for n, criterion in enumerate(study.criterion, start=1):
         if criterion.quantity in TEMPERATURE_QUANTITIES[:2] and criterion.probability == 0.0:
             faults.append(

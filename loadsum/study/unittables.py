@@ -104,6 +104,16 @@ class Transformer:
     loss_factor_b_per_w: float = key(
         "Worth of a watt of rated load losses; 0 where none. [currency/W]", default=0.0, at_least=0.0
     )
+    energy_price_per_kwh: float = key(
+        "Price of lost energy, instead of the worth of a watt; 0 where none. [currency/kWh]", default=0.0, at_least=0.0
+    )
+    discount_rate_pct: float = key(
+        "Rate at which the price of a year's lost energy is discounted, % per year.",
+        default=0.0,
+        at_least=0.0,
+        at_most=100.0,
+    )
+    worth_years: int = key("Years over which lost energy is counted; 0 where none. [a]", default=0, at_least=0)
     prices: tuple[float, ...] = key(
         "Price of each rating compared, in their order. [currency]", default=(), at_least=0.0
     )

@@ -8,18 +8,23 @@ from loadsum.demand.hourly import Direction
 from loadsum.peak.dayandyear import DayAndYear
 from loadsum.study.thermalchecks import missing_thermal
 from loadsum.study.unittables import AllowedLoading, Criterion, Transformer
-from loadsum.transformer.life import Life, LifeAtRating, life
+from loadsum.transformer.life import QUANTILES, Life, LifeAtRating, life
 from loadsum.transformer.loading import allowed_pu
 from loadsum.transformer.selection import Figure, FigureSource
 from loadsum.transformer.thermalkeys import ambient_of, thermal_data
 
-YEARS = 200  # drawn for temperatures; a probability per year below 1/200 is not supported by them
+YEARS = 200  # drawn for temperatures
+RAREST = 0.5 / QUANTILES  # smallest probability per year that the figures kept of them answer
+WHOLE_YEAR = "this figure is of the whole year; no part of it is judged"
+BOTH_WAYS = "temperature and ageing go by the loading in both directions; one alone is not judged"
 
 
 def annual_probability(together: DayAndYear, allowed: Sequence[AllowedLoading], seed: int) -> FigureSource:
     """Probability that a year passes the loading of a criterion, days independent within their class and weather."""
 
     def figure(criterion: Criterion, rating_kva: float) -> Figure:
+        if criterion.season != "all":
+            return Figure(value=float("nan"), reason=WHOLE_YEAR)
         level = rating_kva * allowed_pu(together.demand, criterion.of, allowed)
         if np.isnan(level).any():
             return Figure(value=float("nan"), reason=f"the study file states no {criterion.of} for every season")
@@ -56,7 +61,7 @@ def life_of(
     assumed = [
         words,
         f"thermal data the same per unit for every rating: {unit.thermal_source or 'no source given'}",
-        f"{YEARS} years drawn; the first day of each is warm-up",
+        f"{YEARS} years drawn",
         f"load is taken as constant within {paths.interval_min} min; what it does inside is hidden",
     ]
     if unit.derating_pu < 1.0:
@@ -81,10 +86,20 @@ def temperature_figures(lived: Life | None, missing: str) -> dict[str, FigureSou
     def at(rating_kva: float) -> LifeAtRating | None:
         return None if lived is None else next(row for row in lived.by_rating if row.rating_kva == rating_kva)
 
+    def why_not(criterion: Criterion, row: LifeAtRating | None) -> str:
+        if row is None:
+            return reason
+        if criterion.season != "all":
+            return WHOLE_YEAR
+        return BOTH_WAYS if criterion.direction != "both" else ""
+
     def hottest(criterion: Criterion, rating_kva: float) -> Figure:
         row = at(rating_kva)
-        if row is None:
-            return Figure(value=float("nan"), reason=reason)
+        why = why_not(criterion, row)
+        if not why and criterion.probability < RAREST:
+            why = f"{YEARS} drawn years answer no probability per year below {RAREST:g}"
+        if row is None or why:
+            return Figure(value=float("nan"), reason=why)
         oil = criterion.quantity == "top-oil temperature"
         highest = row.top_oil_quantiles_c if oil else row.hot_spot_quantiles_c
         share = (np.arange(highest.size) + 0.5) / highest.size
@@ -92,6 +107,7 @@ def temperature_figures(lived: Life | None, missing: str) -> dict[str, FigureSou
 
     def aged(criterion: Criterion, rating_kva: float) -> Figure:
         row = at(rating_kva)
-        return Figure(value=float("nan"), reason=reason) if row is None else Figure(value=row.ageing_pu)
+        why = why_not(criterion, row)
+        return Figure(value=float("nan"), reason=why) if row is None or why else Figure(value=row.ageing_pu)
 
     return {"hot-spot temperature": hottest, "top-oil temperature": hottest, "ageing per year": aged}

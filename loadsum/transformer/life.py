@@ -7,8 +7,9 @@ import numpy as np
 from numpy.typing import NDArray
 
 from loadsum.peak.paths import DemandPaths
-from loadsum.transformer.ageing import Paper, relative_ageing_rate
-from loadsum.transformer.thermal import Guide, ThermalData, temperatures
+from loadsum.transformer.ageing import Paper
+from loadsum.transformer.thermal import Guide, ThermalData
+from loadsum.transformer.thermalyears import parts_of, run_figures, start_left_k, warm_up_days
 
 QUANTILES = 50
 DAYS = 365
@@ -87,8 +88,8 @@ def life(
 ) -> Life:
     """Temperatures and ageing of every rating over whole drawn years, each continuous from its first hour to its last.
 
-    The first day of each year starts from the steady state of the year's mean loading and is left out of the highest
-    temperatures: a warm-up of several oil time constants.
+    Each year starts from the steady state of its mean loading. Its first days are warm-up and count for nothing: as
+    many as it takes until the start cannot change the hot spot by more than 0.05 K.
 
     Parameters
     ----------
@@ -115,12 +116,25 @@ def life(
     air = ambient_c.reshape(years, DAYS * intervals)
     if not np.all(np.isfinite(load)):
         raise ValueError("demand paths with intervals without readings have no temperature")
+    warm_up = warm_up_days(data, guide)
+    if warm_up >= DAYS:
+        raise ValueError(f"an oil time constant of {data.oil_time_constant_min:g} min needs {warm_up} days of warm-up")
+    parts = parts_of(paths.interval_min, data)
+    found = run_figures(
+        load,
+        air,
+        paths.interval_min,
+        np.array(ratings_kva, dtype=np.float64) * derating_pu,
+        data,
+        guide,
+        paper,
+        warm_up=warm_up * intervals,
+        parts=parts,
+    )
+    share = (np.arange(QUANTILES) + 0.5) / QUANTILES
     rows = []
-    for rating in ratings_kva:
-        oil, hot = temperatures(load / (rating * derating_pu), air, paths.interval_min, data, guide)
-        ageing = relative_ageing_rate(hot, paper).mean(axis=1)
-        highest, highest_oil = hot[:, intervals:].max(axis=1), oil[:, intervals:].max(axis=1)
-        share = (np.arange(QUANTILES) + 0.5) / QUANTILES
+    for r, rating in enumerate(ratings_kva):
+        highest, highest_oil, ageing = found.hot_spot_c[:, r], found.top_oil_c[:, r], found.ageing_pu[:, r]
         rows.append(
             LifeAtRating(
                 rating_kva=rating,
@@ -141,6 +155,12 @@ def life(
         model=f"{guide}, {paper} paper",
         years=years,
         hot_spot_limit_c=hot_spot_limit_c,
-        assumed=tuple(assumed),
+        assumed=(
+            *assumed,
+            f"warm-up: the first {warm_up} d of each year; whether from no load or from rated load, the start then"
+            f" changes the hot spot by no more than {start_left_k(data, guide, warm_up):.2g} K",
+            f"ageing is integrated at {parts} parts of each {paths.interval_min} min, because the winding responds"
+            f" within {data.winding_time_constant_min:g} min",
+        ),
         by_rating=tuple(rows),
     )

@@ -63,6 +63,12 @@ def owning_cost(price: float, a_per_w: float, no_load_w: float, b_per_w: float, 
     return price + a_per_w * no_load_w + b_per_w * load_w
 
 
+def annuity(rate_pct: float, years: int) -> float:
+    """Present worth of 1 paid at the end of each of so many years. [%, a -> -]"""
+    rate = rate_pct / 100.0
+    return float(years) if rate == 0.0 else (1.0 - (1.0 + rate) ** -years) / rate
+
+
 def losses(
     demand: GroupDemand,
     ratings_kva: Sequence[float],
@@ -71,6 +77,9 @@ def losses(
     *,
     a_per_w: float = 0.0,
     b_per_w: float = 0.0,
+    energy_price_per_kwh: float = 0.0,
+    discount_rate_pct: float = 0.0,
+    worth_years: int = 0,
     prices: Sequence[float] = (),
     currency: str = "",
 ) -> Losses | None:
@@ -86,6 +95,12 @@ def losses(
         No-load losses, and load losses at rated load, in the order of the ratings. [W]
     a_per_w, b_per_w : float
         Worth of a watt of no-load and of rated load losses; 0 where not given. [currency/W]
+    energy_price_per_kwh : float
+        Price of lost energy, used where the worth of a watt is not given; 0 where none. [currency/kWh]
+    discount_rate_pct : float
+        Rate at which the price of each year's energy is discounted. [% per year]
+    worth_years : int
+        Years over which lost energy is counted. [a]
     prices : sequence of float
         Prices in the order of the ratings. [currency]
     currency : str
@@ -98,16 +113,20 @@ def losses(
     year_h = float(np.sum(demand.hours_in_year()[demand.covered()]))
     rows = []
     for n, rating in enumerate(ratings_kva):
-        worth = a_per_w * no_load_w[n] + b_per_w * load_w[n] if a_per_w > 0.0 and b_per_w > 0.0 else None
+        no_load_kwh = no_load_w[n] * year_h / 1000.0
+        load_kwh = load_w[n] * mean_square_pu_hours(demand, rating) / 1000.0
+        worth = None
+        if a_per_w > 0.0 and b_per_w > 0.0:
+            worth = owning_cost(0.0, a_per_w, no_load_w[n], b_per_w, load_w[n])
+        elif energy_price_per_kwh > 0.0 and worth_years > 0:
+            worth = energy_price_per_kwh * (no_load_kwh + load_kwh) * annuity(discount_rate_pct, worth_years)
         rows.append(
             LossesAtRating(
                 rating_kva=rating,
-                no_load_kwh=no_load_w[n] * year_h / 1000.0,
-                load_kwh=load_w[n] * mean_square_pu_hours(demand, rating) / 1000.0,
+                no_load_kwh=no_load_kwh,
+                load_kwh=load_kwh,
                 present_worth=worth,
-                owning_cost=owning_cost(prices[n], a_per_w, no_load_w[n], b_per_w, load_w[n])
-                if worth is not None and prices
-                else None,
+                owning_cost=prices[n] + worth if worth is not None and prices else None,
             )
         )
     return Losses(currency=currency, by_rating=tuple(rows))
