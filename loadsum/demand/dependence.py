@@ -83,44 +83,6 @@ def smoothing_weights(intervals: int, reach: float) -> NDArray[np.float64]:
     return np.asarray(weight / weight.sum(axis=1, keepdims=True), dtype=np.float64)
 
 
-def group_movement(sums_kw: NDArray[np.float64], interval: int, neighbours: int) -> NDArray[np.float64]:
-    """The group's own movement from day to day, standardised: its shape without its size.
-
-    Parameters
-    ----------
-    sums_kw : (D, I) float64
-        Observed time-aligned sums; NaN where a customer is missing. [kW]
-    interval : int
-        Interval of the day. [-]
-    neighbours : int
-        Intervals on each side whose movement is pooled. [-]
-
-    Returns
-    -------
-    (n,) float64
-        Zero mean, unit variance; a single 0 where there is no movement. [-]
-    """
-    intervals = sums_kw.shape[1]
-    moved = []
-    for step in range(-neighbours, neighbours + 1):
-        column = sums_kw[:, (interval + step) % intervals]
-        column = column[np.isfinite(column)]
-        spread = column.std() if column.size >= 3 else 0.0
-        if spread > 0.0:
-            moved.append((column - column.mean()) / spread)
-    return np.concatenate(moved) if moved else np.zeros(1)
-
-
-def kernel_bandwidth(shape: NDArray[np.float64]) -> float:
-    """Width of the smoothing kernel for a standardised shape of n values (Silverman's rule, 0.9 n^(-1/5)). [-]
-
-    References
-    ----------
-    .. [1] Silverman, Density Estimation for Statistics and Data Analysis, 1986, eq. 3.31 (from memory).
-    """
-    return 0.9 * float(shape.size) ** -0.2 if shape.size > 1 else 0.0
-
-
 def mean_variance(sums_kw: NDArray[np.float64], day: NDArray[np.int64]) -> NDArray[np.float64]:
     """Variance of the mean of the sum, with weeks as blocks and at least that of independent days, (I,) float64. [kW²]
 

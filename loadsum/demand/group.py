@@ -6,15 +6,10 @@ from dataclasses import dataclass, replace
 import numpy as np
 from numpy.typing import NDArray
 
+from loadsum.demand.commonterm import skewness_along_day, variance_uncertainty_kw2, with_common_term
 from loadsum.demand.convolution import BracketedSum, DemandSum, plain_distributions
 from loadsum.demand.customerclass import borrowed, relative_readings, weighted_variance
-from loadsum.demand.dependence import (
-    CommonComponent,
-    common_component,
-    group_movement,
-    kernel_bandwidth,
-    mean_variance,
-)
+from loadsum.demand.dependence import CommonComponent, common_component, mean_variance
 from loadsum.demand.hourly import BlockDiagnostics, GroupDemand, HourDemand, with_normal, with_term
 from loadsum.demand.lattice import LatticeMass, lattice_mass
 from loadsum.demand.latticestep import affordable_step
@@ -181,13 +176,14 @@ class _Block:
         equivalent = np.einsum("c,cdi->di", weight[counted], adjusted[counted])
         observed = np.einsum("c,cdi->di", weight[counted], kw[counted])
         spread_of_mean = mean_variance(equivalent, self.block.day)
+        lean = skewness_along_day(equivalent, reach)
         nothing: tuple[Resamples | None, ...] = (None,) * intervals
         resamples = nothing if rng is None else resample_weeks(observed, self.block.day, self.settings.resamples, rng)
         made = tuple(
             self._hour(
                 i,
                 adjusted[:, :, i],
-                equivalent,
+                float(lean[i]),
                 self._correlation(common)[i],
                 self._correlation(raw)[i],
                 float(spread_of_mean[i]),
@@ -224,7 +220,7 @@ class _Block:
         self,
         i: int,
         adjusted: NDArray[np.float64],
-        equivalent: NDArray[np.float64],
+        skewness: float,
         correlation: float,
         raw_correlation: float,
         mean_variance_kw2: float,
@@ -273,12 +269,10 @@ class _Block:
         lower = DemandSum(terms=tuple(down), counts=tuple(counts))
         still = BracketedSum(down=lower, up=lower if exact else DemandSum(terms=tuple(up), counts=tuple(counts)))
         if self.settings.common_component:
-            shape = group_movement(equivalent, i, self.settings.neighbour_hours)
-            width = kernel_bandwidth(shape)
-            scale = max(target - held, 0.0) ** 0.5 / (1.0 + width**2) ** 0.5
-            still = with_term(still, shape * scale, np.full(shape.size, 1.0 / shape.size), width * scale)
+            still = with_common_term(still, counts, target, target - held, skewness)
         if self.settings.mean_uncertainty:
-            still = with_normal(still, (mean_variance_kw2 + target * _spread_uncertainty(self._days(adjusted))) ** 0.5)
+            unknown = variance_uncertainty_kw2(variances, target, self._days(adjusted))
+            still = with_normal(still, (mean_variance_kw2 + unknown) ** 0.5)
         total = self._over_the_record(still, response)
         whole_down, whole_up = plain_distributions(total)
         nearest = DemandSum(
@@ -387,11 +381,6 @@ class _Block:
             record_days_outside=outside,
             share_below_zero=max(below, default=0.0),
         )
-
-
-def _spread_uncertainty(days: int) -> float:
-    """Share by which not knowing the variance widens a predictive law: that of Student's law with days - 1. [-]"""
-    return 2.0 / (days - 3) if days > 4 else 2.0
 
 
 def _nearest(values: NDArray[np.float64], step: float, weights: NDArray[np.float64] | None) -> LatticeMass:

@@ -149,6 +149,7 @@ def continuous_mass(
     step_kw: float,
     rounding: Literal["down", "up"],
     cells: int = CELLS,
+    middle_kw: float | None = None,
 ) -> LatticeMass:
     """A continuous demand rounded to the lattice in one direction, its tails cut on the outward side.
 
@@ -168,11 +169,14 @@ def continuous_mass(
         Direction of rounding.
     cells : int
         Number of cells that the range is cut into, where the lattice has more points than that. [-]
+    middle_kw : float or None
+        Demand up to which ``cdf`` is used and from which ``survival`` is, so that neither is near one far out; the
+        middle of the range when None. [kW]
     """
     stride = cell_steps(low_kw, high_kw, step_kw, cells)
     first, last = int(np.floor(low_kw / (stride * step_kw))), int(np.ceil(high_kw / (stride * step_kw)))
     edges: NDArray[np.float64] = np.arange(first, last + 1, dtype=np.float64) * (stride * step_kw)
-    middle = edges.size // 2
+    middle = edges.size // 2 if middle_kw is None else int(np.searchsorted(edges, middle_kw))
     below, above = cdf(edges[: middle + 1]), survival(edges[middle:])
     mass = np.zeros((edges.size - 1) * stride + 1)
     shares = np.concatenate([np.diff(below), -np.diff(above)])

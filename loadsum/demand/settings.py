@@ -13,10 +13,8 @@ class ModelSettings:
         Parts of the model that are on.
     borrowed_days : float
         Weight of the customer class in each customer's distribution. [d]
-    neighbour_hours : int
-        Intervals on each side whose movement shapes the common component. [-]
     smoothing_h : float
-        Standard deviation of the smoothing of the correlation along the day. [h]
+        Standard deviation of the smoothing of correlation and skewness along the day. [h]
     lattice_kw : float
         Step of the lattice; 0 takes it from the meters' resolution. [kW]
     correlation : float or None
@@ -32,7 +30,6 @@ class ModelSettings:
     shrinkage: bool = True
     mean_uncertainty: bool = True
     borrowed_days: float = 10.0
-    neighbour_hours: int = 1
     smoothing_h: float = 3.0
     lattice_kw: float = 0.0
     correlation: float | None = None
