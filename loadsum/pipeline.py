@@ -58,6 +58,7 @@ from loadsum.transformer.loadtocome import load_to_come
 from loadsum.transformer.losses import losses
 from loadsum.transformer.ratings import ratings_of
 from loadsum.transformer.selection import evaluate
+from loadsum.transformer.sensitivity import sensitivity
 
 log = logging.getLogger(__name__)
 
@@ -324,6 +325,9 @@ def one_transformer(
             **temperature_figures(lived, missing_for_life(unit)),
         },
     )
+    turning = sensitivity(
+        demand, ratings, selection, asked.criterion, asked.allowed_loading, power_factor=unit.power_factor
+    )
     scenarios, rooms = load_to_come(
         asked,
         demand,
@@ -377,5 +381,5 @@ def one_transformer(
         ),
         evidence=tested,
         diagnostics=demand.diagnostics,
-        assumptions=assumptions(asked, unit, served, demand),
+        assumptions=assumptions(asked, unit, served, demand, turning),
     )

@@ -7,19 +7,43 @@ from loadsum.study.record import transformer_record
 from loadsum.study.tables import Study
 from loadsum.study.unittables import Transformer
 from loadsum.transformer.loading import seasons_without_allowance
+from loadsum.transformer.sensitivity import Sensitivity, ambient_effect, demand_effect, power_factor_effect
+from loadsum.transformer.thermalkeys import NO_AMBIENT, thermal_data
 
 FILE = "study file"
 DEFAULT = "program default"
 
 
-def assumptions(asked: Study, unit: Transformer, served: Served, demand: GroupDemand) -> tuple[Assumption, ...]:
-    """Everything the study of one transformer takes as given."""
+THERMAL = {
+    "top_oil_rise_k": ("top-oil rise at rated load", "K"),
+    "hot_spot_gradient_k": ("hot-spot rise over top oil at rated load", "K"),
+    "loss_ratio": ("load losses at rated load over no-load losses", ""),
+    "oil_exponent": ("oil exponent", ""),
+    "winding_exponent": ("winding exponent", ""),
+    "oil_time_constant_min": ("oil time constant", "min"),
+    "winding_time_constant_min": ("winding time constant", "min"),
+}
+
+
+def assumptions(
+    asked: Study, unit: Transformer, served: Served, demand: GroupDemand, turning: Sensitivity | None = None
+) -> tuple[Assumption, ...]:
+    """Everything the study of one transformer takes as given, and what the choice does where that was worked out."""
     listed = [
         Assumption(
             name="power factor of the group",
             value=f"{unit.power_factor:g}",
             source=unit.power_factor_source or "no source given",
             decided_by=FILE,
+            effect=power_factor_effect(turning),
+        ),
+        Assumption(
+            name="growth of demand since the readings, in the choice of rating",
+            value="0",
+            unit="%",
+            source="none: demand as metered, with the customers and loads of the study",
+            decided_by=DEFAULT,
+            effect=demand_effect(turning),
         ),
         Assumption(
             name="losses between meters and transformer",
@@ -37,6 +61,8 @@ def assumptions(asked: Study, unit: Transformer, served: Served, demand: GroupDe
         ),
     ]
     listed += transformer_record(unit)
+    if thermal_data(unit) is not None:
+        listed += _thermal(unit, turning)
     missing = seasons_without_allowance(demand, asked.allowed_loading)
     if asked.allowed_loading and missing:
         listed.append(
@@ -87,3 +113,25 @@ def assumptions(asked: Study, unit: Transformer, served: Served, demand: GroupDe
             )
         )
     return tuple(listed)
+
+
+def _thermal(unit: Transformer, turning: Sensitivity | None) -> list[Assumption]:
+    """Thermal data, the same per unit for every rating, and the ambient."""
+    source = unit.thermal_source or "no source given"
+    rows = [
+        Assumption(name=name, value=f"{getattr(unit, key):g}", unit=symbol, source=source, decided_by=FILE)
+        for key, (name, symbol) in THERMAL.items()
+    ]
+    rows.append(Assumption(name="insulation paper", value=unit.paper, source=source, decided_by=FILE))
+    stated = unit.ambient_c > NO_AMBIENT
+    rows.append(
+        Assumption(
+            name="ambient temperature of the transformer",
+            value=f"{unit.ambient_c:g}" if stated else "outdoor temperature of the same days",
+            unit="°C, where no series is given" if stated else "",
+            source=FILE if stated else "[weather]",
+            decided_by=FILE,
+            effect=ambient_effect(turning),
+        )
+    )
+    return rows

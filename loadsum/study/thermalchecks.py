@@ -18,7 +18,7 @@ TEMPERATURE_QUANTITIES = ("hot-spot temperature", "top-oil temperature", "ageing
 
 def missing_thermal(unit: Transformer) -> tuple[str, ...]:
     """Figures that a temperature needs and the study file leaves out."""
-    return tuple(name for name in NEEDED if getattr(unit, name) <= 0.0)
+    return tuple(name for name in NEEDED if getattr(unit, name) <= 0.0) + (() if unit.paper else ("paper",))
 
 
 def check_transformers(study: Study) -> list[Fault]:

@@ -57,7 +57,9 @@ class Transformer:
         choices=("", "IEEE C57.91", "IEC 60076-7"),
     )
     paper: str = key(
-        "Insulation paper of the windings.", default="thermally upgraded", choices=("kraft", "thermally upgraded")
+        "Insulation paper of the windings; needed for temperatures, never assumed.",
+        default="",
+        choices=("", "kraft", "thermally upgraded"),
     )
     top_oil_rise_k: float = key(
         "Top-oil rise over ambient at rated load; 0 where unknown. [K]", default=0.0, at_least=0.0

@@ -13,6 +13,8 @@ from loadsum.transformer.thermalyears import parts_of, run_figures, start_left_k
 
 QUANTILES = 50
 DAYS = 365
+# Largest hot spot that IEC 60076-7:2018, table 2, names: short-time emergency loading (read in a restatement). [°C]
+LARGEST_NAMED_C = 160.0
 
 
 @dataclass(frozen=True, slots=True, kw_only=True, eq=False)
@@ -151,6 +153,12 @@ def life(
                 else float((highest > hot_spot_limit_c).mean()),
             )
         )
+    beyond = [row.rating_kva for row in rows if row.hot_spot_1_year_in_10_c > LARGEST_NAMED_C]
+    extrapolated = [
+        f"{', '.join(f'{rating:g}' for rating in beyond)} kVA: hot spots above {LARGEST_NAMED_C:g} °C, the largest that"
+        " IEC 60076-7 names for short emergencies, extrapolate the equations: they say no more"
+        " than that the rating is too small"
+    ]
     return Life(
         model=f"{guide}, {paper} paper",
         years=years,
@@ -161,6 +169,7 @@ def life(
             f" changes the hot spot by no more than {start_left_k(data, guide, warm_up):.2g} K",
             f"ageing is integrated at {parts} parts of each {paths.interval_min} min, because the winding responds"
             f" within {data.winding_time_constant_min:g} min",
+            *(extrapolated if beyond else ()),
         ),
         by_rating=tuple(rows),
     )

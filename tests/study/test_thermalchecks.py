@@ -41,6 +41,12 @@ MESSAGES = {
         "",
         "transformer.loading_guide: needs hot_spot_gradient_k, loss_ratio, oil_exponent",
     ),
+    "guide without paper": (
+        'loading_guide = "IEC 60076-7"\ntop_oil_rise_k = 55\nhot_spot_gradient_k = 23\nloss_ratio = 5\n'
+        "oil_exponent = 0.8\nwinding_exponent = 1.6\noil_time_constant_min = 180\nwinding_time_constant_min = 4",
+        "",
+        "transformer.loading_guide: needs paper; none of these is ever assumed",
+    ),
     "limit below ambient": (
         "ambient_c = 40",
         HOT_SPOT.format(30, 0.1),

@@ -125,3 +125,9 @@ def test_what_the_drawn_years_do_not_answer_is_refused(changes, words):
     criterion = Criterion(quantity="hot-spot temperature", limit=120.0, **changes)
     figure = temperature_figures(lived(), "")["hot-spot temperature"](criterion, 20.0)
     assert np.isnan(figure.value) and words in figure.reason
+
+
+def test_temperatures_beyond_what_the_guide_names_are_called_extrapolated():
+    assert "extrapolate" not in " ".join(life(PATHS, AIR, [30.0], DATA, "IEEE C57.91", "kraft").assumed)
+    small = life(PATHS, AIR, [12.0, 30.0], DATA, "IEEE C57.91", "kraft").assumed[-1]
+    assert small.startswith("12 kVA: hot spots above 160 °C") and "extrapolate" in small
