@@ -10,13 +10,14 @@ from loadsum.demand.commonterm import skewness_along_day, variance_uncertainty_k
 from loadsum.demand.convolution import BracketedSum, DemandSum, plain_distributions
 from loadsum.demand.customerclass import borrowed, relative_readings, weighted_variance
 from loadsum.demand.dependence import CommonComponent, common_component, mean_variance
-from loadsum.demand.hourly import BlockDiagnostics, GroupDemand, HourDemand, with_normal, with_term
+from loadsum.demand.hourly import BlockDiagnostics, GroupDemand, HourDemand, with_normal
 from loadsum.demand.lattice import LatticeMass, lattice_mass
 from loadsum.demand.latticestep import affordable_step
 from loadsum.demand.planned import Planned, PlannedTerm, planned_terms, pooled, total_variance, within
 from loadsum.demand.samplingerror import Resamples, resample_weeks
 from loadsum.demand.settings import ModelSettings
 from loadsum.demand.temperature import TemperatureResponse, take_out_temperature
+from loadsum.demand.temperaturespread import mixed_over, spread_taken_out
 from loadsum.intake.hourclass import DayBlock
 
 FEWEST_DAYS = 2
@@ -214,7 +215,7 @@ class _Block:
         for i in range(intervals):
             adjusted[:, :, i], response = take_out_temperature(kw[:, :, i], temperature, weight)
             responses.append(response)
-        return adjusted, tuple(responses)
+        return spread_taken_out(adjusted, temperature, weight, responses)
 
     def _hour(
         self,
@@ -350,8 +351,7 @@ class _Block:
             days = np.clip(days, response.lowest_c, response.highest_c)
         if days.size == 0:
             return still
-        spread = float(response.shift_variance_kw2(days).mean()) ** 0.5
-        return with_term(still, response.shift_kw(days), np.full(days.size, 1.0 / days.size), spread)
+        return mixed_over(still, response, days)
 
     def _diagnostics(
         self,

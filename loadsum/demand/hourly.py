@@ -14,7 +14,7 @@ from loadsum.demand.lattice import LatticeMass, kernel_mass, normal_mass
 from loadsum.demand.probability import Probability
 from loadsum.demand.samplingerror import COVERS, Resamples
 from loadsum.demand.settings import ModelSettings
-from loadsum.demand.temperature import TemperatureResponse
+from loadsum.demand.temperature import TemperatureResponse, stretched_mass
 from loadsum.intake.hourclass import DayBlock
 
 Direction = Literal["both", "delivered", "exported"]
@@ -161,7 +161,13 @@ class HourDemand:
             return self
         at = np.array([temperature_c])
         shift, spread = float(self.response.shift_kw(at)[0]), float(np.sqrt(self.response.shift_variance_kw2(at)[0]))
-        total = with_term(self.still, np.array([shift]), np.ones(1), spread)
+        if self.response.power == 0.0:
+            total = with_term(self.still, np.array([shift]), np.ones(1), spread)
+        else:
+            stretch = float(self.response.stretch(at)[0])
+            laws = [stretched_mass(law, stretch, shift) for law in plain_distributions(self.still)]
+            ends = [DemandSum(terms=(law,), counts=(1,)) for law in laws]
+            total = with_normal(BracketedSum(down=ends[0], up=ends[1]), spread)
         down, up = plain_distributions(total)
         return replace(self, total=total, whole_down=down, whole_up=up)
 

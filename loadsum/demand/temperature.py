@@ -9,8 +9,11 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 
+from loadsum.demand.lattice import LatticeMass
+
 HEATING_BASE_C = 15.0  # common practice without a source; the fit only needs the kink to lie near the true ones
 COOLING_BASE_C = 20.0  # common practice without a source
+LEAST_LEVEL = 0.2  # share of the mean level below which the spread falls no further
 
 
 @dataclass(frozen=True, slots=True, kw_only=True, eq=False)
@@ -31,6 +34,12 @@ class TemperatureResponse:
         Metered range of the lagged daily mean. [°C]
     explained : float
         Share of the sum's variance that the response explains. [-]
+    power : float
+        Power of the level with which the spread grows; 0 for none. [-]
+    level_kw : float
+        Mean level that the power refers to. [kW]
+    unit : float
+        Root mean square, over the metered days, of the stretch before it is divided by this. [-]
     """
 
     columns: tuple[int, ...]
@@ -40,6 +49,14 @@ class TemperatureResponse:
     lowest_c: float
     highest_c: float
     explained: float
+    power: float = 0.0
+    level_kw: float = 1.0
+    unit: float = 1.0
+
+    def stretch(self, temperature_c: NDArray[np.float64]) -> NDArray[np.float64]:
+        """Spread at each temperature relative to that over the metered days, (n,) float64. [-]"""
+        level = np.clip(1.0 + self.shift_kw(temperature_c) / self.level_kw, LEAST_LEVEL, None)
+        return np.asarray(level**self.power / self.unit, dtype=np.float64)
 
     def shift_kw(self, temperature_c: NDArray[np.float64]) -> NDArray[np.float64]:
         """Shift of the sum's mean at each temperature, (n,) float64. [kW]"""
@@ -56,6 +73,35 @@ def degrees(temperature_c: NDArray[np.float64]) -> NDArray[np.float64]:
     """Heating and cooling degrees of a temperature, (n, 2) float64. [K]"""
     return np.stack(
         [np.maximum(HEATING_BASE_C - temperature_c, 0.0), np.maximum(temperature_c - COOLING_BASE_C, 0.0)], axis=1
+    )
+
+
+def stretched_mass(law: LatticeMass, stretch: float, shift_kw: float) -> LatticeMass:
+    """A law stretched about its mean and shifted, stated to the lattice with mean kept.
+
+    Parameters
+    ----------
+    law : LatticeMass
+        The law.
+    stretch : float
+        Factor on its distances from the mean, above 0. [-]
+    shift_kw : float
+        Shift of its mean. [kW]
+    """
+    mean = law.mean_kw()
+    place = (mean + shift_kw + stretch * (law.points_kw - mean)) / law.step_kw
+    first = np.floor(place).astype(np.int64)
+    share = place - first
+    low = int(first[0])
+    mass = np.zeros(int(first[-1]) - low + 2)
+    np.add.at(mass, first - low, law.mass * (1.0 - share))
+    np.add.at(mass, first + 1 - low, law.mass * share)
+    return LatticeMass(
+        step_kw=law.step_kw,
+        offset=low,
+        mass=mass,
+        beyond_below=law.beyond_below,
+        beyond_above=law.beyond_above,
     )
 
 

@@ -246,22 +246,23 @@ def _score(
         tally.losses[name].append(pinball(levels[:, SHARES.index(0.01)], observed, PINBALL_SHARE))
     one = hour.whole_up
     tally.crps["adopted"].append(
-        crps_lattice(one, observed) if moved is None else crps_lattice(moved.law, observed - moved.shift_kw)
+        crps_lattice(one, observed) if moved is None else moved.stretch * crps_lattice(moved.law, moved.back(observed))
     )
     for name, spread in spreads.items():
         tally.crps[name].append(crps_normal(np.array(mean), np.array(max(spread, 1e-9)), observed))
     tally.crps["independent"].append(crps_lattice(hour.independent, observed))
     tally.crps["observed_sum"].append(crps_sample(fitted, observed) if fitted.size else np.full(observed.size, np.nan))
-    exceeded = one.above_many(observed) if moved is None else moved.law.above_many(observed - moved.shift_kw)
+    exceeded = one.above_many(observed) if moved is None else moved.law.above_many(moved.back(observed))
     tally.pit += np.bincount(np.minimum((10.0 * (1.0 - exceeded)).astype(int), 9), minlength=10)
 
 
 @dataclass(frozen=True, slots=True)
 class _Moved:
-    """An interval's distribution conditional on the temperature of each held-out day: one law, shifted."""
+    """An interval's law given the temperature of each held-out day: one law, shifted and stretched."""
 
     hour: HourDemand
     shift_kw: NDArray[np.float64]
+    stretch: NDArray[np.float64]
 
     @property
     def law(self) -> LatticeMass:
@@ -269,14 +270,21 @@ class _Moved:
         return self.hour.whole_up
 
     def quantiles_kw(self, shares: NDArray[np.float64]) -> NDArray[np.float64]:
-        return self.hour.quantiles_kw(shares) + self.shift_kw[:, None]
+        mean = self.hour.mean_kw()
+        away = self.hour.quantiles_kw(shares) - mean
+        return np.asarray(mean + self.shift_kw[:, None] + self.stretch[:, None] * away, dtype=np.float64)
+
+    def back(self, observed: NDArray[np.float64]) -> NDArray[np.float64]:
+        """Where demand would stand in the law of a day of no shift. [kW]"""
+        mean = self.hour.mean_kw()
+        return np.asarray(mean + (observed - mean - self.shift_kw) / self.stretch, dtype=np.float64)
 
 
 def _moved(hour: HourDemand, warmth: NDArray[np.float64] | None) -> _Moved | None:
     if hour.response is None or warmth is None or not np.isfinite(warmth).all():
         return None
     spread = float(np.sqrt(hour.response.shift_variance_kw2(warmth).mean()))
-    return _Moved(hour.without_temperature(spread), hour.response.shift_kw(warmth))
+    return _Moved(hour.without_temperature(spread), hour.response.shift_kw(warmth), hour.response.stretch(warmth))
 
 
 def _summary(tally: _Tally, weeks: int, every: int, note: str) -> HoldOut:

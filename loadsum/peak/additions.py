@@ -10,6 +10,7 @@ from loadsum.demand.convolution import BracketedSum, DemandSum, plain_distributi
 from loadsum.demand.hourly import GroupDemand, HourDemand
 from loadsum.demand.lattice import LatticeMass, lattice_mass
 from loadsum.demand.samplingerror import Resamples
+from loadsum.demand.temperature import TemperatureResponse
 from loadsum.intake.readings import read_only
 
 
@@ -176,6 +177,7 @@ def _with(hour: HourDemand, added: Sequence[AddedLoad]) -> HourDemand:
         still=_extended(hour.still, ends),
         whole_down=whole_down,
         whole_up=whole_up,
+        response=_with_steady(hour, variance),
         independent=plain_distributions(BracketedSum(down=independent, up=independent))[0],
         covariance_variance_kw2=hour.covariance_variance_kw2 + variance,
         can_export=hour.can_export or any(float(load.kw[hour.interval].min()) < 0.0 for load in added),
@@ -207,6 +209,14 @@ def _with_certain(hour: HourDemand, variance_kw2: float) -> Resamples | None:
     return replace(hour.resamples, shift_kw=hour.resamples.shift_kw.copy(), stretch=stretch)
 
 
+def _with_steady(hour: HourDemand, variance_kw2: float) -> TemperatureResponse | None:
+    """Temperature stretches the metered part only: less of the whole, the more is added."""
+    if hour.response is None or hour.response.power == 0.0:
+        return hour.response
+    own = hour.variance_kw2()
+    return replace(hour.response, power=hour.response.power * own / (own + variance_kw2))
+
+
 def _stretched(hour: HourDemand, factor: float) -> HourDemand:
     """One interval with every demand multiplied."""
 
@@ -225,6 +235,7 @@ def _stretched(hour: HourDemand, factor: float) -> HourDemand:
             response,
             slope_kw_per_k=response.slope_kw_per_k * factor,
             covariance=response.covariance * factor**2,
+            level_kw=response.level_kw * factor,
         )
     moved = hour.resamples
     if moved is not None:

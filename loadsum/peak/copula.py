@@ -98,8 +98,10 @@ def weather_free_sums(demand: GroupDemand) -> tuple[NDArray[np.float64], ...]:
         for i, hour in enumerate(row):
             if hour is not None and hour.response is not None and block.temperature_c is not None:
                 known = np.isfinite(block.temperature_c)
-                shift = hour.response.shift_kw(np.where(known, block.temperature_c, 0.0))
-                free[:, i] -= np.where(known, shift, np.nan)
+                warmth = np.where(known, block.temperature_c, 0.0)
+                shift, stretch = hour.response.shift_kw(warmth), hour.response.stretch(warmth)
+                centre = hour.response.level_kw
+                free[:, i] = np.where(known, centre + (free[:, i] - shift - centre) / stretch, np.nan)
         read_only(free)
         found.append(free)
     return tuple(found)

@@ -34,6 +34,10 @@ class Margins:
         Daily temperatures at which the shift is given, rising; None where demand does not depend on it (M = 1). [°C]
     shift_kw : (B, M, I) float64
         Shift of demand at each temperature. [kW]
+    stretch : (B, M, I) float64
+        Spread of demand about its centre at each temperature, relative to that of the tables. [-]
+    centre_kw : (B, I) float64
+        Centre of the tables, about which they are stretched. [kW]
     kvar_per_kw : (B, I) float64
         Reactive demand of the group per kW. [kvar/kW]
     """
@@ -44,6 +48,8 @@ class Margins:
     kw: NDArray[np.float64]
     temperature_c: NDArray[np.float64] | None
     shift_kw: NDArray[np.float64]
+    stretch: NDArray[np.float64]
+    centre_kw: NDArray[np.float64]
     kvar_per_kw: NDArray[np.float64]
 
     def __post_init__(self) -> None:
@@ -57,6 +63,8 @@ class Margins:
             self.kw,
             self.temperature_c,
             self.shift_kw,
+            self.stretch,
+            self.centre_kw,
             self.kvar_per_kw,
         ):
             if array is not None:
@@ -84,15 +92,17 @@ class Margins:
             if np.isnan(table[0]):
                 continue
             level_kw = float(level_kva[b] / np.hypot(1.0, self.kvar_per_kw[b, i]))
-            shift = float(self.shift_kw[b, m, i])
-            delivered = _beyond(table, log_tail, level_kw - shift) if direction != "exported" else 0.0
-            exported = _beyond(-table[::-1], log_tail, level_kw + shift) if direction != "delivered" else 0.0
+            shift, centre, stretch = float(self.shift_kw[b, m, i]), self.centre_kw[b, i], self.stretch[b, m, i]
+            high, low = (float(centre + (end - shift - centre) / stretch) for end in (level_kw, -level_kw))
+            delivered = _beyond(table, log_tail, high) if direction != "exported" else 0.0
+            exported = _beyond(-table[::-1], log_tail, -low) if direction != "delivered" else 0.0
             found[b, m, i] = min(delivered + exported, 1.0)
         return found
 
     def highest_kva(self) -> float:
         """A level that no table reaches beyond. [kVA]"""
-        magnitude = np.nan_to_num(np.abs(self.kw)).max(axis=2)[:, None] + np.abs(self.shift_kw)
+        away = np.nan_to_num(np.abs(self.kw - self.centre_kw[:, :, None])).max(axis=2)
+        magnitude = np.abs(self.centre_kw)[:, None] + self.stretch * away[:, None] + np.abs(self.shift_kw)
         return 1.001 * float((magnitude * np.hypot(1.0, self.kvar_per_kw)[:, None]).max())
 
     def demand_kw(
@@ -129,7 +139,11 @@ class Margins:
             if temperature_c is None:
                 raise ValueError("demand depends on temperature: give the temperature of each day")
             for i in range(score.shape[1]):
-                kw[:, i] += np.interp(temperature_c, self.temperature_c[block], self.shift_kw[block, :, i])
+                shift, stretch = (
+                    np.interp(temperature_c, self.temperature_c[block], table[block, :, i])
+                    for table in (self.shift_kw, self.stretch)
+                )
+                kw[:, i] = self.centre_kw[block, i] + shift + stretch * (kw[:, i] - self.centre_kw[block, i])
         return kw
 
 
@@ -163,6 +177,7 @@ def margins(demand: GroupDemand, copula: DayCopula, *, years: YearsOfDays | None
     blocks, intervals = len(demand.blocks), len(demand.hours[0])
     kw = np.full((blocks, intervals, POINTS), np.nan)
     shift_kw = np.zeros((blocks, 1 if warmth is None else warmth.shape[1], intervals))
+    stretch, centre_kw = np.ones(shift_kw.shape), np.zeros((blocks, intervals))
     kvar_per_kw = np.zeros((blocks, intervals))
     for b, row in enumerate(demand.hours):
         for i, hour in enumerate(row):
@@ -172,9 +187,11 @@ def margins(demand: GroupDemand, copula: DayCopula, *, years: YearsOfDays | None
             given = hour
             if years is not None and years.daily_c is not None and warmth is not None and hour.response is not None:
                 shift_kw[b, :, i] = hour.response.shift_kw(warmth[b])
+                stretch[b, :, i] = hour.response.stretch(warmth[b])
                 days = years.daily_c[years.block == b]
                 variance = float(hour.response.shift_variance_kw2(days).mean()) if days.size else 0.0
                 given = hour.without_temperature(float(np.sqrt(variance)))
+                centre_kw[b, i] = given.mean_kw()
             ends = [quantiles_of(whole, exceeded_with) for whole in (given.whole_down, given.whole_up)]
             kw[b, i] = 0.5 * (ends[0] + ends[1])
     return Margins(
@@ -184,6 +201,8 @@ def margins(demand: GroupDemand, copula: DayCopula, *, years: YearsOfDays | None
         kw=kw,
         temperature_c=warmth,
         shift_kw=shift_kw,
+        stretch=stretch,
+        centre_kw=centre_kw,
         kvar_per_kw=kvar_per_kw,
     )
 
