@@ -241,7 +241,7 @@ class ModelKeys:
     common_component: bool = key("Carry the part of demand that moves all customers together.", default=True)
     shrinkage: bool = key("Borrow from other customers of the class what a customer has not shown yet.", default=True)
     mean_uncertainty: bool = key("Carry the uncertainty of the mean.", default=True)
-    borrowed_days: float = key("Weight of the class, in days; chosen by hold-out when 0.", default=0.0, at_least=0.0)
+    borrowed_days: float = key("Weight of the class, in days; the program's 10 when 0.", default=0.0, at_least=0.0)
     lattice_w: float = key("Step of the lattice; from the meters' resolution when 0. [W]", default=0.0, at_least=0.0)
     correlation: float = key(
         "Mean correlation between customers, where they were never metered together; -1 asks the class.",
