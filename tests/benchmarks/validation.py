@@ -31,8 +31,8 @@ KNOWN = """
 - The correction for not knowing the variance is that of Student's law, added as a normal term.
 - A class of days with few days (weekends of one season) is the weakest part: its tail rests on what is borrowed.
 - Intervals move and stretch the adopted model with resampled weeks; they do not draw new shapes of tail.
-- The 17 homes served both to choose the form of the model and to report it, so their rows flatter it; settings are not yet
-  chosen inside the fitting weeks of a study.
+- The 17 homes served both to choose the form of the model and to report it, so their rows flatter it; settings are
+  not yet chosen inside the fitting weeks of a study.
 - Hours that temperature stretches are accurate to 1e-15 absolute, not 1e-10 relative, far in the tail.
 - None of this tests another year's weather, nor customers that were not metered.
 - The 17 homes are one small set from one place, and the groups drawn from them share members, so their intervals are
