@@ -16,11 +16,12 @@ from loadsum.demand.hourly import GroupDemand
 from loadsum.demand.settings import ModelSettings
 from loadsum.evidence.holdout import MODELS, SHARES, HoldOut, hold_out
 from loadsum.intake.hourclass import EPOCH, DayBlock
-from tests.datasets import FIRST_STAMP, real_homes
+from tests.datasets import FIRST_STAMP, real_homes, real_homes_temperature
 
-SETTINGS = ModelSettings(temperature=False, lattice_kw=0.05)
+SETTINGS = ModelSettings(lattice_kw=0.05)
 SEED = 20310504
 ALL = slice(0, 24)
+SEASONS = ((12, 1, 2), (3, 4, 5), (6, 7, 8), (9, 10, 11))
 HOURS = slice(0, 24, 3)  # every third hour: eight demand intervals a day
 
 
@@ -122,21 +123,74 @@ def scored(name: str, tests: Sequence[HoldOut], rng: np.random.Generator) -> lis
     return rows
 
 
-def real_rows() -> list[Row]:
-    """The 17 homes in four seasons, in groups drawn beforehand."""
+def home_days() -> tuple[NDArray[np.float64], NDArray[np.float64], int]:
+    """The 17 homes by whole days from 1 August, (17, D, 24), their lagged daily means, (D,), and the first day."""
     _, kw = real_homes()
     days = (kw.shape[1] - 1) // 24
-    kw = kw[:, 1 : 1 + 24 * days].reshape(17, days, 24)  # whole days, from 1 August
-    first = (FIRST_STAMP.date() - EPOCH).days + 1
-    months = ((12, 1, 2), (3, 4, 5), (6, 7, 8), (9, 10, 11))
+    whole = slice(1, 1 + 24 * days)
+    mean_c = real_homes_temperature()[whole].reshape(days, 24).mean(axis=1)
+    lagged_c = 0.7 * mean_c + 0.3 * np.concatenate([mean_c[:1], mean_c[:-1]])
+    return kw[:, whole].reshape(17, days, 24), lagged_c, (FIRST_STAMP.date() - EPOCH).days + 1
+
+
+def real_rows() -> list[Row]:
+    """The 17 homes in four seasons, in groups drawn beforehand."""
+    kw, _, first = home_days()
     rng = np.random.default_rng(SEED)
     rows = []
     for size, groups in ((5, 50), (10, 50), (15, 50), (17, 1)):
         tests = []
         for _ in range(groups):
             members = np.sort(rng.choice(17, size, replace=False))
-            tests.append(hold_out(blocks_by_season(kw[members], first, months), fit=fit))
+            tests.append(hold_out(blocks_by_season(kw[members], first, SEASONS), fit=fit))
         rows += scored(f"17 real homes, N = {size}", [t for t in tests if t is not None], rng)
+    return rows
+
+
+def heated(customers: int, days: int, rng: np.random.Generator) -> tuple[NDArray[np.float64], NDArray[np.float64]]:
+    """Homes heated by electricity over a winter: daily temperature, (D,), and demand, (C, D, 8). [°C, kW]
+
+    Heating runs a share of each interval that grows as it gets colder, so that cold days scatter demand more.
+    """
+    day = np.arange(days)
+    weather = np.convolve(rng.normal(0.0, 3.0, days + 2), np.ones(3) / 1.7, "valid")
+    temperature = 3.0 + 6.0 * np.sin(2.0 * np.pi * day / days) + weather
+    shape = (customers, days, 8)
+    other = rng.lognormal(-0.5, 0.4, (customers, 1, 1)) * rng.gamma(1.3, 1.0 / 1.3, shape)
+    rating, leak = rng.uniform(3.0, 8.0, (customers, 1, 1)), rng.uniform(0.5, 1.5, (customers, 1, 1))
+    share = np.clip(leak * 0.03 * np.maximum(16.0 - temperature, 0.0)[None, :, None], 1e-3, 0.999)
+    running = rng.beta(np.broadcast_to(2.0 * share, shape), np.broadcast_to(2.0 - 2.0 * share, shape))
+    habit = np.maximum(1.0 + 0.15 * rng.standard_normal((1, days, 8)), 0.0)
+    return temperature, other + rating * running * habit
+
+
+def heated_rows() -> list[Row]:
+    """Conditional on the temperature of the held-out day."""
+    rng = np.random.default_rng(SEED + 4)
+    rows = []
+    for size, groups in ((5, 50), (25, 50), (80, 20)):
+        tests = []
+        for _ in range(groups):
+            warmth, kw = heated(size, 112, rng)
+            block = DayBlock(
+                season="winter",
+                day_type="all days",
+                days_per_year=112.0,
+                day=np.arange(18263, 18263 + 112),
+                kw=kw,
+                temperature_c=warmth,
+            )
+            tests.append(hold_out([block], fit=fit))
+        rows += scored(f"heated by electricity, N = {size}", [t for t in tests if t is not None], rng)
+    kw, lagged_c, first = home_days()
+    for size, groups in ((5, 50), (17, 1)):
+        tests = []
+        for _ in range(groups):
+            members = np.sort(rng.choice(17, size, replace=False))
+            blocks = blocks_by_season(kw[members], first, SEASONS)
+            given = [replace(block, temperature_c=lagged_c[block.day - first].copy()) for block in blocks]
+            tests.append(hold_out(given, fit=fit))
+        rows += scored(f"17 real homes and temperature, N = {size}", [t for t in tests if t is not None], rng)
     return rows
 
 
@@ -154,8 +208,8 @@ def synthetic_rows() -> list[Row]:
     """Known truth: one season of 26 weeks."""
     rows = []
     rng = np.random.default_rng(SEED + 1)
-    cases = [("correlation 0.05", n, 20) for n in (5, 10, 25, 60, 150)]
-    cases += [(name, 25, 10) for name in POPULATIONS if name != "correlation 0.05"]
+    cases = [("correlation 0.05", n, 50) for n in (5, 10, 25, 60, 150)]
+    cases += [(name, 25, 50) for name in POPULATIONS if name != "correlation 0.05"]
     for name, size, groups in cases:
         tests = []
         for _ in range(groups):
