@@ -26,8 +26,8 @@ value from memory is never a default of the program.
 KNOWN = """
 ## Known weaknesses
 
-- Where the spread of demand grows with cold or heat, one power of the level describes it for a class of days; how it
-  changes from hour to hour beyond that is not described.
+- Where the spread of demand grows with cold or heat, one power of the level describes it for a whole class of days; how
+  the spread changes from hour to hour beyond that is not described.
 - The correction for not knowing the variance is that of Student's law, added as a normal term.
 - A class of days with few days (weekends of one season) is the weakest part: its tail rests on what is borrowed.
 - Intervals move and stretch the adopted model with resampled weeks; they do not draw new shapes of tail.
