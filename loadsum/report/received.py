@@ -180,7 +180,8 @@ def reading_faults() -> tuple[type[Exception], ...]:
     """What the library raises on a damaged or hostile file."""
     from pyhanko.pdf_utils.misc import PdfError
 
-    return PdfError, ValueError, KeyError, IndexError, TypeError, AttributeError, RecursionError, zlib.error, OSError
+    shape = (ValueError, KeyError, IndexError, TypeError, AttributeError)
+    return PdfError, *shape, RecursionError, NotImplementedError, zlib.error, OSError
 
 
 def _short(error: Exception) -> str:
