@@ -57,6 +57,8 @@ class HourDemand:
         Whether any reading is negative; without, no flow is reversed.
     resamples : Resamples or None
         What resampled weeks do to the distribution; None where no interval was asked for or weeks are too few.
+    deep : bool
+        Whether small tails are computed at their own tilt; without, they are accurate to about 1e-15 absolute only.
     """
 
     season: str
@@ -75,6 +77,7 @@ class HourDemand:
     mean_variance_kw2: float
     can_export: bool
     resamples: Resamples | None
+    deep: bool = True
 
     @property
     def floor(self) -> float:
@@ -107,7 +110,7 @@ class HourDemand:
         lower, upper = self.whole_down.above(level_kw), self.whole_up.above(level_kw)
         if upper < NOTHING:
             lower, upper = 0.0, NOTHING
-        elif upper < DEEP:
+        elif upper < DEEP and self.deep:
             lower, upper = self.total.above(level_kw)
         return self._probability(lower, upper, self._interval(level_kw, self.whole_up.above_many))
 
@@ -124,7 +127,7 @@ class HourDemand:
         lower, upper = self.whole_up.below(level_kw), self.whole_down.below(level_kw)
         if upper < NOTHING:
             lower, upper = 0.0, NOTHING
-        elif upper < DEEP:
+        elif upper < DEEP and self.deep:
             lower, upper = self.total.below(level_kw)
         return self._probability(lower, upper, self._interval(level_kw, self._below_many))
 
