@@ -3,6 +3,7 @@
 import argparse
 import getpass
 import logging
+import os
 import sys
 from collections.abc import Sequence
 from pathlib import Path
@@ -120,6 +121,8 @@ def main(argv: Sequence[str] | None = None) -> int:
     progress = silent if args.quiet else line
     status = 0
     try:
+        # Many small products: threads of the linear algebra library cost several times what they save here.
+        os.environ.setdefault("OMP_NUM_THREADS", "1")
         # The stages are imported here so that --help answers at once.
         from loadsum import comparison, documents, pipeline
 
