@@ -13,6 +13,7 @@ import numpy as np
 from loadsum import __version__
 from loadsum.demand.group import Group, group_demand
 from loadsum.demand.hourly import GroupDemand
+from loadsum.demand.modelparts import part_effects
 from loadsum.demand.planned import Planned
 from loadsum.demand.served import (
     cannot_be_studied,
@@ -328,6 +329,19 @@ def one_transformer(
     turning = sensitivity(
         demand, ratings, selection, asked.criterion, asked.allowed_loading, power_factor=unit.power_factor
     )
+    parts = part_effects(
+        group_blocks,
+        lambda some, switched: group_demand(
+            some,
+            interval_min=readings.interval_min,
+            power_factor=unit.power_factor,
+            settings=switched,
+            group=group,
+            record_c=record_by_class(loaded.record, days),
+        ),
+        settings,
+        selection.rating_kva or unit.installed_kva or max(ratings),
+    )
     scenarios, rooms = load_to_come(
         asked,
         demand,
@@ -381,5 +395,5 @@ def one_transformer(
         ),
         evidence=tested,
         diagnostics=demand.diagnostics,
-        assumptions=assumptions(asked, unit, served, demand, turning),
+        assumptions=assumptions(asked, unit, served, demand, turning, parts),
     )

@@ -1,6 +1,9 @@
 """The register of assumptions of one transformer."""
 
+from collections.abc import Sequence
+
 from loadsum.demand.hourly import GroupDemand
+from loadsum.demand.modelparts import PARTS, PartEffect
 from loadsum.demand.served import Served
 from loadsum.study.assumptions import Assumption
 from loadsum.study.record import transformer_record
@@ -26,7 +29,12 @@ THERMAL = {
 
 
 def assumptions(
-    asked: Study, unit: Transformer, served: Served, demand: GroupDemand, turning: Sensitivity | None = None
+    asked: Study,
+    unit: Transformer,
+    served: Served,
+    demand: GroupDemand,
+    turning: Sensitivity | None = None,
+    parts: Sequence[PartEffect] = (),
 ) -> tuple[Assumption, ...]:
     """Everything the study of one transformer takes as given, and what the choice does where that was worked out."""
     listed = [
@@ -103,6 +111,16 @@ def assumptions(
             decided_by=FILE if asked.model.borrowed_days else DEFAULT,
         )
     )
+    listed += [
+        Assumption(
+            name=f"part of the demand model: {name}",
+            value="on" if getattr(settings, part) else "off",
+            source="docs/methods/dependence.md",
+            decided_by=DEFAULT if getattr(settings, part) else FILE,
+            effect="; ".join(effect.words() for effect in parts if effect.part == part),
+        )
+        for part, name in PARTS.items()
+    ]
     if settings.correlation is not None:
         listed.append(
             Assumption(
