@@ -35,8 +35,8 @@ class LevelScore:
     chance_low, chance_high : float
         Shares that chance allows in 95 of 100 repetitions if the model is right, with weeks as blocks. [-]
     kupiec_p, clustering_p : float
-        Probability by chance of so different a share of days with a pass, and of so much clustering of those days,
-        if days were independent. [-]
+        Probability by chance of so different a share of intervals that pass, if intervals were independent (too small
+        where demand clusters by day), and of so much clustering of days with a pass, if days were independent. [-]
     """
 
     model: str
