@@ -1,7 +1,7 @@
 """The distribution of the coincident demand in each demand interval: what the later stages ask."""
 
 import math
-from collections.abc import Callable
+from collections.abc import Callable, Sequence
 from dataclasses import dataclass, replace
 from functools import cached_property
 from typing import Literal
@@ -11,7 +11,7 @@ from numpy.typing import NDArray
 
 from loadsum.demand.convolution import BracketedSum, DemandSum, plain_distributions
 from loadsum.demand.lattice import LatticeMass, kernel_mass, normal_mass
-from loadsum.demand.probability import Probability
+from loadsum.demand.probability import Probabilities, Probability
 from loadsum.demand.samplingerror import COVERS, Resamples
 from loadsum.demand.settings import ModelSettings
 from loadsum.demand.temperature import TemperatureResponse, stretched_mass
@@ -57,8 +57,6 @@ class HourDemand:
         Whether any reading is negative; without, no flow is reversed.
     resamples : Resamples or None
         What resampled weeks do to the distribution; None where no interval was asked for or weeks are too few.
-    deep : bool
-        Whether small tails are computed at their own tilt; without, they are accurate to about 1e-15 absolute only.
     """
 
     season: str
@@ -77,7 +75,6 @@ class HourDemand:
     mean_variance_kw2: float
     can_export: bool
     resamples: Resamples | None
-    deep: bool = True
 
     @property
     def floor(self) -> float:
@@ -87,10 +84,9 @@ class HourDemand:
     @cached_property
     def _moments(self) -> tuple[float, float, float]:
         """Mean, variance and third central moment, each the middle of its bracket. [kW, kW², kW³]"""
-        sides = (self.whole_down, self.whole_up)
-        mean = 0.5 * sum(side.mean_kw() for side in sides)
-        second, third = (0.5 * sum(side.central_moment(order) for side in sides) for order in (2, 3))
-        return mean, second, third
+        down = self.whole_down.moments()
+        up = down if self.whole_up is self.whole_down else self.whole_up.moments()
+        return 0.5 * (down[0] + up[0]), 0.5 * (down[1] + up[1]), 0.5 * (down[2] + up[2])
 
     def mean_kw(self) -> float:
         """Mean coincident demand. [kW]"""
@@ -110,9 +106,9 @@ class HourDemand:
         lower, upper = self.whole_down.above(level_kw), self.whole_up.above(level_kw)
         if upper < NOTHING:
             lower, upper = 0.0, NOTHING
-        elif upper < DEEP and self.deep:
+        elif upper < DEEP:
             lower, upper = self.total.above(level_kw)
-        return self._probability(lower, upper, self._interval(level_kw, self.whole_up.above_many))
+        return self._probability(lower, upper, self._interval(np.array([level_kw]), self.whole_up.above_many)[:, 0])
 
     def exceedances(self, levels_kw: NDArray[np.float64]) -> tuple[NDArray[np.float64], NDArray[np.float64]]:
         """Lower and upper probability of demand strictly above each level, (L,) float64 each. [kW -> -]
@@ -127,9 +123,9 @@ class HourDemand:
         lower, upper = self.whole_up.below(level_kw), self.whole_down.below(level_kw)
         if upper < NOTHING:
             lower, upper = 0.0, NOTHING
-        elif upper < DEEP and self.deep:
+        elif upper < DEEP:
             lower, upper = self.total.below(level_kw)
-        return self._probability(lower, upper, self._interval(level_kw, self._below_many))
+        return self._probability(lower, upper, self._interval(np.array([level_kw]), self.whole_up.below_many)[:, 0])
 
     def quantile_kw(self, exceeded_with: float) -> float:
         """Smallest lattice level that demand exceeds with at most the probability given. [- -> kW]"""
@@ -151,8 +147,25 @@ class HourDemand:
             parts.append(self.below(-limit_kw))
         lower, upper = (min(sum(end), 1.0) for end in ([p.lower for p in parts], [p.upper for p in parts]))
         ends = [(p.low, p.high) for p in parts if p.low is not None and p.high is not None]
-        interval = (min(sum(e[0] for e in ends), 1.0), min(sum(e[1] for e in ends), 1.0)) if ends else None
+        interval = (min(sum(e[0] for e in ends), 1.0), min(sum(e[1] for e in ends), 1.0)) if ends else (np.nan, np.nan)
         return self._probability(lower, upper, interval)
+
+    def exceedances_kva(self, levels_kva: NDArray[np.float64], direction: Direction = "both") -> Probabilities:
+        """Probability that the apparent power of the group is strictly above each level. [kVA -> -]
+
+        Accurate to 1e-15 absolute; for a figure in the far tail ask :meth:`exceedance_kva`.
+        """
+        limits_kw = np.asarray(levels_kva, dtype=np.float64) * self.power_factor
+        lower, upper, ends = np.zeros(limits_kw.size), np.zeros(limits_kw.size), np.zeros((2, limits_kw.size))
+        if direction != "exported":
+            lower, upper = self.exceedances(limits_kw)
+            ends += self._interval(limits_kw, self.whole_up.above_many)
+        if direction == "exported" or (direction == "both" and self.can_export):
+            lower, upper = lower + self.whole_up.below_many(-limits_kw), upper + self.whole_down.below_many(-limits_kw)
+            ends += self._interval(-limits_kw, self.whole_up.below_many)
+        upper = np.minimum(upper, 1.0)
+        low, high = np.minimum(ends, 1.0)
+        return Probabilities(lower=np.minimum(lower, upper), upper=upper, low=low, high=high)
 
     def mean_square_kva2(self) -> float:
         """Mean of the squared apparent power, which load losses go by. [kVA²]"""
@@ -199,24 +212,24 @@ class HourDemand:
         return self.independent.mean_kw(), self.independent.central_moment(2)
 
     def _interval(
-        self, level_kw: float, beyond: Callable[[NDArray[np.float64]], NDArray[np.float64]]
-    ) -> tuple[float, float] | None:
-        """Interval for the long-run probability beyond a level."""
+        self, levels_kw: NDArray[np.float64], beyond: Callable[[NDArray[np.float64]], NDArray[np.float64]]
+    ) -> NDArray[np.float64]:
+        """Ends of the interval for the long-run probability beyond each level, (2, L) float64; NaN for none. [-]"""
         if self.resamples is None:
-            return None
+            return np.full((2, levels_kw.size), np.nan)
         variance = self.variance_kw2()
         share = np.sqrt(max(variance - self.mean_variance_kw2, 0.0) / variance) if variance > 0.0 else 1.0
-        found = beyond(self.resamples.levels_kw(level_kw, self.mean_kw(), max(share, 0.05)))
-        low, high = np.quantile(found, [0.5 - 0.5 * COVERS, 0.5 + 0.5 * COVERS])
-        return float(low), float(high)
+        found = np.sort(beyond(self.resamples.levels_kw(levels_kw, self.mean_kw(), max(share, 0.05))), axis=1)
+        place = (found.shape[1] - 1) * np.array([0.5 - 0.5 * COVERS, 0.5 + 0.5 * COVERS])
+        first = np.minimum(place.astype(np.int64), max(found.shape[1] - 2, 0))
+        last = np.minimum(first + 1, found.shape[1] - 1)
+        part = place - first
+        return np.asarray((found[:, first] * (1.0 - part) + found[:, last] * part).T, dtype=np.float64)
 
-    def _below_many(self, levels_kw: NDArray[np.float64]) -> NDArray[np.float64]:
-        return 1.0 - self.whole_up.above_many(levels_kw - self.whole_up.step_kw)
-
-    def _probability(self, lower: float, upper: float, interval: tuple[float, float] | None) -> Probability:
+    def _probability(self, lower: float, upper: float, ends: Sequence[float] | NDArray[np.float64]) -> Probability:
         upper = min(upper, 1.0)
         lower = min(lower, upper)
-        low, high = interval if interval is not None else (None, None)
+        low, high = (None if np.isnan(end) else float(end) for end in ends)
         return Probability(value=0.5 * (lower + upper), lower=lower, upper=upper, low=low, high=high, floor=self.floor)
 
 

@@ -2,6 +2,7 @@
 
 from collections.abc import Callable, Sequence
 from dataclasses import dataclass
+from functools import cached_property
 from typing import Literal
 
 import numpy as np
@@ -19,7 +20,7 @@ CELLS = 4096  # cells into which a continuous term is cut at least: about 1/200 
 NORMAL_REACH = 10.5  # standard deviations beyond which a normal law has less than CUT
 
 
-@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
+@dataclass(frozen=True, kw_only=True, eq=False)
 class LatticeMass:
     """Probability mass on the points ``(offset + i) * step_kw``.
 
@@ -60,6 +61,13 @@ class LatticeMass:
         """Central moment of the order given. [kW^order]"""
         return float(((self.points_kw - self.mean_kw()) ** order) @ self.mass)
 
+    def moments(self) -> tuple[float, float, float]:
+        """Mean, variance and third central moment. [kW, kW², kW³]"""
+        mean = self.mean_kw()
+        away = self.points_kw - mean
+        square = away * away
+        return mean, float(square @ self.mass), float((square * away) @ self.mass)
+
     def above(self, level_kw: float) -> float:
         """Probability of demand strictly above a level, summed from the top. [-]"""
         first = int(np.floor(level_kw / self.step_kw + ALIGNED)) + 1 - self.offset
@@ -69,14 +77,28 @@ class LatticeMass:
 
     def above_many(self, levels_kw: NDArray[np.float64]) -> NDArray[np.float64]:
         """Probability of demand strictly above each level, summed from the top, (L,) float64. [kW -> -]"""
-        tail = np.append(np.cumsum(self.mass[::-1])[::-1], 0.0) + self.beyond_above
         first = np.floor(np.asarray(levels_kw) / self.step_kw + ALIGNED).astype(np.int64) + 1 - self.offset
-        return np.asarray(tail[np.clip(first, 0, self.mass.size)], dtype=np.float64)
+        return np.asarray(self._tail[np.minimum(np.maximum(first, 0), self.mass.size)], dtype=np.float64)
+
+    @cached_property
+    def _tail(self) -> NDArray[np.float64]:
+        """Probability from each point upwards, and beyond the last, (n + 1,) float64. [-]"""
+        return np.append(np.cumsum(self.mass[::-1])[::-1], 0.0) + self.beyond_above
 
     def below(self, level_kw: float) -> float:
         """Probability of demand strictly below a level, summed from the bottom. [-]"""
         last = int(np.ceil(level_kw / self.step_kw - ALIGNED)) - self.offset
         return float(self.mass[: max(last, 0)].sum()) + self.beyond_below
+
+    def below_many(self, levels_kw: NDArray[np.float64]) -> NDArray[np.float64]:
+        """Probability of demand strictly below each level, summed from the bottom, (L,) float64. [kW -> -]"""
+        last = np.ceil(np.asarray(levels_kw) / self.step_kw - ALIGNED).astype(np.int64) - self.offset
+        return np.asarray(self._head[np.minimum(np.maximum(last, 0), self.mass.size)], dtype=np.float64)
+
+    @cached_property
+    def _head(self) -> NDArray[np.float64]:
+        """Probability below each point, and of all, (n + 1,) float64. [-]"""
+        return np.append(0.0, np.cumsum(self.mass)) + self.beyond_below
 
     def shifted(self, shift_kw: float, rounding: Rounding) -> "LatticeMass":
         """The demand with a constant added, the constant rounded to the lattice. [kW]"""

@@ -105,7 +105,7 @@ def _hours(demand: GroupDemand, rating_kva: float) -> float:
     return float(
         np.sum(
             [
-                hours[b, i] * hour.exceedance_kva(rating_kva).value
+                hours[b, i] * float(hour.exceedances_kva(np.array([rating_kva])).value[0])
                 for b, row in enumerate(demand.hours)
                 for i, hour in enumerate(row)
                 if hour is not None

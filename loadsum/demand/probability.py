@@ -2,6 +2,9 @@
 
 from dataclasses import dataclass
 
+import numpy as np
+from numpy.typing import NDArray
+
 
 @dataclass(frozen=True, slots=True, kw_only=True)
 class Probability:
@@ -38,3 +41,26 @@ class Probability:
     def supported(self) -> bool:
         """Whether the record supports a figure this small."""
         return self.value >= self.floor
+
+
+@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
+class Probabilities:
+    """Probabilities beyond several levels in one demand interval, each as in :class:`Probability`.
+
+    Parameters
+    ----------
+    lower, upper : (L,) float64
+        Arithmetic bracket; the middle is the predictive value. [-]
+    low, high : (L,) float64
+        Interval for the long-run probability; NaN where none was asked for. [-]
+    """
+
+    lower: NDArray[np.float64]
+    upper: NDArray[np.float64]
+    low: NDArray[np.float64]
+    high: NDArray[np.float64]
+
+    @property
+    def value(self) -> NDArray[np.float64]:
+        """Predictive probability, (L,) float64. [-]"""
+        return 0.5 * (self.lower + self.upper)

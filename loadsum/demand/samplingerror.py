@@ -35,17 +35,19 @@ class Resamples:
         self.shift_kw.flags.writeable = False
         self.stretch.flags.writeable = False
 
-    def levels_kw(self, level_kw: float, mean_kw: float, long_run_share: float) -> NDArray[np.float64]:
-        """Levels at which the adopted model has the resampled probabilities of one level, (R,) float64. [kW]
+    def levels_kw(self, asked_kw: NDArray[np.float64], mean_kw: float, long_run_share: float) -> NDArray[np.float64]:
+        """Levels at which the adopted model has the resampled probabilities of those asked, (L, R) float64. [kW]
 
         Parameters
         ----------
-        level_kw, mean_kw : float
-            Level asked, and mean of the model. [kW]
+        asked_kw : (L,) float64
+            Levels asked. [kW]
+        mean_kw : float
+            Mean of the model. [kW]
         long_run_share : float
             Standard deviation of the model without the uncertainty of the mean, over that with it. [-]
         """
-        away = (level_kw - mean_kw - self.shift_kw) / (self.stretch * long_run_share)
+        away = (asked_kw[:, None] - mean_kw - self.shift_kw) / (self.stretch * long_run_share)
         return np.asarray(mean_kw + away, dtype=np.float64)
 
 

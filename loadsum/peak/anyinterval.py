@@ -40,28 +40,56 @@ class AnyInterval:
     runs_per_day: tuple[float, ...]
 
 
-def any_interval(
-    probability: NDArray[np.float64],
-    copula: DayCopula,
-    block: int,
-    rng: np.random.Generator,
-    *,
-    draws: int = DRAWS,
-) -> AnyInterval:
+@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
+class DrawnDays:
+    """Draws that serve every level and every temperature of a class of days.
+
+    Parameters
+    ----------
+    copula : DayCopula
+        Dependence between the intervals.
+    block : int
+        Class of days. [-]
+    score : (draws, I) float64
+        Normal scores. [-]
+    start : float
+        Uniform number that decides which interval is made to pass on each day. [-]
+    share : (draws,) float64
+        Uniform number that decides how far it passes. [-]
+    mixing : (draws,) float64 or None
+        Chi-squared number of a t copula; None for the Gaussian. [-]
+    """
+
+    copula: DayCopula
+    block: int
+    score: NDArray[np.float64]
+    start: float
+    share: NDArray[np.float64]
+    mixing: NDArray[np.float64] | None
+
+
+def drawn_days(copula: DayCopula, block: int, rng: np.random.Generator, *, draws: int = DRAWS) -> DrawnDays:
+    """Draws for a class of days."""
+    start = float(rng.random())
+    root = np.linalg.cholesky(copula.correlation[block])
+    score = rng.standard_normal((draws, root.shape[0])) @ root.T
+    share = rng.random(draws)
+    freedom = copula.degrees_of_freedom
+    mixing = rng.chisquare(freedom + 1.0, draws) if np.isfinite(freedom) else None
+    return DrawnDays(copula=copula, block=block, score=score, start=start, share=share, mixing=mixing)
+
+
+def any_interval(probability: NDArray[np.float64], drawn: DrawnDays, *, runs: bool = True) -> AnyInterval:
     """Probability that any interval of a day passes its level.
 
     Parameters
     ----------
     probability : (I,) float64
         Probability of each interval of passing; NaN where there are no readings, and then left out. [-]
-    copula : DayCopula
-        Dependence between the intervals.
-    block : int
-        Class of days. [-]
-    rng : numpy.random.Generator
-        Source of randomness.
-    draws : int
-        Simulated days. [-]
+    drawn : DrawnDays
+        Draws for the class of days.
+    runs : bool
+        Whether runs are counted.
 
     Notes
     -----
@@ -86,15 +114,18 @@ def any_interval(
             at_most=0.0,
             if_independent=0.0,
             expected_intervals=0.0,
-            runs_per_day=(0.0,) * len(RUN_LENGTHS),
+            runs_per_day=(0.0,) * len(RUN_LENGTHS) if runs else (),
         )
-    above = _days_above(p, copula.correlation[block][np.ix_(known, known)], copula, rng, draws)
-    count = above.sum(axis=1)
-    share = 1.0 / count
+    above = _days_above(p, known, drawn)
+    draws = above.shape[0]
+    share = 1.0 / above.sum(axis=1)
     value = total * float(share.mean())
     value = min(max(value, largest), min(total, 1.0))
-    whole = np.zeros((draws, probability.size), dtype=np.bool_)
-    whole[:, known] = above
+    expected: tuple[float, ...] = ()
+    if runs:
+        whole = np.zeros((draws, probability.size), dtype=np.bool_)
+        whole[:, known] = above
+        expected = tuple(total * float((number * share).mean()) for number in runs_of_at_least(whole))
     return AnyInterval(
         value=value,
         standard_error=total * float(share.std(ddof=1)) / np.sqrt(draws),
@@ -102,7 +133,7 @@ def any_interval(
         at_most=min(total, 1.0),
         if_independent=float(-np.expm1(np.log1p(-np.minimum(p, 1.0 - 1e-16)).sum())),
         expected_intervals=total,
-        runs_per_day=tuple(total * float((runs * share).mean()) for runs in runs_of_at_least(whole)),
+        runs_per_day=expected,
     )
 
 
@@ -122,25 +153,25 @@ def runs_of_at_least(above: NDArray[np.bool_]) -> tuple[NDArray[np.int64], ...]:
     return tuple(found)
 
 
-def _days_above(
-    p: NDArray[np.float64],
-    correlation: NDArray[np.float64],
-    copula: DayCopula,
-    rng: np.random.Generator,
-    draws: int,
-) -> NDArray[np.bool_]:
-    """Which intervals pass on each drawn day, of which one at least was made to, (draws, I) bool."""
-    edges = np.cumsum(p) / p.sum()
-    first = np.minimum(np.searchsorted(edges, (np.arange(draws) + rng.random()) / draws), p.size - 1)
-    root = np.linalg.cholesky(correlation)
-    score = rng.standard_normal((draws, p.size)) @ root.T
+def _days_above(p: NDArray[np.float64], known: NDArray[np.bool_], drawn: DrawnDays) -> NDArray[np.bool_]:
+    """Which intervals pass on each drawn day, of which one at least was made to, (draws, known intervals) bool."""
+    copula = drawn.copula
+    correlation = copula.correlation[drawn.block]
+    score = drawn.score
+    if not known.all():
+        correlation, score = correlation[np.ix_(known, known)], score[:, known]
+    draws = score.shape[0]
     row = np.arange(draws)
-    forced = copula.score(rng.random(draws) * p[first])
-    score -= correlation[first] * score[row, first][:, None]
-    freedom = copula.degrees_of_freedom
-    if np.isfinite(freedom):
-        score *= np.sqrt((freedom + forced**2) / rng.chisquare(freedom + 1.0, draws))[:, None]
-    score += correlation[first] * forced[:, None]
-    above = score > copula.score(np.clip(p, 0.0, 1.0))
+    edges = np.cumsum(p) / p.sum()
+    first = np.minimum(np.searchsorted(edges, (row + drawn.start) / draws), p.size - 1)
+    forced = copula.drawn_score(drawn.share * p[first])
+    scale = np.ones(draws)
+    if drawn.mixing is not None:
+        scale = np.sqrt((copula.degrees_of_freedom + forced**2) / drawn.mixing)
+    # given its forced interval, a day is a scaled day of its own draws, moved along the interval's correlations
+    moved = correlation[first]
+    moved *= (forced - scale * score[row, first])[:, None]
+    moved += score * scale[:, None]
+    above = moved > copula.score(np.minimum(p, 1.0))
     above[row, first] = True
     return np.asarray(above, dtype=np.bool_)

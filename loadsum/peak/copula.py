@@ -2,10 +2,11 @@
 
 from collections.abc import Sequence
 from dataclasses import dataclass
+from functools import cached_property
 
 import numpy as np
 from numpy.typing import NDArray
-from scipy.special import gammaln
+from scipy.special import gammaln, ndtri, stdtrit
 from scipy.stats import norm, rankdata, t
 
 from loadsum.demand.hourly import GroupDemand
@@ -14,10 +15,12 @@ from loadsum.intake.readings import read_only
 SHRINKAGE = 0.10  # weight of the identity in each correlation matrix
 POOLED_DAYS = 60.0  # weight of all classes together in each class's matrix, in days
 SMALLEST_EIGENVALUE = 1e-6
+LOWEST_LOG = -80.0  # logarithm of the smallest probability in the table of scores
+TABLE = 8192  # its entries
 CANDIDATES = (np.inf, 30.0, 15.0, 8.0, 5.0, 3.0)  # degrees of freedom that hold-out chooses from
 
 
-@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
+@dataclass(frozen=True, kw_only=True, eq=False)
 class DayCopula:
     """Dependence between the intervals of a day, one correlation matrix for each class of days.
 
@@ -64,7 +67,23 @@ class DayCopula:
 
     def score(self, exceeded_with: NDArray[np.float64]) -> NDArray[np.float64]:
         """Score that is exceeded with each probability, the shape given. [-]"""
-        return np.asarray(t.isf(exceeded_with, self.degrees_of_freedom), dtype=np.float64)
+        if np.isinf(self.degrees_of_freedom):
+            return np.asarray(-ndtri(exceeded_with), dtype=np.float64)
+        score = -stdtrit(self.degrees_of_freedom, exceeded_with)
+        # at zero, and below 1e-200 or so, the quantile comes as an infinity of the wrong sign
+        return np.asarray(np.where(np.asarray(exceeded_with) < 0.5, np.abs(score), score), dtype=np.float64)
+
+    def drawn_score(self, exceeded_with: NDArray[np.float64]) -> NDArray[np.float64]:
+        """The same for random draws, from a table that is right to 1e-4 of the score. [-]"""
+        if np.isinf(self.degrees_of_freedom) or exceeded_with.min(initial=1.0) < np.exp(LOWEST_LOG):
+            return self.score(exceeded_with)
+        return np.asarray(np.sinh(np.interp(np.log(exceeded_with), *self._table)), dtype=np.float64)
+
+    @cached_property
+    def _table(self) -> tuple[NDArray[np.float64], NDArray[np.float64]]:
+        """Logarithm of a probability, and the inverse hyperbolic sine of its score."""
+        log_p = np.linspace(LOWEST_LOG, 0.0, TABLE)
+        return log_p, np.arcsinh(self.score(np.minimum(np.exp(log_p), 1.0 - 1e-12)))
 
 
 def normal_scores(sums_kw: NDArray[np.float64]) -> NDArray[np.float64]:

@@ -8,9 +8,11 @@ import numpy as np
 from numpy.typing import ArrayLike, NDArray
 
 from loadsum.demand.hourly import Direction, GroupDemand
-from loadsum.demand.probability import Probability
+from loadsum.demand.probability import Probabilities, Probability
 from loadsum.intake.hourclass import EPOCH, Calendar
 from loadsum.intake.readings import read_only
+
+FAR = 1e-9  # mean probability below which an absolute accuracy of 1e-15 does not do
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -153,12 +155,18 @@ def exceedance_hours(
     errors and so, for the two-sided confidence stated, on the wide side.
     """
     hours, covered = demand.hours_in_year(), demand.covered()
-    levels = []
-    for name, given in levels_kva.items():
-        level = np.asarray(given, dtype=np.float64)
+    asked = {name: np.asarray(given, dtype=np.float64) for name, given in levels_kva.items()}
+    for name, level in asked.items():
         if level.shape not in ((), (len(demand.blocks),)):
             raise ValueError(f"level {name!r} must be one figure or {len(demand.blocks)}, got shape {level.shape}")
-        levels.append(_level(demand, name, np.broadcast_to(level, len(demand.blocks)).copy(), direction, month_days))
+    level_kva = np.array([np.broadcast_to(level, len(demand.blocks)) for level in asked.values()])
+    found = [
+        [None if hour is None else hour.exceedances_kva(level_kva[:, b], direction) for hour in row]
+        for b, row in enumerate(demand.hours)
+    ]
+    levels = [
+        _level(demand, found, n, name, level_kva[n].copy(), direction, month_days) for n, name in enumerate(asked)
+    ]
     return ExceedanceTable(
         direction=direction,
         interval_min=demand.interval_min,
@@ -198,24 +206,41 @@ def days_by_month(calendar: Calendar, years: Sequence[int]) -> NDArray[np.float6
 
 def _level(
     demand: GroupDemand,
+    found: Sequence[Sequence[Probabilities | None]],
+    n: int,
     name: str,
     level_kva: NDArray[np.float64],
     direction: Direction,
     month_days: NDArray[np.float64] | None,
 ) -> LevelExceedance:
+    """One level, the n-th of those found.
+
+    Where the hours together are so rare that the absolute accuracy of :meth:`HourDemand.exceedances_kva` shows, each
+    is asked for again at its own tilt.
+    """
     covered = demand.covered()
     parts = {part: np.full(covered.shape, np.nan) for part in ("value", "lower", "upper", "low", "high", "floor")}
-    largest, where = None, (-1, -1)
     for b, row in enumerate(demand.hours):
         for i, hour in enumerate(row):
-            if hour is None:
+            given = found[b][i]
+            if hour is None or given is None:
                 continue
-            answer = hour.exceedance_kva(float(level_kva[b]), direction)
-            for part, array in parts.items():
-                figure = getattr(answer, part)
-                array[b, i] = np.nan if figure is None else figure
-            if largest is None or answer.value > largest.value:
-                largest, where = answer, (b, i)
+            for part in ("value", "lower", "upper", "low", "high"):
+                parts[part][b, i] = getattr(given, part)[n]
+            parts["floor"][b, i] = hour.floor
+    if np.nansum(parts["upper"]) < FAR * covered.sum():
+        for b, i in np.argwhere(covered).tolist():
+            hour = demand.hours[b][i]
+            assert hour is not None
+            exact = hour.exceedance_kva(float(level_kva[b]), direction)
+            for part in ("value", "lower", "upper"):
+                parts[part][b, i] = getattr(exact, part)
+    largest, where = None, (-1, -1)
+    if covered.any():
+        where = divmod(int(np.nanargmax(parts["value"])), covered.shape[1])
+        top = demand.hours[where[0]][where[1]]
+        assert top is not None
+        largest = top.exceedance_kva(float(level_kva[where[0]]), direction)
     per_day = demand.interval_min / 60.0
 
     def hours(period: str, days: NDArray[np.float64]) -> Hours:

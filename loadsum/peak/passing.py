@@ -1,13 +1,14 @@
 """Probability that days and years pass a level, averaged over calendar and weather."""
 
 from dataclasses import dataclass, fields
+from functools import cached_property
 from typing import Literal
 
 import numpy as np
 from numpy.typing import NDArray
 
 from loadsum.demand.hourly import Direction
-from loadsum.peak.anyinterval import AnyInterval, any_interval
+from loadsum.peak.anyinterval import AnyInterval, DrawnDays, any_interval, drawn_days
 from loadsum.peak.copula import DayCopula
 from loadsum.peak.margins import Margins
 from loadsum.peak.weather import YearsOfDays
@@ -75,7 +76,7 @@ class Curve:
         return float(np.interp(level_kva, self.level_kva_at, [getattr(c, f"{period}_error") for c in self.chances]))
 
 
-@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
+@dataclass(frozen=True, kw_only=True, eq=False)
 class Passing:
     """What is needed to say how often days and years pass a level.
 
@@ -95,12 +96,16 @@ class Passing:
     seed: int
     direction: Direction
 
-    def at(self, level_kva: NDArray[np.float64]) -> Chance:
-        """Probabilities of passing the level of each class of days, (B,) float64. [kVA]"""
+    @cached_property
+    def _drawn(self) -> tuple[DrawnDays, ...]:
+        blocks = self.margins.kw.shape[0]
+        return tuple(drawn_days(self.copula, b, np.random.default_rng([self.seed, b])) for b in range(blocks))
+
+    def at(self, level_kva: NDArray[np.float64], *, runs: bool = True) -> Chance:
+        """Probabilities of passing the level of each class of days, (B,) float64, and runs where asked. [kVA]"""
         single = self.margins.exceedance(level_kva, self.direction)
         found = [
-            [any_interval(p, self.copula, b, np.random.default_rng([self.seed, b])) for p in row]
-            for b, row in enumerate(single)
+            [any_interval(p, drawn, runs=runs) for p in row] for drawn, row in zip(self._drawn, single, strict=True)
         ]
         days = self.years.block.size
         value = self._each_day(found, "value")
@@ -131,7 +136,7 @@ class Passing:
         high = self._bounded("year", smallest_year)
         level = np.linspace(low, max(high, low * (1.0 + 1e-9) + 1e-9), GRID)
         blocks = self.margins.kw.shape[0]
-        return Curve(level_kva_at=level, chances=tuple(self.at(np.full(blocks, kva)) for kva in level))
+        return Curve(level_kva_at=level, chances=tuple(self.at(np.full(blocks, kva), runs=False) for kva in level))
 
     def _bounded(self, period: Period, probability: float) -> float:
         """A level at which the lower bound for days is at least, or the upper bound for years at most, as given."""

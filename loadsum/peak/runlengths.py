@@ -7,7 +7,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from loadsum.intake.readings import read_only
-from loadsum.peak.anyinterval import RUN_LENGTHS, any_interval, runs_of_at_least
+from loadsum.peak.anyinterval import RUN_LENGTHS, any_interval, drawn_days, runs_of_at_least
 from loadsum.peak.copula import DayCopula
 from loadsum.peak.margins import Margins
 
@@ -84,7 +84,8 @@ def score_runs(
         kva = sums[whole] * np.hypot(1.0, margins.kvar_per_kw[b])
         above = np.where(known, kva > level_kva[b], False)
         seen.append(np.array(runs_of_at_least(above), dtype=np.float64))
-        runs = np.array([any_interval(p, copula, b, rng).runs_per_day for p in single[b]])
+        drawn = drawn_days(copula, b, rng)
+        runs = np.array([any_interval(p, drawn).runs_per_day for p in single[b]])
         if margins.temperature_c is None or temperature_c is None:
             expected += runs[0] * int(whole.sum())
         else:

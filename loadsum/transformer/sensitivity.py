@@ -1,7 +1,7 @@
 """How far demand, power factor and ambient temperature may move before the choice of rating does."""
 
 from collections.abc import Callable, Sequence
-from dataclasses import dataclass, replace
+from dataclasses import dataclass
 
 from loadsum.demand.hourly import GroupDemand
 from loadsum.study.unittables import AllowedLoading, Criterion
@@ -82,12 +82,8 @@ def sensitivity(
     if chosen is None or not asked:
         return None
 
-    # where a choice turns, limits are met by hours and by large probabilities: the far tail need not be exact
-    rows = [tuple(hour if hour is None else replace(hour, deep=False) for hour in row) for row in demand.hours]
-    quick = replace(demand, hours=tuple(rows))
-
     def meets(rating_kva: float, factor: float) -> bool:
-        found = evaluate(quick, [rating_kva / factor], asked, allowed)
+        found = evaluate(demand, [rating_kva / factor], asked, allowed)
         return all(result.by_rating[0].meets is True for result in found.criteria)
 
     at = list(ratings_kva).index(chosen)

@@ -176,6 +176,18 @@ def test_reactive_power_follows_the_groups_power_factor_and_exports_count_in_bot
     assert hour.mean_square_kva2() == pytest.approx((hour.variance_kw2() + hour.mean_kw() ** 2) / 0.95**2)
 
 
+@pytest.mark.parametrize("direction", ["both", "delivered", "exported"])
+def test_many_levels_at_once_have_the_probabilities_brackets_and_intervals_of_one_by_one(direction):
+    kw = np.rint(np.random.default_rng(8).normal(0.2, 12.0, (3, 40, 1))) / 10
+    hour = demand_of(kw, replace(SETTINGS, resamples=60, lattice_kw=0.03), rng=np.random.default_rng(1)).hours[0][0]
+    levels = np.array([0.5, 2.0, 4.0])
+    found = hour.exceedances_kva(levels, direction)
+    single = [hour.exceedance_kva(level, direction) for level in levels]
+    for part in ("value", "lower", "upper", "low", "high"):
+        assert getattr(found, part) == pytest.approx([getattr(one, part) for one in single], rel=1e-9)
+    assert np.all(found.lower < found.upper)
+
+
 def test_a_cold_day_has_more_demand_and_a_record_of_cold_days_too():
     rng = np.random.default_rng(9)
     temperature = rng.normal(4.0, 6.0, 80)

@@ -43,5 +43,6 @@ def test_too_few_weeks_or_no_movement_make_no_interval():
 def test_a_level_moves_with_the_resampled_mean_and_spread():
     rng = np.random.default_rng(5)
     drawn = resample_weeks(rng.standard_normal((91, 1)), DAY, 50, rng)[0]
-    levels = drawn.levels_kw(3.0, 1.0, 1.0)
-    assert levels == pytest.approx(1.0 + (2.0 - drawn.shift_kw) / drawn.stretch)
+    levels = drawn.levels_kw(np.array([3.0, 1.0]), 1.0, 1.0)
+    assert levels[0] == pytest.approx(1.0 + (2.0 - drawn.shift_kw) / drawn.stretch)
+    assert levels[1] == pytest.approx(1.0 - drawn.shift_kw / drawn.stretch)

@@ -4,7 +4,7 @@ import numpy as np
 import pytest
 from scipy.stats import multivariate_normal
 
-from loadsum.peak.anyinterval import any_interval, runs_of_at_least
+from loadsum.peak.anyinterval import any_interval, drawn_days, runs_of_at_least
 from loadsum.peak.copula import DayCopula, choose_copula, fit_copula, log_density, normal_scores
 from tests.peak.samples import moody_days, reference
 
@@ -20,7 +20,9 @@ def equal(correlation, intervals=24, freedom=np.inf):
 # 24 hours of p = 0.001 under a one-factor normal law (computed_from_formula: Boole, independence, one-factor normal).
 @pytest.mark.parametrize("correlation", ["0", "0.5", "0.9", "0.99"])
 def test_a_day_of_24_equal_hours_agrees_with_the_published_orthant(correlation):
-    day = any_interval(np.full(24, 1e-3), equal(float(correlation)), 0, np.random.default_rng(7), draws=40_000)
+    day = any_interval(
+        np.full(24, 1e-3), drawn_days(equal(float(correlation)), 0, np.random.default_rng(7), draws=40_000)
+    )
     truth = float(DAILY["gaussian_equicorr"][correlation])
     assert abs(day.value - truth) < 4.0 * day.standard_error
     assert day.standard_error < 0.01 * truth
@@ -34,7 +36,7 @@ def test_unequal_intervals_agree_with_quadrature_of_the_normal_orthant():
     correlation = np.corrcoef(score + score[:, :1], rowvar=False)
     p = np.array([0.2, 0.01, 0.05, 0.1])
     copula = DayCopula(correlation=correlation[None], degrees_of_freedom=np.inf, days=np.array([40]))
-    day = any_interval(p, copula, 0, np.random.default_rng(1), draws=60_000)
+    day = any_interval(p, drawn_days(copula, 0, np.random.default_rng(1), draws=60_000))
     below = multivariate_normal(cov=correlation, abseps=1e-9, releps=1e-9).cdf(copula.score(p))
     assert abs(day.value - (1.0 - below)) < 4.0 * day.standard_error + 1e-5
 
@@ -44,7 +46,7 @@ def test_unequal_intervals_agree_with_quadrature_of_the_normal_orthant():
 def test_bounds_contain_the_simulated_truth_and_the_estimate_agrees_with_it(correlation, freedom):
     copula = equal(correlation, 12, freedom)
     p = np.linspace(0.001, 0.05, 12)
-    day = any_interval(p, copula, 0, np.random.default_rng(2))
+    day = any_interval(p, drawn_days(copula, 0, np.random.default_rng(2)))
     drawn = copula.draw(0, 200_000, np.random.default_rng(3)) > copula.score(p)
     truth = drawn.any(axis=1).mean()
     assert day.at_least <= truth <= day.at_most
@@ -58,7 +60,7 @@ def test_the_relative_error_does_not_grow_as_the_probability_shrinks():
     copula = equal(0.9)
     errors = []
     for p in (1e-2, 1e-6, 1e-12):
-        day = any_interval(np.full(24, p), copula, 0, np.random.default_rng(4))
+        day = any_interval(np.full(24, p), drawn_days(copula, 0, np.random.default_rng(4)))
         assert day.at_least <= day.value <= day.at_most
         errors.append(day.standard_error / day.value)
     assert max(errors) < 0.03
@@ -67,9 +69,9 @@ def test_the_relative_error_does_not_grow_as_the_probability_shrinks():
 def test_an_interval_without_readings_has_no_part_in_the_day():
     p = np.full(24, 1e-3)
     p[5] = np.nan
-    day = any_interval(p, equal(0.0), 0, np.random.default_rng(5))
+    day = any_interval(p, drawn_days(equal(0.0), 0, np.random.default_rng(5)))
     assert day.at_most == pytest.approx(0.023)
-    assert any_interval(np.full(24, np.nan), equal(0.0), 0, np.random.default_rng(5)).value == 0.0
+    assert any_interval(np.full(24, np.nan), drawn_days(equal(0.0), 0, np.random.default_rng(5))).value == 0.0
 
 
 def test_runs_are_counted_once_at_each_length():
@@ -121,3 +123,14 @@ def test_hold_out_tells_a_heavy_tailed_copula_from_a_gaussian_one(freedom, heavy
     chosen, scores = choose_copula([days], [np.arange(700) // 7])
     assert (chosen.degrees_of_freedom <= 8.0) is heavy
     assert scores[chosen.degrees_of_freedom] == max(scores.values())
+
+
+@pytest.mark.parametrize("freedom", [3.0, 30.0, np.inf])
+def test_scores_fall_from_plus_infinity_and_the_table_for_draws_agrees_with_them(freedom):
+    copula = equal(0.5, freedom=freedom)
+    asked = np.array([0.0, 1e-100, 1e-30, 1e-6, 0.1, 0.5, 0.9])
+    score = copula.score(asked)
+    assert score[0] == np.inf
+    assert np.all(np.diff(score) < 0.0)
+    assert copula.drawn_score(asked[2:5]) == pytest.approx(score[2:5], rel=1e-4)
+    assert copula.tail(score[3:]) == pytest.approx(asked[3:], rel=1e-9)

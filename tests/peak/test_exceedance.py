@@ -112,3 +112,14 @@ def test_holidays_move_days_between_classes_in_their_month():
     change = days_by_month(with_holiday, [2031]) - days_by_month(plain, [2031])
     assert change[2].tolist() == [-1.0, 1.0]
     assert np.count_nonzero(change) == 2
+
+
+def test_hours_far_out_in_the_tail_are_summed_from_tails_of_their_own():
+    rng = np.random.default_rng(4)
+    kw = np.rint(rng.gamma(2.0, 8.0, (8, 60, 24))) / 20.0
+    demand = group_demand([block("year", 365.0, kw)], interval_min=60, power_factor=1.0, settings=PLAIN)
+    top = max(hour.whole_up.points_kw[-1] for hour in demand.hours[0])
+    level = exceedance_hours(demand, {"far": 0.9 * top})["far"]
+    exact = [hour.total.up.tail(0.9 * top).probability for hour in demand.hours[0]]
+    assert level.year.expected_h < 1e-6
+    assert level.probability[0] == pytest.approx(exact, rel=1e-9, abs=1e-14)
