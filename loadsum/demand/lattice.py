@@ -2,7 +2,6 @@
 
 from collections.abc import Callable, Sequence
 from dataclasses import dataclass
-from functools import cached_property
 from typing import Literal
 
 import numpy as np
@@ -20,7 +19,7 @@ CELLS = 4096  # cells into which a continuous term is cut at least: about 1/200 
 NORMAL_REACH = 10.5  # standard deviations beyond which a normal law has less than CUT
 
 
-@dataclass(frozen=True, kw_only=True, eq=False)
+@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
 class LatticeMass:
     """Probability mass on the points ``(offset + i) * step_kw``.
 
@@ -78,12 +77,10 @@ class LatticeMass:
     def above_many(self, levels_kw: NDArray[np.float64]) -> NDArray[np.float64]:
         """Probability of demand strictly above each level, summed from the top, (L,) float64. [kW -> -]"""
         first = np.floor(np.asarray(levels_kw) / self.step_kw + ALIGNED).astype(np.int64) + 1 - self.offset
-        return np.asarray(self._tail[np.minimum(np.maximum(first, 0), self.mass.size)], dtype=np.float64)
-
-    @cached_property
-    def _tail(self) -> NDArray[np.float64]:
-        """Probability from each point upwards, and beyond the last, (n + 1,) float64. [-]"""
-        return np.append(np.cumsum(self.mass[::-1])[::-1], 0.0) + self.beyond_above
+        first = np.minimum(np.maximum(first, 0), self.mass.size)
+        lowest = int(first.min(initial=self.mass.size))
+        tail = np.append(np.cumsum(self.mass[lowest:][::-1])[::-1], 0.0) + self.beyond_above
+        return np.asarray(tail[first - lowest], dtype=np.float64)
 
     def below(self, level_kw: float) -> float:
         """Probability of demand strictly below a level, summed from the bottom. [-]"""
@@ -93,12 +90,9 @@ class LatticeMass:
     def below_many(self, levels_kw: NDArray[np.float64]) -> NDArray[np.float64]:
         """Probability of demand strictly below each level, summed from the bottom, (L,) float64. [kW -> -]"""
         last = np.ceil(np.asarray(levels_kw) / self.step_kw - ALIGNED).astype(np.int64) - self.offset
-        return np.asarray(self._head[np.minimum(np.maximum(last, 0), self.mass.size)], dtype=np.float64)
-
-    @cached_property
-    def _head(self) -> NDArray[np.float64]:
-        """Probability below each point, and of all, (n + 1,) float64. [-]"""
-        return np.append(0.0, np.cumsum(self.mass)) + self.beyond_below
+        last = np.minimum(np.maximum(last, 0), self.mass.size)
+        head = np.append(0.0, np.cumsum(self.mass[: int(last.max(initial=0))])) + self.beyond_below
+        return np.asarray(head[last], dtype=np.float64)
 
     def shifted(self, shift_kw: float, rounding: Rounding) -> "LatticeMass":
         """The demand with a constant added, the constant rounded to the lattice. [kW]"""

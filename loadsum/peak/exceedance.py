@@ -128,6 +128,7 @@ def exceedance_hours(
     direction: Direction = "both",
     *,
     month_days: NDArray[np.float64] | None = None,
+    far: bool = True,
 ) -> ExceedanceTable:
     """Expected hours per average year above each level.
 
@@ -141,6 +142,9 @@ def exceedance_hours(
         Direction of flow that counts.
     month_days : (12, B) float64 or None
         Days of each class in each month of an average year, from :func:`days_by_month`. [d]
+    far : bool
+        Whether probabilities that are rare throughout are computed at tilts of their own; without, all are accurate to
+        1e-15 absolute.
 
     Raises
     ------
@@ -165,7 +169,7 @@ def exceedance_hours(
         for b, row in enumerate(demand.hours)
     ]
     levels = [
-        _level(demand, found, n, name, level_kva[n].copy(), direction, month_days) for n, name in enumerate(asked)
+        _level(demand, found, n, name, level_kva[n].copy(), direction, month_days, far) for n, name in enumerate(asked)
     ]
     return ExceedanceTable(
         direction=direction,
@@ -212,6 +216,7 @@ def _level(
     level_kva: NDArray[np.float64],
     direction: Direction,
     month_days: NDArray[np.float64] | None,
+    far: bool,
 ) -> LevelExceedance:
     """One level, the n-th of those found.
 
@@ -228,7 +233,7 @@ def _level(
             for part in ("value", "lower", "upper", "low", "high"):
                 parts[part][b, i] = getattr(given, part)[n]
             parts["floor"][b, i] = hour.floor
-    if np.nansum(parts["upper"]) < FAR * covered.sum():
+    if far and np.nansum(parts["upper"]) < FAR * covered.sum():
         for b, i in np.argwhere(covered).tolist():
             hour = demand.hours[b][i]
             assert hour is not None
@@ -238,9 +243,15 @@ def _level(
     largest, where = None, (-1, -1)
     if covered.any():
         where = divmod(int(np.nanargmax(parts["value"])), covered.shape[1])
-        top = demand.hours[where[0]][where[1]]
-        assert top is not None
-        largest = top.exceedance_kva(float(level_kva[where[0]]), direction)
+        at = {part: float(array[where]) for part, array in parts.items()}
+        largest = Probability(
+            value=at["value"],
+            lower=at["lower"],
+            upper=at["upper"],
+            low=None if np.isnan(at["low"]) else at["low"],
+            high=None if np.isnan(at["high"]) else at["high"],
+            floor=at["floor"],
+        )
     per_day = demand.interval_min / 60.0
 
     def hours(period: str, days: NDArray[np.float64]) -> Hours:

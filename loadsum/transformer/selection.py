@@ -142,6 +142,7 @@ def evaluate(
     installed_kva: float = 0.0,
     others: Mapping[str, FigureSource] | None = None,
     above: Mapping[str, ExceedanceTable] | None = None,
+    far: bool = True,
 ) -> Selection:
     """The choice of rating by the user's own criteria.
 
@@ -161,9 +162,11 @@ def evaluate(
         Sources of figures that other stages compute (annual probability, temperatures, ageing), by quantity.
     above : mapping of str to ExceedanceTable
         Exceedance of every rating that was computed already, both directions and all seasons, by loading.
+    far : bool
+        Whether rare exceedance is computed as in :func:`exceedance_hours`; no limit lies where that would matter.
     """
     results = tuple(
-        _criterion(demand, ratings_kva, criterion, allowed, others or {}, above or {}) for criterion in criteria
+        _criterion(demand, ratings_kva, criterion, allowed, others or {}, above or {}, far) for criterion in criteria
     )
     results = _with_governing(results)
     return _choice(ratings_kva, results, installed_kva)
@@ -186,16 +189,20 @@ def _criterion(
     allowed: Sequence[AllowedLoading],
     others: Mapping[str, FigureSource],
     above: Mapping[str, ExceedanceTable],
+    far: bool,
 ) -> CriterionResult:
     rows = []
-    known = above.get(criterion.of) if criterion.season == "all" and criterion.direction == "both" else None
+    exceeded: list[Figure] = []
+    if criterion.quantity in ("exceedance hours per year", "exceedance probability in any interval"):
+        known = above.get(criterion.of) if criterion.season == "all" and criterion.direction == "both" else None
+        exceeded = (
+            _exceedances(demand, ratings_kva, criterion, allowed, far)
+            if known is None
+            else [exceedance_figure(level, criterion.quantity) for level in known.levels]
+        )
     for n, rating in enumerate(ratings_kva):
-        if criterion.quantity in ("exceedance hours per year", "exceedance probability in any interval"):
-            figure = (
-                exceedance_figure(known.levels[n], criterion.quantity)
-                if known is not None
-                else _exceedance(demand, rating, criterion, allowed)
-            )
+        if exceeded:
+            figure = exceeded[n]
         elif criterion.quantity in others:
             figure = others[criterion.quantity](criterion, rating)
         else:
@@ -216,11 +223,19 @@ def _criterion(
     )
 
 
-def _exceedance(demand: GroupDemand, rating: float, criterion: Criterion, allowed: Sequence[AllowedLoading]) -> Figure:
-    level = rating * allowed_pu(demand, criterion.of, allowed)
+def _exceedances(
+    demand: GroupDemand,
+    ratings_kva: Sequence[float],
+    criterion: Criterion,
+    allowed: Sequence[AllowedLoading],
+    far: bool,
+) -> list[Figure]:
+    """Figures of an exceedance criterion at every rating, from one pass over the hours."""
+    share = allowed_pu(demand, criterion.of, allowed)
     kept = [b for b, block in enumerate(demand.blocks) if criterion.season in ("all", block.season)]
-    if np.isnan(level[kept]).any():
-        return Figure(value=float("nan"), reason=f"the study file states no {criterion.of} for every season")
+    if np.isnan(share[kept]).any():
+        missing = Figure(value=float("nan"), reason=f"the study file states no {criterion.of} for every season")
+        return [missing] * len(ratings_kva)
     part = replace(
         demand,
         blocks=tuple(demand.blocks[b] for b in kept),
@@ -228,7 +243,9 @@ def _exceedance(demand: GroupDemand, rating: float, criterion: Criterion, allowe
         sums_kw=tuple(demand.sums_kw[b] for b in kept),
     )
     direction: Direction = criterion.direction  # type: ignore[assignment]
-    return exceedance_figure(exceedance_hours(part, {"level": level[kept]}, direction).levels[0], criterion.quantity)
+    levels = {str(n): rating * share[kept] for n, rating in enumerate(ratings_kva)}
+    table = exceedance_hours(part, levels, direction, far=far)
+    return [exceedance_figure(level, criterion.quantity) for level in table.levels]
 
 
 def _held(rating: float, figure: Figure, criterion: Criterion) -> CriterionAtRating:

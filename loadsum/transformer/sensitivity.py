@@ -2,6 +2,10 @@
 
 from collections.abc import Callable, Sequence
 from dataclasses import dataclass
+from functools import partial
+
+import numpy as np
+from numpy.typing import NDArray
 
 from loadsum.demand.hourly import GroupDemand
 from loadsum.study.unittables import AllowedLoading, Criterion
@@ -9,7 +13,7 @@ from loadsum.transformer.selection import Selection, evaluate
 
 JUDGED = ("exceedance hours per year", "exceedance probability in any interval")
 MOST = 3.0  # demand is looked at up to three times as high, and down to a third
-WITHIN = 0.005  # of demand: how finely the turning point is found
+GRID = 17  # factors looked at in one pass: two passes find a turning point to 0.5 % of demand
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -82,16 +86,17 @@ def sensitivity(
     if chosen is None or not asked:
         return None
 
-    def meets(rating_kva: float, factor: float) -> bool:
-        found = evaluate(demand, [rating_kva / factor], asked, allowed)
-        return all(result.by_rating[0].meets is True for result in found.criteria)
+    def good(rating_kva: float, factors: NDArray[np.float64]) -> NDArray[np.bool_]:
+        found = evaluate(demand, (rating_kva / factors[::-1]).tolist(), asked, allowed, far=False)
+        met = [[one.meets is True for one in result.by_rating] for result in found.criteria]
+        return np.asarray(np.all(met, axis=0)[::-1])
 
     at = list(ratings_kva).index(chosen)
     smaller = ratings_kva[at - 1] if at > 0 else None
-    holds_to = _turning(lambda factor: meets(chosen, factor), 1.0, MOST)
-    smaller_from = None
-    if smaller is not None and meets(smaller, 1.0 / MOST):
-        smaller_from = _turning(lambda factor: meets(smaller, factor), 1.0 / MOST, 1.0)
+    holds_to = _turning(partial(good, chosen), 1.0, MOST)
+    smaller_from = None if smaller is None else _turning(partial(good, smaller), 1.0 / MOST, 1.0)
+    if smaller_from is not None and smaller_from <= 1.0 / MOST:
+        smaller_from = None
     return Sensitivity(
         rating_kva=chosen,
         holds_to_pu=holds_to,
@@ -113,13 +118,16 @@ def _ambient_room(selection: Selection, at: int) -> float | None:
     return min(margins) if margins else None
 
 
-def _turning(good: Callable[[float], bool], low: float, high: float) -> float | None:
-    """Largest factor found good between one that is good and one beyond; None where the highest is good too."""
-    if good(high):
-        return None
-    while high - low > WITHIN * low:
-        middle = 0.5 * (low + high)
-        low, high = (middle, high) if good(middle) else (low, middle)
+def _turning(good: Callable[[NDArray[np.float64]], NDArray[np.bool_]], low: float, high: float) -> float | None:
+    """Largest factor of a fine row below which all are good; the lowest where it is not, None where all are."""
+    for _ in range(2):
+        factors = np.geomspace(low, high, GRID)
+        bad = np.flatnonzero(~good(factors))
+        if bad.size == 0:
+            return None
+        if bad[0] == 0:
+            return low
+        low, high = float(factors[bad[0] - 1]), float(factors[bad[0]])
     return low
 
 
