@@ -37,7 +37,7 @@ from loadsum.peak.dayandyear import day_and_year
 from loadsum.peak.diversity import diversity
 from loadsum.peak.exceedance import days_by_month, exceedance_hours
 from loadsum.progress import Progress
-from loadsum.report import document, figures, revision
+from loadsum.report import document, revision
 from loadsum.report.archive import RESULTS_FILE, STUDY_FILE, Attachment
 from loadsum.report.csvtables import csv_table
 from loadsum.report.energybymonth import energy_by_month
@@ -158,9 +158,9 @@ def attachments(results: dict[str, Any], study_file: bytes | None) -> list[Attac
 
 def outputs(results: dict[str, Any], study_file: bytes) -> dict[str, bytes]:
     """Everything that a study leaves behind, by name relative to its folder."""
-    drawn = {f"figures/{name}": content for name, content in figures.draw(results).items()}
-    report = document.render(results, attachments=attachments(results, study_file))
-    return {"report.pdf": report, STUDY_FILE: study_file, **tables_of(results), **drawn}
+    report = document.compose(results, attachments=attachments(results, study_file))
+    drawn = {f"figures/{name}": content for name, content in report.figure_files().items()}
+    return {"report.pdf": document.printed(report, results), STUDY_FILE: study_file, **tables_of(results), **drawn}
 
 
 def inspect(path: Path, *, out: Path | None, progress: Progress) -> str:

@@ -59,7 +59,7 @@ def test_the_results_name_what_is_not_covered(results: dict) -> None:
 
 
 def test_page_1_says_for_how_many_hours_of_the_year_it_speaks(results: dict) -> None:
-    html, _, _ = document.compose(results, attachments=(), overrides=None)
+    html = document.compose(results).html
     first = html[: html.index("Contents")] if "Contents" in html else html
     coverage = results["transformers"][0]["coverage"]
     assert f"{coverage['covered_hours']:.0f}" in first.replace(" ", "").replace(" ", "")

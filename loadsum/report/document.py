@@ -2,6 +2,7 @@
 
 import re
 from collections.abc import Mapping, Sequence
+from dataclasses import dataclass
 from pathlib import Path
 from typing import Any
 
@@ -32,35 +33,56 @@ LONGEST_RUNNING_TITLE = 72
 MOST_LISTED_FIGURES = 16
 MOST_LINES_ON_FIRST_PAGE = 26
 
-__all__ = ["compose", "material", "render", "templates_folder"]
+__all__ = ["Composed", "compose", "material", "printed", "render", "templates_folder"]
+
+
+@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
+class Composed:
+    """A report ready to be set.
+
+    Parameters
+    ----------
+    html : str
+        The pages, as a description.
+    assets : mapping of str to (str, bytes)
+        Media type and content of the pieces they refer to, by name.
+    attachments : sequence of Attachment
+        Everything to attach.
+    figures : mapping of str to DrawnFigure
+        Figures by name; each stands in ``assets`` as SVG.
+    """
+
+    html: str
+    assets: Mapping[str, tuple[str, bytes]]
+    attachments: Sequence[Attachment]
+    figures: Mapping[str, figures.DrawnFigure]
+
+    def figure_files(self) -> dict[str, bytes]:
+        """The figures as SVG and PNG, by file name."""
+        return figures.files(self.figures, {name: self.assets[f"{name}.svg"][1] for name in self.figures})
 
 
 def render(
     results: Mapping[str, Any], *, attachments: Sequence[Attachment] = (), overrides: Path | None = None
 ) -> bytes:
-    """The report as a PDF that is an archive file (PDF/A-3a) and accessible (PDF/UA-1) at once.
+    """The report as a PDF: what :func:`compose` makes, as :func:`printed`."""
+    return printed(compose(results, attachments=attachments, overrides=overrides), results)
 
-    Parameters
-    ----------
-    results : mapping
-        Results as read from results.json.
-    attachments : sequence of Attachment
-        Files to put into the PDF; a manifest with their digests is added.
-    overrides : Path or None
-        Folder with the utility's own templates, texts and logo.
+
+def printed(composed: Composed, results: Mapping[str, Any]) -> bytes:
+    """A composed report as a PDF that is an archive file (PDF/A-3a) and accessible (PDF/UA-1) at once.
 
     Raises
     ------
     InputError
-        A character cannot be printed, or a template or text of the utility is at fault.
+        A character cannot be printed, or a template of the utility is at fault.
     MachineError
         The text-layout libraries are missing.
     """
-    html, assets, listed = compose(results, attachments=attachments, overrides=overrides)
     return typeset(
-        html,
-        assets=assets,
-        attachments=listed,
+        composed.html,
+        assets=composed.assets,
+        attachments=composed.attachments,
         finisher=meet_both_standards,
         iso_date=str((results.get("study") or {}).get("date") or ""),
     )
@@ -89,9 +111,24 @@ def notation(t: Catalogue, region: str) -> Notation:
 
 
 def compose(
-    results: Mapping[str, Any], *, attachments: Sequence[Attachment], overrides: Path | None
-) -> tuple[str, dict[str, tuple[str, bytes]], list[Attachment]]:
-    """HTML of the report, the pieces it refers to, and everything to attach."""
+    results: Mapping[str, Any], *, attachments: Sequence[Attachment] = (), overrides: Path | None = None
+) -> Composed:
+    """A report ready to be set.
+
+    Parameters
+    ----------
+    results : mapping
+        Results as read from results.json.
+    attachments : sequence of Attachment
+        Files to put into the PDF; a manifest with their digests is added.
+    overrides : Path or None
+        Folder with the utility's own templates, texts and logo.
+
+    Raises
+    ------
+    InputError
+        A character cannot be printed, or a template or text of the utility is at fault.
+    """
     m, cleaned = material(results, overrides)
     listed = [*attachments, manifest(results, attachments, templates_digest(overrides))]
     units = units_in_detail(m)
@@ -129,7 +166,7 @@ def compose(
         logo=own_logo is not None,
         **_running(m),
     )
-    return html, assets, listed
+    return Composed(html=html, assets=assets, attachments=listed, figures=drawn)
 
 
 def _unchecked(m: Material, made: Sequence[Section]) -> str:

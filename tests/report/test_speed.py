@@ -26,14 +26,14 @@ def _best(run: Callable[[], Any], times: int = 3) -> float:
 def test_a_report_takes_at_most_three_times_the_renderer_alone_on_the_same_page_description(
     results: dict[str, Any],
 ) -> None:
-    html, assets, _ = compose(results, attachments=(), overrides=None)
+    composed = compose(results)
     weasyprint = renderer.load()
 
     def alone() -> None:
         with shipped_fonts_only(), typesetting.quiet_renderer():
-            weasyprint.HTML(string=html, base_url="asset:", url_fetcher=typesetting.Shelf(assets)).write_pdf(
-                io.BytesIO()
-            )
+            weasyprint.HTML(
+                string=composed.html, base_url="asset:", url_fetcher=typesetting.Shelf(composed.assets)
+            ).write_pdf(io.BytesIO())
 
     ratio = _best(lambda: render(results)) / _best(alone)
     print(f"report / renderer alone: {ratio:.2f}")

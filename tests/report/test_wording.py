@@ -21,7 +21,7 @@ NOTATION = Notation(decimal=",", group=".", date_form="{day}. {month} {year}", m
 
 def page_text(results: dict[str, Any]) -> str:
     """The report's words, tags and styles left out."""
-    html, _, _ = compose(without_figures(results), attachments=(), overrides=None)
+    html = compose(without_figures(results)).html
     body = unescape(html[html.index("<body>") :])
     return " ".join(re.sub(r"<[^>]+>", " ", body).replace("\u00a0", " ").split())
 
@@ -147,7 +147,8 @@ def test_a_utility_replaces_a_sentence_a_block_and_the_logo(results: dict[str, A
     (tmp_path / "logo.svg").write_text(
         '<svg xmlns="http://www.w3.org/2000/svg" width="30" height="10"><rect width="30" height="10"/></svg>', "utf-8"
     )
-    html, assets, _ = compose(results, attachments=(), overrides=tmp_path)
+    composed = compose(results, overrides=tmp_path)
+    html, assets = composed.html, composed.assets
     assert "Loading note" in html
     assert "Our own cautions for Pole transformer at Mill Lane." in html
     assert "IEC 60076-7 (loading guide)" not in html

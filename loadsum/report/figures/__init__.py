@@ -1,7 +1,6 @@
 """Figures of the report, each telling one thing, readable in black and white."""
 
 from collections.abc import Callable, Mapping, Sequence
-from typing import Any
 
 from loadsum.report.figures import (
     calibration,
@@ -53,28 +52,21 @@ def drawn(m: Material, units: Sequence[Unit]) -> dict[str, DrawnFigure]:
     return {figure.name: figure for figure in made if figure is not None}
 
 
-def draw(results: Mapping[str, Any]) -> dict[str, bytes]:
+def files(figures: Mapping[str, DrawnFigure], drawings: Mapping[str, bytes]) -> dict[str, bytes]:
     """Every figure as SVG and as PNG at print size, by file name, for pasting into other documents.
 
     Parameters
     ----------
-    results : mapping
-        Results as read from results.json.
-
-    Raises
-    ------
-    InputError
-        A character of the results is in no font of the report.
+    figures : mapping of str to DrawnFigure
+        Figures by name.
+    drawings : mapping of str to bytes
+        The same as SVG, as the report has them.
     """
-    from loadsum.report.document import material
-    from loadsum.report.sections.overview import units_in_detail
-
-    m, _ = material(results)
-    files: dict[str, bytes] = {}
-    for name, figure in drawn(m, units_in_detail(m)).items():
-        files[f"{name}.svg"] = svg(figure.figure)
-        files[f"{name}.png"] = png(figure.figure)
-    return files
+    made: dict[str, bytes] = {}
+    for name, figure in figures.items():
+        made[f"{name}.svg"] = drawings[name]
+        made[f"{name}.png"] = png(figure.figure)
+    return made
 
 
-__all__ = ["DrawnFigure", "draw", "drawn", "png", "svg"]
+__all__ = ["DrawnFigure", "drawn", "files", "png", "svg"]
