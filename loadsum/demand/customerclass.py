@@ -10,58 +10,102 @@ References
    from memory.
 """
 
+from dataclasses import dataclass
+from itertools import pairwise
+
 import numpy as np
 from numpy.typing import NDArray
+
+MOST_VALUES = 2**15  # values of a pool up to which each is kept; a customer's own are left out of it one by one
+BINS = 2**13  # groups of neighbouring values, each held at its mean, into which a larger pool is gathered
+FINE_NEAR = 0.1  # readings relative to the mean around which the groups are narrowest
 
 SMALLEST_MEAN_KW = 1e-3  # customers with less are not scaled to or from: their ratio to the class says nothing
 
 
-def relative_readings(kw: NDArray[np.float64]) -> list[NDArray[np.float64]]:
-    """Readings of each customer relative to its own mean; empty where the mean is not clearly positive.
+@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
+class ClassPool:
+    """Readings of all members of a class in one demand interval, each relative to its member's own mean.
+
+    Parameters
+    ----------
+    value : (n,) float64
+        Values, or the means of groups of neighbouring ones. [-]
+    weight : (n,) float64
+        Sum of the weights of all members at each; every member that lends has weight 1 in all. [-]
+    own : tuple of ((k,) int64, (k,) float64)
+        For each member, where in ``value`` its own readings are, and their weights; empty for one that does not lend.
+    lenders : int
+        Members that lend. [-]
+    """
+
+    value: NDArray[np.float64]
+    weight: NDArray[np.float64]
+    own: tuple[tuple[NDArray[np.int64], NDArray[np.float64]], ...]
+    lenders: int
+
+
+def class_pool(kw: NDArray[np.float64], *, most_values: int = MOST_VALUES) -> ClassPool:
+    """Pool of a class; members whose mean is not clearly positive do not lend.
 
     Parameters
     ----------
     kw : (C, D) float64
         Readings of one demand interval; NaN where missing. [kW]
-
-    Returns
-    -------
-    list of (n,) float64
-        One array a customer. [-]
+    most_values : int
+        Values up to which each is kept. [-]
     """
-    relative = []
-    for row in kw:
-        own = row[np.isfinite(row)]
-        mean = own.mean() if own.size else 0.0
-        relative.append(own / mean if mean > SMALLEST_MEAN_KW else np.empty(0))
-    return relative
+    known = np.isfinite(kw)
+    days = known.sum(axis=1)
+    mean = np.where(known, kw, 0.0).sum(axis=1) / np.maximum(days, 1)
+    known &= (mean > SMALLEST_MEAN_KW)[:, None]
+    member = np.nonzero(known)[0]
+    value = kw[known] / mean[member]
+    weight = 1.0 / days[member]
+    place = np.arange(value.size)
+    if value.size > most_values:
+        bent = np.arcsinh(value / FINE_NEAR)
+        low, width = float(bent.min()), float(np.ptp(bent)) / BINS
+        _, place = (
+            np.unique(((bent - low) / width).astype(np.int64), return_inverse=True) if width else (None, 0 * place)
+        )
+        together = np.bincount(place, weights=weight)
+        value = np.bincount(place, weights=weight * value) / together
+    ends = np.searchsorted(member, np.arange(kw.shape[0] + 1))
+    own = tuple((place[first:end], weight[first:end]) for first, end in pairwise(ends.tolist()))
+    summed = np.bincount(place, weights=weight, minlength=value.size) if value.size else weight
+    return ClassPool(
+        value=value,
+        weight=np.asarray(summed, dtype=np.float64),
+        own=own,
+        lenders=int((np.diff(ends) > 0).sum()),
+    )
 
 
-def borrowed(
-    relative: list[NDArray[np.float64]], customer: int, mean_kw: float
-) -> tuple[NDArray[np.float64], NDArray[np.float64]]:
-    """Readings of the other customers of the class scaled to one customer's mean, each customer with equal weight.
+def borrowed(pool: ClassPool, customer: int, mean_kw: float) -> tuple[NDArray[np.float64], NDArray[np.float64]]:
+    """Readings of the other members of the class scaled to one member's mean, each member with equal weight.
 
     Parameters
     ----------
-    relative : list of (n,) float64
-        Readings of every customer of the class relative to its own mean. [-]
+    pool : ClassPool
+        Pool of the class.
     customer : int
-        Index of the customer that borrows; -1 for one that has no readings of its own. [-]
+        Index of the member that borrows. [-]
     mean_kw : float
-        Mean of that customer. [kW]
+        Mean of that member. [kW]
 
     Returns
     -------
     values, weights : (n,) float64
         Scaled readings and weights that sum to one; empty where nothing can be borrowed. [kW, -]
     """
-    others = [r for c, r in enumerate(relative) if c != customer and r.size]
-    if not others or mean_kw <= SMALLEST_MEAN_KW:
+    place, own = pool.own[customer]
+    lenders = pool.lenders - (1 if place.size else 0)
+    if lenders == 0 or mean_kw <= SMALLEST_MEAN_KW:
         return np.empty(0), np.empty(0)
-    values = np.concatenate(others) * mean_kw
-    weights = np.concatenate([np.full(r.size, 1.0 / (r.size * len(others))) for r in others])
-    return values, weights
+    weight = pool.weight - np.bincount(place, weights=own, minlength=pool.weight.size)
+    kept = weight > 1e-12
+    return pool.value[kept] * mean_kw, weight[kept] / lenders
 
 
 def weighted_variance(values: NDArray[np.float64], weights: NDArray[np.float64]) -> float:

@@ -8,7 +8,7 @@ from numpy.typing import NDArray
 
 from loadsum.demand.commonterm import skewness_along_day, variance_uncertainty_kw2, with_common_term
 from loadsum.demand.convolution import BracketedSum, DemandSum, plain_distributions
-from loadsum.demand.customerclass import borrowed, relative_readings, weighted_variance
+from loadsum.demand.customerclass import ClassPool, borrowed, class_pool, weighted_variance
 from loadsum.demand.dependence import CommonComponent, common_component, mean_variance
 from loadsum.demand.hourly import BlockDiagnostics, GroupDemand, HourDemand, with_normal
 from loadsum.demand.lattice import LatticeMass, lattice_mass
@@ -300,12 +300,12 @@ class _Block:
             resamples=resamples,
         )
 
-    def _by_class(self, adjusted: NDArray[np.float64]) -> dict[str, tuple[list[int], list[NDArray[np.float64]]]]:
-        """Members of each class and their readings relative to their own means."""
+    def _by_class(self, adjusted: NDArray[np.float64]) -> dict[str, tuple[list[int], ClassPool]]:
+        """Members of each class and what they lend each other."""
         found = {}
         for name in dict.fromkeys(self.group.classes):
             alike = [n for n, other in enumerate(self.group.classes) if other == name]
-            found[name] = alike, relative_readings(adjusted[alike])
+            found[name] = alike, class_pool(adjusted[alike])
         return found
 
     def _days(self, adjusted: NDArray[np.float64]) -> int:
@@ -317,7 +317,7 @@ class _Block:
         self,
         c: int,
         values: NDArray[np.float64],
-        by_class: Mapping[str, tuple[list[int], list[NDArray[np.float64]]]],
+        by_class: Mapping[str, tuple[list[int], ClassPool]],
         step: float,
         moved: bool,
     ) -> tuple[LatticeMass, LatticeMass, float]:
@@ -328,8 +328,8 @@ class _Block:
         """
         extra, share = np.empty(0), np.empty(0)
         if self.settings.shrinkage and self.settings.borrowed_days > 0.0:
-            alike, relative = by_class[self.group.classes[c]]
-            extra, share = borrowed(relative, alike.index(c), float(values.mean()))
+            alike, pool = by_class[self.group.classes[c]]
+            extra, share = borrowed(pool, alike.index(c), float(values.mean()))
         weight = self.settings.borrowed_days / (self.settings.borrowed_days + values.size) if extra.size else 0.0
         if moved:
             values = np.rint(values / step) * step
