@@ -11,7 +11,7 @@ from numpy.typing import NDArray
 from loadsum.errors import Fault
 from loadsum.intake.duplicates import without_duplicates
 from loadsum.intake.findings import Finding
-from loadsum.intake.timed import Timed, left_out, picked, total
+from loadsum.intake.timed import CHUNK, Timed, left_out, picked, readings_of_each, total
 
 MOST_CELLS = 400_000_000  # of the matrix; 1 000 customers over 45 years of hours
 EPOCH = dt.datetime(1970, 1, 1)
@@ -62,8 +62,12 @@ class Grid:
         """Cell of each reading at a resolution, (n,) int64. [-]"""
         of_customer = np.array([self.row.get(name, 0) for name in part.customers], dtype=np.int64)
         per_row = self.slots * (self.interval_min // unit_min)
-        place = (part.start_s - self.first_s) // (unit_min * 60)
-        return np.asarray(of_customer[part.customer] * per_row + place, dtype=np.int64)
+        cell = np.empty(part.start_s.size, dtype=np.int64)
+        for begin in range(0, cell.size, CHUNK):
+            some = slice(begin, begin + CHUNK)
+            place = (part.start_s[some] - self.first_s) // (unit_min * 60)
+            cell[some] = of_customer[part.customer[some]] * per_row + place
+        return cell
 
 
 def aligned(parts: Sequence[Timed], interval_min: int, phase_s: int = 0) -> tuple[Matrix | None, list[Fault]]:
@@ -95,10 +99,13 @@ def aligned(parts: Sequence[Timed], interval_min: int, phase_s: int = 0) -> tupl
     if grid is None:
         return None, faults
     cells = [grid.cells(part, grid.part_min) for part in parts]
+    uniform = all((_distinct(part.minutes) == interval_min).all() for part in parts)
+    if uniform and _fills(cells, grid):
+        return _reshaped(parts[0], grid, findings), []
     keep = without_duplicates(parts, cells, len(grid.row) * grid.slots * (interval_min // grid.part_min), findings)
     parts = [picked(part, kept) for part, kept in zip(parts, keep, strict=True)]
     cells = [cell if kept.all() else cell[kept] for cell, kept in zip(cells, keep, strict=True)]
-    if all((part.minutes == interval_min).all() for part in parts):
+    if uniform:
         return _scattered(parts, cells, grid, findings), []
     del cells, keep
     return _averaged(parts, grid, findings), []
@@ -118,12 +125,14 @@ def _too_coarse(part: Timed, interval_min: int) -> list[Fault]:
 
 def _on_grid(part: Timed, interval_min: int, phase_s: int, findings: list[Finding]) -> Timed:
     """Readings that lie within one demand interval and begin on a whole multiple of their own length."""
-    length = part.minutes * 60
-    since = part.start_s - phase_s
-    since -= since // (interval_min * 60) * (interval_min * 60)  # a remainder, the quick way
-    if not since.any():
-        return part
-    off = (since % length != 0) | (since + length > interval_min * 60)
+    off = np.zeros(part.start_s.size, bool)
+    for begin in range(0, off.size, CHUNK):
+        some = slice(begin, begin + CHUNK)
+        since = part.start_s[some] - phase_s
+        since -= since // (interval_min * 60) * (interval_min * 60)  # a remainder, the quick way
+        if since.any():
+            length = part.minutes[some] * 60
+            off[some] = (since % length != 0) | (since + length > interval_min * 60)
     if not off.any():
         return part
     findings.extend(
@@ -139,7 +148,9 @@ def _on_grid(part: Timed, interval_min: int, phase_s: int, findings: list[Findin
 
 
 def _grid(parts: Sequence[Timed], interval_min: int, phase_s: int) -> tuple[Grid | None, list[Fault]]:
-    used = sorted({part.customers[c] for part in parts for c in np.flatnonzero(np.bincount(part.customer)).tolist()})
+    used = sorted(
+        {part.customers[c] for part in parts for c in np.flatnonzero(readings_of_each(part.customer)).tolist()}
+    )
     step = interval_min * 60
     filled = [part for part in parts if part.start_s.size]
     first = (min(int(part.start_s.min()) for part in filled) - phase_s) // step
@@ -160,6 +171,29 @@ def _grid(parts: Sequence[Timed], interval_min: int, phase_s: int) -> tuple[Grid
 
 def _distinct(minutes: NDArray[np.int64]) -> NDArray[np.int64]:
     return minutes[:1] if minutes.strides == (0,) else np.unique(minutes)
+
+
+def _fills(cells: Sequence[NDArray[np.int64]], grid: Grid) -> bool:
+    """Whether the readings are those of one file that fill every cell once and in order."""
+    if len(cells) != 1 or cells[0].size != len(grid.row) * grid.slots:
+        return False
+    (cell,) = cells
+    ranges = range(0, cell.size, CHUNK)
+    return all(np.array_equal(cell[n : n + CHUNK], np.arange(n, min(n + CHUNK, cell.size))) for n in ranges)
+
+
+def _reshaped(part: Timed, grid: Grid, findings: list[Finding]) -> Matrix:
+    """Readings that are in the order of the matrix already."""
+    shape = (len(grid.row), grid.slots)
+    return Matrix(
+        customers=tuple(grid.row),
+        start_utc=_starts(grid),
+        kw=part.kw.reshape(shape),
+        kvar=None if part.kvar is None else part.kvar.reshape(shape),
+        estimated=part.estimated.reshape(shape),
+        readings_behind=np.broadcast_to(np.int16(1), shape),
+        findings=tuple(findings),
+    )
 
 
 def _scattered(

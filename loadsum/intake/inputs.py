@@ -81,20 +81,25 @@ def unpacked(path: Path) -> Iterator[tuple[str, bytes]]:
     InputError
         The file cannot be read or unpacked, is empty, or unpacks to more than is believable.
     """
+    suffix = path.suffix.lower()
     try:
-        packed = path.read_bytes()
-    except OSError as error:
-        raise InputError(path.name, [Fault(path.name, f"cannot be read: {error.strerror}")]) from error
-    try:
-        if path.suffix.lower() == ".gz":
+        if suffix == ".gz":
+            packed = _bytes_of(path)
             with gzip.open(io.BytesIO(packed)) as file:
                 yield path.name, _bounded(file.read, len(packed), path.name)
-        elif path.suffix.lower() == ".zip":
-            yield from _members(packed, path.name)
+        elif suffix == ".zip":
+            yield from _members(_bytes_of(path), path.name)
         else:
-            yield path.name, _not_empty(packed, path.name)
+            yield path.name, _not_empty(_bytes_of(path), path.name)  # kept by nobody here: it may be large
     except (OSError, EOFError, zlib.error, zipfile.BadZipFile, NotImplementedError, RuntimeError) as error:
         raise InputError(path.name, [Fault(path.name, f"cannot be unpacked: {error}; is it complete?")]) from error
+
+
+def _bytes_of(path: Path) -> bytes:
+    try:
+        return path.read_bytes()
+    except OSError as error:
+        raise InputError(path.name, [Fault(path.name, f"cannot be read: {error.strerror}")]) from error
 
 
 def _members(packed: bytes, name: str) -> Iterator[tuple[str, bytes]]:
@@ -119,6 +124,6 @@ def _bounded(read: Callable[[int], bytes], packed_bytes: int, name: str) -> byte
 
 
 def _not_empty(content: bytes, name: str) -> bytes:
-    if not content.strip():
+    if not content[:64].strip() and not content.strip():
         raise InputError(name, [Fault(name, "is empty")])
     return content

@@ -230,7 +230,11 @@ def _as_power(part: Timed, source: MeterFiles, exported: NDArray[np.float64] | N
     if source.quantity != "power":
         uniform = part.minutes.strides == (0,) and part.minutes.size
         divisor = per * int(part.minutes[0]) / 60.0 if uniform else np.asarray(per * part.minutes / 60.0, np.float64)
-    kw = part.kw * times / divisor
+    kw = part.kw
+    if times != 1.0:
+        kw = kw * times
+    if isinstance(divisor, np.ndarray) or divisor != 1.0:
+        kw = kw / divisor
     if exported is not None:
         kw = kw - np.nan_to_num(exported) * times / divisor
     return Timed(

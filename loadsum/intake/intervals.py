@@ -4,6 +4,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from loadsum.intake.clock import NAT
+from loadsum.intake.timed import readings_of_each
 
 INTERVALS_MIN = (1, 2, 3, 5, 6, 10, 12, 15, 20, 30, 60)
 SHARE_OF_STAMPS = 0.6  # a customer with fewer of the file's stamps is looked at on its own
@@ -32,7 +33,7 @@ def intervals_min(
         Length of the interval; one value seen n times where all customers have the same. [min]
     """
     common = _commonest_step(instants)
-    count = np.bincount(customer)
+    count = readings_of_each(customer)
     if instants.size < 2:
         return None
     few = np.flatnonzero((count > 0) & (count < SHARE_OF_STAMPS * instants.size))

@@ -8,6 +8,8 @@ from numpy.typing import NDArray
 
 from loadsum.intake.findings import Finding
 
+CHUNK = 2**16  # readings looked at together, so that what is made of them stays in the processor's memory
+
 
 @dataclass(frozen=True, slots=True, kw_only=True, eq=False)
 class Timed:
@@ -48,6 +50,16 @@ class Timed:
     def place(self, row: int) -> str:
         """``file:line`` of a reading."""
         return f"{self.name}:{self.line[row]}"
+
+
+def readings_of_each(customer: NDArray[np.integer]) -> NDArray[np.int64]:
+    """Readings of each customer, by code, (C,) int64; in chunks, because a count turns its codes into wide ones. [-]"""
+    count = np.zeros(0, np.int64)
+    for begin in range(0, customer.size, CHUNK):
+        some = np.bincount(customer[begin : begin + CHUNK], minlength=count.size)
+        some[: count.size] += count
+        count = some
+    return count
 
 
 def left_out(

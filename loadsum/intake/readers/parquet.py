@@ -61,6 +61,12 @@ def read_parquet(path: Path, name: str, source: MeterFiles) -> Iterator[RawReadi
             )
         wanted = [time, *rest, *([who] if who in file.schema_arrow.names else [])]
         extra = [c for c in (source.kvar_column, source.export_column, source.flag_column) if c]
+        coded = [
+            c
+            for c in (time, who)
+            if c in file.schema_arrow.names and pa.types.is_string(file.schema_arrow.field(c).type)
+        ]
+        file = pq.ParquetFile(path, read_dictionary=coded)  # stamps and identifiers stay codes, as they are stored
         first = 1
         for group in range(file.num_row_groups):
             table = file.read_row_group(group, columns=[*wanted, *extra])
@@ -97,7 +103,8 @@ def _raw(
         customers = [fixed] if fixed else values
         customer = np.repeat(np.arange(count, dtype=np.int32), rows)
         stamp, line = np.tile(stamp, count), np.tile(line, count)
-    bad = np.isinf(value) | (np.abs(value) >= LARGEST)
+    with np.errstate(invalid="ignore"):
+        bad = np.flatnonzero(np.abs(value) >= LARGEST)
     value[bad] = np.nan
 
     def more(column: str) -> NDArray[np.float64] | None:
@@ -118,7 +125,7 @@ def _raw(
         exported=more(source.export_column),
         flagged=flagged,
         line=line,
-        unreadable=tuple((int(n), "inf or too large") for n in np.flatnonzero(bad)),
+        unreadable=tuple((int(n), "inf or too large") for n in bad),
         layout=layout,
         choices=tuple(said),
     )
