@@ -8,19 +8,19 @@ from numpy.typing import NDArray
 Paper = Literal["kraft", "thermally upgraded"]
 
 
-def relative_ageing_rate(hot_spot_c: NDArray[np.float64], paper: Paper) -> NDArray[np.float64]:
+def relative_ageing_rate(hot_spot_c: NDArray[np.floating], paper: Paper) -> NDArray[np.floating]:
     r"""Rate of insulation ageing relative to the rate at the rated hot spot.
 
     Parameters
     ----------
-    hot_spot_c : (...) float64
+    hot_spot_c : (...) float64 or float32
         Winding hot-spot temperature. [°C]
     paper : {"kraft", "thermally upgraded"}
         Insulation paper of the windings.
 
     Returns
     -------
-    (...) float64
+    (...) of the same precision
         Relative ageing rate; 1 at 98 °C (plain kraft) or 110 °C (thermally upgraded). [-]
 
     Notes
@@ -33,7 +33,12 @@ def relative_ageing_rate(hot_spot_c: NDArray[np.float64], paper: Paper) -> NDArr
     .. [1] IEC 60076-7, relative ageing rate; IEEE C57.91, ageing acceleration factor. Formulas read in
        restatements; clauses to be confirmed on a licensed copy.
     """
-    theta_h = np.asarray(hot_spot_c, dtype=np.float64)
+    rate = np.array(hot_spot_c)
     if paper == "kraft":
-        return np.asarray(2.0 ** ((theta_h - 98.0) / 6.0), dtype=np.float64)
-    return np.asarray(np.exp(15000.0 / 383.0 - 15000.0 / (theta_h + 273.0)), dtype=np.float64)
+        rate -= 98.0
+        rate /= 6.0
+        return np.exp2(rate, out=rate)
+    rate += 273.0
+    np.divide(-15000.0, rate, out=rate)
+    rate += 15000.0 / 383.0
+    return np.exp(rate, out=rate)

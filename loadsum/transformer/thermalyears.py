@@ -1,5 +1,6 @@
 """Highest temperatures and ageing of long runs of load, for many ratings at once."""
 
+import math
 from dataclasses import dataclass
 
 import numpy as np
@@ -10,6 +11,7 @@ from loadsum.intake.readings import read_only
 from loadsum.transformer.ageing import Paper, relative_ageing_rate
 from loadsum.transformer.thermal import Guide, ThermalData, steady_top_oil_rise
 
+LONGEST_STRETCH = 32
 NEGLIGIBLE_K = 0.05  # what the start may still change after the warm-up [K]
 
 
@@ -132,38 +134,111 @@ def _one_run(
     warm_up: int,
     parts: int,
 ) -> list[tuple[float, float, float]]:
+    """Figures of one run at each rating.
+
+    Arrays are (L, n): n stretches of L intervals side by side, in single precision, few enough to stay in the
+    processor's memory and written to again and again.
+    """
     ieee = guide == "IEEE C57.91"
     power = 2.0 * data.winding_exponent if ieee else data.winding_exponent
-    load_power = np.abs(kva) ** power
-    kept = slice(warm_up, None)
-    steps = np.arange(parts + 1) / parts
+    length = _stretch(kva.size, warm_up)
+    kept = warm_up // length
+    load = np.ascontiguousarray(np.abs(kva).reshape(-1, length).T, dtype=np.float32)
+    outside = np.ascontiguousarray(air.reshape(-1, length).T, dtype=np.float32)
+    steps = (np.arange(parts + 1) / parts).tolist()
     weights = np.where(np.arange(parts + 1) % 2 == 1, 4.0, 2.0)
     weights[[0, -1]] = 1.0
     weights /= 3.0 * parts
-    mean = float(np.abs(kva).mean())
-    winding = [np.zeros(kva[kept].size) for _ in steps]  # per unit of rated gradient, times rating to the power
+    mean = float(load.mean(dtype=np.float64))
+    ultimate, before, now, scratch = (np.empty_like(load) for _ in range(4))
+
+    # per unit of rated gradient, times rating to the power: the same for all ratings
+    load_power = load ** np.float32(power)
+    winding = [np.zeros_like(load) for _ in steps]
     for gain, constant_min in _winding_lags(data, guide):
-        _add_lag(winding, gain * load_power, gain * mean**power, interval_min / constant_min, steps, kept)
+        np.multiply(load_power, np.float32(gain), out=ultimate)
+        lengths = interval_min / constant_min
+        _run_through(ultimate, gain * mean**power, lengths, before, scratch)
+        for step, rise in zip(steps, winding, strict=True):
+            rise += _within(ultimate, before, step * lengths, now)
     oil_lengths = interval_min / (data.oil_time_constant_min * (1.0 if ieee else data.k11))
-    outside = air[kept] if ieee else np.zeros(1)
     rows = []
     for rating in ratings_kva.tolist():
-        ultimate = steady_top_oil_rise(kva / rating, data)
+        np.multiply(load, np.float32(1.0 / rating), out=ultimate)
+        _to_oil_rise(ultimate, data)
         initial = float(steady_top_oil_rise(np.array([mean / rating]), data)[0])
         if not ieee:
-            ultimate, initial = ultimate + air, initial + float(air[0])
-        before = _starts(ultimate, initial, oil_lengths)
-        last, away = ultimate[kept], (before - ultimate)[kept]
-        scale = data.hot_spot_gradient_k / rating**power
+            ultimate += outside
+            initial += float(air[0])
+        _run_through(ultimate, initial, oil_lengths, before, scratch)
+        gradient = np.float32(data.hot_spot_gradient_k / rating**power)
         top_oil = hot_spot = -np.inf
         ageing = 0.0
-        for n, step in enumerate(steps.tolist()):
-            oil = last + away * np.exp(-step * oil_lengths) + outside
-            hot = oil + scale * winding[n]
-            top_oil, hot_spot = max(top_oil, float(oil.max())), max(hot_spot, float(hot.max()))
-            ageing += weights[n] * float(relative_ageing_rate(hot, paper).mean())
+        for weight, step, rise in zip(weights.tolist(), steps, winding, strict=True):
+            _within(ultimate, before, step * oil_lengths, now)
+            if ieee:
+                now += outside
+            top_oil = max(top_oil, float(now[:, kept:].max()))
+            np.multiply(rise, gradient, out=scratch)
+            now += scratch
+            hot = now[:, kept:]
+            hot_spot = max(hot_spot, float(hot.max()))
+            ageing += weight * float(relative_ageing_rate(hot, paper).mean())
         rows.append((top_oil, hot_spot, ageing))
     return rows
+
+
+def _stretch(intervals: int, warm_up: int) -> int:
+    """Length of stretches that a run and its warm-up are whole numbers of. [intervals]"""
+    whole = math.gcd(intervals, warm_up)
+    return max(length for length in range(1, LONGEST_STRETCH + 1) if whole % length == 0)
+
+
+def _to_oil_rise(loading_pu: NDArray[np.float32], data: ThermalData) -> None:
+    """Turns loading into what :func:`steady_top_oil_rise` gives, in place."""
+    R = data.loss_ratio
+    loading_pu *= loading_pu
+    loading_pu *= np.float32(R / (R + 1.0))
+    loading_pu += np.float32(1.0 / (R + 1.0))
+    np.power(loading_pu, np.float32(data.oil_exponent), out=loading_pu)
+    loading_pu *= np.float32(data.top_oil_rise_k)
+
+
+def _run_through(
+    ultimate: NDArray[np.float32],
+    initial: float,
+    lengths: float,
+    before: NDArray[np.float32],
+    end: NDArray[np.float32],
+) -> None:
+    """Writes where a first-order lag stands at the start of each interval, interval length in time constants.
+
+    Stretches run side by side from nothing; then what each starts with is found, and added as it fades.
+    """
+    keep = math.exp(-lengths)
+    count = ultimate.shape[0]
+    np.multiply(ultimate, np.float32(1.0 - keep), out=end)
+    for last, now, carried in zip(end[:-1], end[1:], before[1:], strict=True):
+        np.multiply(last, np.float32(keep), out=carried)
+        now += carried
+    first = np.concatenate([[initial], end[-1, :-1].astype(np.float64)])
+    before[0] = lfilter([1.0], [1.0, -(keep**count)], first)
+    faded = (keep ** np.arange(1, count)).astype(np.float32)
+    np.multiply(faded[:, None], before[0], out=before[1:])
+    before[1:] += end[:-1]
+
+
+def _within(
+    ultimate: NDArray[np.float32], before: NDArray[np.float32], lengths: float, out: NDArray[np.float32]
+) -> NDArray[np.float32]:
+    """Where the lag stands so many time constants after the start of each interval."""
+    if lengths == 0.0:
+        out[:] = before
+        return out
+    np.subtract(before, ultimate, out=out)
+    out *= np.float32(math.exp(-lengths))
+    out += ultimate
+    return out
 
 
 def _winding_lags(data: ThermalData, guide: Guide) -> list[tuple[float, float]]:
@@ -175,27 +250,3 @@ def _winding_lags(data: ThermalData, guide: Guide) -> list[tuple[float, float]]:
         (1.0 - data.k21, data.oil_time_constant_min / data.k22),
     ]
     return [lag for lag in lags if lag[0] != 0.0]
-
-
-def _starts(ultimate: NDArray[np.float64], initial: float, lengths: float) -> NDArray[np.float64]:
-    """A first-order lag at the start of each interval, interval length in time constants."""
-    keep = float(np.exp(-lengths))
-    before = np.empty_like(ultimate)
-    before[0] = initial
-    before[1:] = lfilter([1.0 - keep], [1.0, -keep], ultimate[:-1], zi=[keep * initial])[0]
-    return before
-
-
-def _add_lag(
-    into: list[NDArray[np.float64]],
-    ultimate: NDArray[np.float64],
-    initial: float,
-    lengths: float,
-    steps: NDArray[np.float64],
-    kept: slice,
-) -> None:
-    """Adds a lag at each step through the interval."""
-    before = _starts(ultimate, initial, lengths)
-    last, away = ultimate[kept], (before - ultimate)[kept]
-    for n, step in enumerate(steps.tolist()):
-        into[n] += last + away * np.exp(-step * lengths)
