@@ -14,6 +14,7 @@ from loadsum import __version__
 from loadsum.demand.group import Group, group_demand
 from loadsum.demand.hourly import GroupDemand
 from loadsum.demand.modelparts import part_effects
+from loadsum.demand.normalfamily import normal_family
 from loadsum.demand.planned import Planned
 from loadsum.demand.served import (
     cannot_be_studied,
@@ -361,6 +362,7 @@ def one_transformer(
         customers=customer_rows(readings, served.customers),
         hours=hour_rows(demand),
         curve=curve(demand, curve_levels(demand, max(ratings) * unit.power_factor)),
+        normal_family=normal_family(demand, {rating: rating * shown for rating in ratings}),
         exceedance=tuple(row for of, table in above.items() for row in exceedance_rows(demand, table, ratings, of)),
         hour_map=hour_map(demand.blocks, ratings, list(above.values())[-1].levels),
         selection=selection,

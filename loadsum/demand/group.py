@@ -271,6 +271,7 @@ class _Block:
         still = BracketedSum(down=lower, up=lower if exact else DemandSum(terms=tuple(up), counts=tuple(counts)))
         if self.settings.common_component:
             still = with_common_term(still, counts, target, target - held, skewness)
+        shared = still.up.terms[-1] if len(still.up.terms) > len(counts) else None
         if self.settings.mean_uncertainty:
             unknown = variance_uncertainty_kw2(variances, target, self._days(adjusted))
             still = with_normal(still, (mean_variance_kw2 + unknown) ** 0.5)
@@ -297,6 +298,8 @@ class _Block:
             power_factor=self.power_factor,
             mean_variance_kw2=mean_variance_kw2 if self.settings.mean_uncertainty else 0.0,
             can_export=can_export,
+            own_terms=len(counts),
+            shared=shared,
             resamples=resamples,
         )
 

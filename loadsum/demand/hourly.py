@@ -55,6 +55,10 @@ class HourDemand:
         Variance of the mean that the model carries. [kW²]
     can_export : bool
         Whether any reading is negative; without, no flow is reversed.
+    own_terms : int
+        How many of the terms of ``still``, from the first on, are customers. [-]
+    shared : LatticeMass or None
+        The term of ``still`` that all customers share, rounded up; None where there is none.
     resamples : Resamples or None
         What resampled weeks do to the distribution; None where no interval was asked for or weeks are too few.
     """
@@ -74,6 +78,8 @@ class HourDemand:
     power_factor: float
     mean_variance_kw2: float
     can_export: bool
+    own_terms: int
+    shared: LatticeMass | None
     resamples: Resamples | None
 
     @property

@@ -70,7 +70,9 @@ def spread_taken_out(
         used = known & np.isfinite(total[:, i])
         made = replace(made, unit=float((made.stretch(warmth[used]) ** 2).mean()) ** 0.5)
         found[i] = made
-        centre = np.nanmean(out[:, known, i], axis=1, keepdims=True) if known.any() else 0.0
+        there = np.isfinite(out[:, :, i]) & known
+        centre = np.where(there, out[:, :, i], 0.0).sum(axis=1, keepdims=True)
+        centre = centre / np.maximum(there.sum(axis=1, keepdims=True), 1)
         out[:, :, i] = centre + (out[:, :, i] - centre) / made.stretch(warmth)
     return out, tuple(found)
 

@@ -247,6 +247,7 @@ def _stretched(hour: HourDemand, factor: float) -> HourDemand:
         whole_down=mass(hour.whole_down),
         whole_up=mass(hour.whole_up),
         independent=mass(hour.independent),
+        shared=None if hour.shared is None else mass(hour.shared),
         response=response,
         covariance_variance_kw2=hour.covariance_variance_kw2 * factor**2,
         mean_variance_kw2=hour.mean_variance_kw2 * factor**2,

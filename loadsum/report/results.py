@@ -12,6 +12,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from loadsum.demand.hourly import BlockDiagnostics
+from loadsum.demand.normalfamily import NormalFamily
 from loadsum.evidence.holdout import HoldOut
 from loadsum.intake.findings import Finding
 from loadsum.intake.inputs import InputFile
@@ -205,6 +206,7 @@ class TransformerResults:
     customers: tuple[CustomerRow, ...] = ()
     hours: tuple[HourRow, ...] = ()
     curve: Curve | None = None
+    normal_family: NormalFamily | None = None
     exceedance: tuple[ExceedanceRow, ...] = ()
     hour_map: HourMap | None = None
     selection: Selection | None = None

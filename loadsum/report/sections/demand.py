@@ -1,5 +1,8 @@
 """Demand over the year: when the rating is exceeded, and by how much."""
 
+from collections.abc import Mapping
+from typing import Any
+
 from loadsum.report.material import Material, Section, Unit
 
 
@@ -58,6 +61,58 @@ def curve_section(m: Material, unit: Unit) -> Section | None:
         block="curve",
         unit=unit.index if unit.several else -1,
         title=m.t("section.curve"),
-        content={},
+        content=_normal_family(m, unit),
         figures=(unit.figure("exceedance-curve"), unit.figure("normal-factor")),
     )
+
+
+def _normal_family(m: Material, unit: Unit) -> dict[str, Any]:
+    """Rows of the normal family at each rating, and from how many customers on the normal law would do."""
+    found = unit.part("normal_family")
+    if not found or not found.get("by_rating"):
+        return {"family": [], "notes": []}
+    rows = found["by_rating"]
+    distances = [row["largest_distance"] for row in rows if row.get("largest_distance") is not None]
+    notes = []
+    if found.get("independent") and found.get("together"):
+        alone, together = ([_reach(m, one) for one in found[name]] for name in ("independent", "together"))
+        customers = m.n.fixed(found["customers"])
+        notes.append(
+            m.t("curve.reach", where=_where(m, found), percent=alone[0], permille=alone[1], customers=customers)
+        )
+        never = m.t("curve.reach_never")
+        if together == [never, never]:
+            notes.append(m.t("curve.reach_never_together"))
+        else:
+            notes.append(m.t("curve.reach_together", percent=together[0], permille=together[1]))
+    if distances:
+        notes.append(m.t("curve.distance", low=m.n.fixed(min(distances), 2), high=m.n.fixed(max(distances), 2)))
+    return {"family": [_normal_row(m, row) for row in rows], "notes": notes}
+
+
+def _normal_row(m: Material, row: Mapping[str, Any]) -> dict[str, str]:
+    times = row.get("times_too_small")
+    cumulants = row.get("cumulant_corrected")
+    return {
+        "rating": m.plain(row["rating_kva"]),
+        "where": _where(m, row),
+        "adopted": m.n.probability(row["adopted"], row["floor"]),
+        "normal": m.n.percent(row["normal_covariance"]),
+        "independent": m.n.percent(row["normal_independent"]),
+        "cumulants": m.t("curve.below_zero") if cumulants is not None and cumulants < 0.0 else m.n.percent(cumulants),
+        "saddlepoint": m.n.percent(row.get("saddlepoint")),
+        "times": m.n.none if times is None else m.t("curve.times", factor=m.n.significant(times, 2)),
+    }
+
+
+def _where(m: Material, row: Mapping[str, Any]) -> str:
+    minutes = row["interval"] * m.interval_min
+    return f"{row['season']}, {row['day_type']}, {minutes // 60:02d}:{minutes % 60:02d}"
+
+
+def _reach(m: Material, one: Mapping[str, Any]) -> str:
+    if one.get("customers") is not None:
+        return m.t("curve.reach_from", count=m.n.significant(float(one["customers"]), 2))
+    if not one.get("tried"):
+        return m.t("curve.reach_never")
+    return m.t("curve.reach_not", count=m.n.fixed(one["tried"][-1][0]))
