@@ -5,10 +5,10 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 from scipy.special import xlogy
-from scipy.stats import binom, chi2
+from scipy.stats import chi2, t
 
 
-def kupiec(count: int, passed: int, share: float) -> float:
+def kupiec(count: float, passed: float, share: float) -> float:
     """Likelihood ratio of an unconditional share of passes; chi-squared with one degree of freedom. [-]
 
     References
@@ -51,9 +51,23 @@ def p_value(ratio: float, freedom: int) -> float:
     return float(chi2.sf(ratio, freedom))
 
 
-def chance_range(count: int, share: float) -> tuple[int, int]:
-    """Passes that chance allows in 95 of 100 repetitions, if all were independent."""
-    return int(binom.ppf(0.025, count, share)), int(binom.ppf(0.975, count, share))
+def chance_range(worth: float, share: float, weeks: int) -> tuple[float, float]:
+    """Shares of passes that chance allows in 95 of 100 repetitions if the level is right. [-]
+
+    The spread of the weekly counts is itself known from so many weeks only, so Student's law is used. Where passes are
+    rare, three of the intervals that the weeks are worth may pass as well.
+
+    Parameters
+    ----------
+    worth : float
+        Independent intervals that the weeks are worth, from :func:`effective_count`. [-]
+    share : float
+        Share meant to pass. [-]
+    weeks : int
+        Weeks behind it. [-]
+    """
+    half = float(t.ppf(0.975, max(weeks - 1, 1))) * float(np.sqrt(share * (1.0 - share) / worth))
+    return max(share - half, 0.0), share + max(half, 3.0 / worth)
 
 
 def effective_count(passes: NDArray[np.float64], intervals: NDArray[np.float64], share: float) -> float:

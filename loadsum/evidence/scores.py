@@ -98,6 +98,6 @@ def randomised_pit(law: LatticeMass, observed_kw: NDArray[np.float64], rng: np.r
     ----------
     .. [1] Czado, Gneiting and Held, Biometrics 65 (2009) 1254-1261 (from memory).
     """
-    below = np.array([law.below(float(y)) for y in observed_kw])
+    below = law.below_many(observed_kw)
     at_most = 1.0 - law.above_many(observed_kw)
     return np.asarray(below + rng.random(observed_kw.size) * np.maximum(at_most - below, 0.0), dtype=np.float64)

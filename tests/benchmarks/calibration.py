@@ -14,7 +14,8 @@ from numpy.typing import NDArray
 from loadsum.demand.group import group_demand
 from loadsum.demand.hourly import GroupDemand
 from loadsum.demand.settings import ModelSettings
-from loadsum.evidence.holdout import MODELS, SHARES, HoldOut, hold_out
+from loadsum.evidence.holdout import HoldOut, hold_out
+from loadsum.evidence.scored import MODELS, SHARES
 from loadsum.intake.hourclass import EPOCH, DayBlock
 from tests.datasets import FIRST_STAMP, real_homes, real_homes_temperature
 

@@ -5,7 +5,8 @@ import pytest
 from numpy.typing import NDArray
 
 from loadsum.demand.hourly import GroupDemand
-from loadsum.evidence.holdout import FEWEST_WEEKS, NOT_TESTED, HoldOut, LevelScore, hold_out, part_of
+from loadsum.evidence.holdout import FEWEST_WEEKS, NOT_TESTED, HoldOut, LevelScore, hold_out
+from loadsum.evidence.scored import part_of
 from loadsum.intake.hourclass import DayBlock
 from tests.benchmarks.calibration import blocks_by_season, fit, synthetic
 
