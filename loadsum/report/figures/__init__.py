@@ -11,6 +11,7 @@ from loadsum.report.figures import (
     hot_spot,
     maximum_by_number,
     normal_factor,
+    pit_histogram,
     quality_calendar,
     rare_levels,
     scenarios,
@@ -29,11 +30,13 @@ OF_A_TRANSFORMER: Sequence[Callable[[Material, Unit], DrawnFigure | None]] = (
     hot_spot.figure,
     scenarios.figure,
     calibration.figure,
+    pit_histogram.figure,
 )
 OF_ONE_OF_SEVERAL: Sequence[Callable[[Material, Unit], DrawnFigure | None]] = (
     exceedance_map.figure,
     exceedance_curve.figure,
 )
+OF_A_TEST: Sequence[Callable[[Material, Unit], DrawnFigure | None]] = (calibration.figure, pit_histogram.figure)
 OF_THE_STUDY: Sequence[Callable[[Material], DrawnFigure | None]] = (quality_calendar.figure,)
 
 

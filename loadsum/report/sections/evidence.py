@@ -23,7 +23,7 @@ def section(m: Material, unit: Unit) -> Section | None:
             "rows": [_row(m, row) for row in levels if row.get("model", "adopted") == "adopted"],
             "others": [_other(m, row) for row in found.get("models") or ()],
         },
-        figures=(unit.figure("calibration"),),
+        figures=(unit.figure("calibration"), unit.figure("pit-histogram")),
     )
 
 
