@@ -153,7 +153,8 @@ def pooled_floor(demand: GroupDemand) -> float:
     One day is the least that a class and interval can show, hence ``1 / (days + 1)`` there. Intervals of all classes
     together are not so many independent days: high demand comes in clusters. The cluster is the number of intervals
     above the level passed by one interval in a hundred, for each week that holds any; the floor is
-    ``1 / (intervals / cluster + 1)``. Where the customers were never metered together, the mean floor of the hours stands.
+    ``1 / (intervals / cluster + 1)``. Where the customers were never metered together, the mean floor of the hours
+    stands.
     """
     known = [np.isfinite(sums) for sums in demand.sums_kw]
     count = sum(int(part.sum()) for part in known)
