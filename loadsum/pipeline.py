@@ -133,10 +133,12 @@ def identifiers(asked: Study, results: dict[str, Any]) -> list[str]:
 def tables_of(results: dict[str, Any]) -> dict[str, bytes]:
     """Results and their tables as files, by name."""
     hours = [{"transformer": unit["id"], **row} for unit in results["transformers"] for row in unit["hours"]]
+    people = [{"transformer": unit["id"], **row} for unit in results["transformers"] for row in unit["customers"]]
     return {
         RESULTS_FILE: to_json(results).encode(),
         "hours.csv": csv_table(hours),
         "findings.csv": csv_table(results["findings"]),
+        "customers.csv": csv_table(people),
     }
 
 
@@ -149,6 +151,7 @@ def attachments(results: dict[str, Any], study_file: bytes | None) -> list[Attac
             name="hours.csv", content=tables["hours.csv"], description="Demand in every interval of every class"
         ),
         Attachment(name="findings.csv", content=tables["findings.csv"], description="Findings on the readings"),
+        Attachment(name="customers.csv", content=tables["customers.csv"], description="Customers with their demand"),
     ]
     if study_file is not None:
         attached.insert(

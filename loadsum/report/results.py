@@ -112,7 +112,7 @@ class Curve:
     observed : (L,) float64
         Share of observed sums above the level, each class of days weighted by its hours. [-]
     floor : float
-        Smallest probability that the record supports. [-]
+        Smallest share of all demand intervals that the record supports: one week in which such demand occurs. [-]
     """
 
     levels_kw: NDArray[np.float64]

@@ -1,5 +1,6 @@
 """Signing an issued report with the engineer's own certificate, and judging the signatures of one that came back."""
 
+import functools
 import io
 import logging
 import warnings
@@ -74,7 +75,6 @@ def sign(content: bytes, *, role: str, certificate: bytes, passphrase: str) -> b
     """
     try:
         from pyhanko.pdf_utils.font.opentype import GlyphAccumulatorFactory
-        from pyhanko.pdf_utils.incremental_writer import IncrementalPdfFileWriter
         from pyhanko.pdf_utils.text import TextBoxStyle
         from pyhanko.sign import signers as pdf_signers
         from pyhanko.sign.fields import SigSeedSubFilter
@@ -104,7 +104,7 @@ def sign(content: bytes, *, role: str, certificate: bytes, passphrase: str) -> b
             # The library leaves the font file to the garbage collector.
             warnings.filterwarnings("ignore", category=ResourceWarning, message=r".*\.ttf.*")
             pdf_signers.PdfSigner(about, signer=engineer, stamp_style=style).sign_pdf(
-                IncrementalPdfFileWriter(io.BytesIO(content)), existing_fields_only=True, output=target
+                _plain_writer()(io.BytesIO(content)), existing_fields_only=True, output=target
             )
     except SigningError as error:
         raise InputError("report", [Fault(field, f"cannot be signed: {error}")]) from error
@@ -112,6 +112,22 @@ def sign(content: bytes, *, role: str, certificate: bytes, passphrase: str) -> b
     if not signed.startswith(content):
         raise ValueError("signing changed bytes that were there before")
     return signed
+
+
+@functools.cache
+def _plain_writer() -> Any:
+    """The library's writer, which leaves the metadata of the report as they are.
+
+    The library would write them anew in a form that says the same to an RDF reader but not to every archive validator,
+    and the time of signing stands in the signature anyway.
+    """
+    from pyhanko.pdf_utils.incremental_writer import IncrementalPdfFileWriter
+
+    class PlainWriter(IncrementalPdfFileWriter):
+        def _update_meta(self) -> None:
+            return
+
+    return PlainWriter
 
 
 def _field_for(report: Received, role: str) -> str:

@@ -69,6 +69,7 @@ def _claim_accessibility(pdf: Any) -> None:
     if not end:
         raise ValueError("the renderer's metadata has no rdf:RDF to extend")
     stream.stream = [head + UA_DESCRIPTION.encode() + end + tail]
+    stream.compress = False  # an archive wants metadata that can be read without unpacking
 
 
 def _list_each_attachment_once(pdf: Any) -> None:

@@ -14,6 +14,7 @@ from loadsum.report.results import Coverage, Curve, CustomerRow, ExceedanceRow, 
 from loadsum.study.tables import Customer
 
 CURVE_POINTS = 120
+RARE_SHARE = 0.01  # intervals whose clustering says how many independent ones a record holds
 
 
 def clock_text(interval: int, interval_min: int) -> str:
@@ -140,8 +141,42 @@ def curve(demand: GroupDemand, levels_kw: NDArray[np.float64]) -> Curve:
         normal=normal(lambda hour, level: hour.normal_exceedance(level)),
         normal_independent=normal(lambda hour, level: hour.normal_independent_exceedance(level)),
         observed=observed,
-        floor=float(np.array([hour.floor for _, _, hour in present]) @ weight),
+        floor=pooled_floor(demand),
     )
+
+
+def pooled_floor(demand: GroupDemand) -> float:
+    """Smallest share of all demand intervals that the record supports: one week in which such demand occurs. [-]
+
+    Notes
+    -----
+    One day is the least that a class and interval can show, hence ``1 / (days + 1)`` there. Intervals of all classes
+    together are not so many independent days: high demand comes in clusters. The cluster is the number of intervals
+    above the level passed by one interval in a hundred, for each week that holds any; the floor is
+    ``1 / (intervals / cluster + 1)``. Where the customers were never metered together, the mean floor of the hours
+    stands.
+    """
+    known = [np.isfinite(sums) for sums in demand.sums_kw]
+    count = sum(int(part.sum()) for part in known)
+    if count == 0:
+        hours = demand.hours_in_year()
+        pairs = [
+            (hour.floor, hours[b, i])
+            for b, row in enumerate(demand.hours)
+            for i, hour in enumerate(row)
+            if hour is not None
+        ]
+        return float(np.average([floor for floor, _ in pairs], weights=[weight for _, weight in pairs]))
+    pooled = np.concatenate([sums[part] for sums, part in zip(demand.sums_kw, known, strict=True)])
+    level = np.quantile(pooled, 1.0 - RARE_SHARE, method="lower")
+    above = [np.where(part, sums, -np.inf) > level for sums, part in zip(demand.sums_kw, known, strict=True)]
+    weeks = {
+        (int(day) + 3) // 7  # 1970-01-01 was a Thursday: weeks begin on Monday
+        for block, rows in zip(demand.blocks, above, strict=True)
+        for day in np.asarray(block.day)[rows.any(axis=1)]
+    }
+    cluster = sum(int(rows.sum()) for rows in above) / max(len(weeks), 1)
+    return 1.0 / (count / max(cluster, 1.0) + 1.0)
 
 
 def curve_levels(demand: GroupDemand, highest_kw: float) -> NDArray[np.float64]:

@@ -41,6 +41,8 @@ def _document(pdf: Any) -> Iterator[str]:
     intents = root.get("/OutputIntents", Array())
     if len(intents) != 1 or intents[0].S != Name.GTS_PDFA1 or "/DestOutputProfile" not in intents[0]:
         yield "no single archive output intent"
+    if any("/Annots" in page and page.get("/Tabs") != Name.S for page in pdf.pages):
+        yield "a page with links or fields does not say that they come in the order of the tags"
     if "/AA" in root or "/OpenAction" in root or "/JavaScript" in root.get("/Names", Dictionary()):
         yield "the catalogue has actions"
     form = root.get("/AcroForm", Dictionary())
@@ -49,6 +51,8 @@ def _document(pdf: Any) -> Iterator[str]:
 
 
 def _metadata(pdf: Any) -> Iterator[str]:
+    if "/Filter" in pdf.Root.Metadata:
+        yield "metadata are packed"
     text = pdf.Root.Metadata.read_bytes().decode()
     if text.count("<rdf:RDF") != 1:
         yield "metadata needs exactly one rdf:RDF"

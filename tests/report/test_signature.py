@@ -1,8 +1,10 @@
 import copy
+import io
 import random
 from collections.abc import Sequence
 from typing import Any
 
+import pikepdf
 import pytest
 
 from loadsum.errors import InputError
@@ -22,6 +24,11 @@ def test_one_and_two_signatures_keep_both_standards_and_the_bytes_before(
     assert twice.startswith(once)
     assert structure_faults(once) == []
     assert structure_faults(twice) == []
+
+
+def test_signing_leaves_the_metadata_of_the_report_alone(issued: bytes, twice: bytes) -> None:
+    with pikepdf.open(io.BytesIO(issued)) as before, pikepdf.open(io.BytesIO(twice)) as after:
+        assert before.Root.Metadata.read_bytes() == after.Root.Metadata.read_bytes()
 
 
 def test_both_signatures_stand_and_name_their_signers(twice: bytes) -> None:
@@ -67,8 +74,6 @@ def test_any_flipped_byte_of_a_signed_report_is_caught(twice: bytes) -> None:
 
 
 def test_what_is_added_after_the_last_signature_is_caught(twice: bytes) -> None:
-    import io
-
     from pyhanko.pdf_utils.generic import pdf_name
     from pyhanko.pdf_utils.incremental_writer import IncrementalPdfFileWriter
 

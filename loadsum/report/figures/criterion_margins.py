@@ -11,6 +11,8 @@ from loadsum.report.sections.verdict import limit_text, meets_text, quantity_tex
 
 NAME = "criterion-margins"
 LOWEST, HIGHEST = 1e-3, 1e2
+LETTER = 0.075  # width of a digit on the axis [decades]
+LEVELS = (5, -5, 12, -12)  # heights of a label over or under its dot [pt]
 
 
 def figure(m: Material, unit: Unit) -> DrawnFigure | None:
@@ -30,7 +32,7 @@ def figure(m: Material, unit: Unit) -> DrawnFigure | None:
             _row(m, ax, y, criterion)
         ax.set_xscale("log")
         ax.set_xlim(LOWEST, HIGHEST * 2)
-        ax.set_ylim(len(criteria) - 0.45, -0.6)
+        ax.set_ylim(len(criteria) - 0.35, -0.6)
         ax.set_yticks(range(len(criteria)), [_name(m, criterion) for criterion in criteria])
         ax.tick_params(axis="y", length=0)
         ticks = [0.001, 0.01, 0.1, 1.0, 10.0, 100.0]
@@ -55,7 +57,7 @@ def _name(m: Material, criterion: Mapping[str, Any]) -> str:
 
 def _row(m: Material, ax: Any, y: int, criterion: Mapping[str, Any]) -> None:
     ax.axhline(y, color=PALE, linewidth=0.5, zorder=0)
-    places: list[float] = []
+    places: list[tuple[int, float, float]] = []
     for row in criterion["by_rating"]:
         if row.get("value") is None:
             continue
@@ -76,17 +78,26 @@ def _row(m: Material, ax: Any, y: int, criterion: Mapping[str, Any]) -> None:
             markeredgewidth=0.8,
             zorder=3,
         )
-        near = sum(1 for other in places if abs(np.log10(share / other)) < 0.22)
-        places.append(share)
+        text = m.plain(row["rating_kva"])
+        level = _free_level(places, float(np.log10(share)), 0.5 * LETTER * (len(text) + 1))
         ax.annotate(
-            m.kva(row["rating_kva"]),
+            text,
             (share, y),
-            xytext=(0, 5 if near % 2 == 0 else -5),
+            xytext=(0, LEVELS[level]),
             textcoords="offset points",
             ha="center",
-            va="bottom" if near % 2 == 0 else "top",
-            fontsize=7,
+            va="bottom" if LEVELS[level] > 0 else "top",
+            fontsize=7.5,
         )
+
+
+def _free_level(taken: list[tuple[int, float, float]], place: float, half: float) -> int:
+    """First level at which a text of that half width meets no other; the last one where none is free. [decades]"""
+    for level in range(len(LEVELS)):
+        if not any(other == level and abs(place - at) < half + width for other, at, width in taken):
+            break
+    taken.append((level, place, half))
+    return level
 
 
 def _alt(m: Material, criterion: Mapping[str, Any]) -> str:

@@ -5,17 +5,19 @@ from typing import Any
 
 import numpy as np
 
-from loadsum.report.figures.plate import GREY, INK, DrawnFigure, axes_mm, clock_axis, plate
+from loadsum.report.figures.plate import GREY, INK, WIDTH_MM, DrawnFigure, axes_mm, clock_axis, plate
 from loadsum.report.material import Material, Unit
 from loadsum.report.notation import NO_BREAK
 
 NAME = "demand-by-hour"
+MOST_CLASSES, MOST_IN_LINE = 8, 4
+HEIGHT_MM = 47.0
 # Level of each band's upper edge, the probability above it, and the band's tone.
 BANDS = (("q90_kw", 0.1, "#8f8f8f"), ("q99_kw", 0.01, "#bdbdbd"), ("q999_kw", 0.001, "#e2e2e2"))
 
 
 def figure(m: Material, unit: Unit) -> DrawnFigure | None:
-    """The class of days with the highest 99 % level, and beside it the one with the lowest."""
+    """Every class of days, seasons side by side; those with the highest 99 % level where there are more than fit."""
     wanted = ("interval", "q50_kw", "q90_kw", "q99_kw", "q999_kw")
     rows = [row for row in unit.rows("hours") if all(row.get(name) is not None for name in wanted)]
     if not rows:
@@ -24,26 +26,38 @@ def figure(m: Material, unit: Unit) -> DrawnFigure | None:
     for row in rows:
         by_class.setdefault((row["season"], row["day_type"]), []).append(row)
     top = {name: max(r["q99_kw"] for r in group) for name, group in by_class.items()}
-    shown = list(dict.fromkeys([max(top, key=lambda k: top[k]), min(top, key=lambda k: top[k])]))
-    drawn_rows = [row for name in shown for row in by_class[name]]
-    highest = max(row["q999_kw" if _supports(by_class[shown[0]], 0.001) else "q99_kw"] for row in drawn_rows)
+    loaded = sorted(top, key=lambda name: -top[name])
+    shown = [name for name in by_class if name in loaded[:MOST_CLASSES]]
+    grid = _grid(shown)
+    highest = max(
+        row["q999_kw" if _supports(by_class[name], 0.001) else "q99_kw"] for name in shown for row in by_class[name]
+    )
     ratings = [(m.kva(rating), kw) for rating, kw in ratings_kw(unit)]
     above = [kw for _, kw in ratings if kw > highest]
     limit = 1.06 * max([highest, *above[:1]])
-    with plate(68.0) as fig:
-        width = 60.0 if len(shown) == 2 else 132.0
-        for place, name in enumerate(shown):
-            left = 13.0 + place * (width + 13.0)
-            ax = axes_mm(fig, left, 8.0, 166.0 - left - width, 7.0)
-            _panel(m, ax, by_class[name], ratings, limit, last=place == len(shown) - 1)
-            ax.set_title(", ".join(name), loc="left", pad=4)
-            if place == 0:
-                ax.set_ylabel(m.t(f"figure.{NAME}.axis"))
-    peak = sorted(by_class[shown[0]], key=lambda row: row["q99_kw"] or 0.0)[-1]
+    columns = max(len(line) for line in grid)
+    height = HEIGHT_MM if len(grid) > 1 else 56.0
+    with plate(height * len(grid)) as fig:
+        width = (WIDTH_MM - 25.0 - 4.0 * (columns - 1)) / columns
+        for down, line in enumerate(grid):
+            for place, name in enumerate(line):
+                left = 12.0 + place * (width + 4.0)
+                ax = axes_mm(
+                    fig, left, (len(grid) - 1 - down) * height + 7.0, WIDTH_MM - left - width, down * height + 9.0
+                )
+                last = place == len(line) - 1
+                _panel(m, ax, by_class[name], ratings, limit, last=last, labelled=name == loaded[0])
+                clock_axis(ax, last=last)
+                if place:
+                    ax.set_yticklabels([])
+                ax.set_title("\n".join(name), loc="left", pad=2, fontsize=7.5, linespacing=1.05)
+            fig.axes[-len(line)].set_ylabel(m.t(f"figure.{NAME}.axis"))
+    peak = sorted(by_class[loaded[0]], key=lambda row: row["q99_kw"] or 0.0)[-1]
     return DrawnFigure(
         name=unit.figure(NAME),
         title=m.t(f"figure.{NAME}.title"),
-        note=m.t(f"figure.{NAME}.note"),
+        note=m.t(f"figure.{NAME}.note")
+        + (m.t(f"figure.{NAME}.most", shown=len(shown), all=len(by_class)) if len(shown) < len(by_class) else ""),
         alt=m.t(
             f"figure.{NAME}.alt",
             where=m.hour_class(peak),
@@ -53,6 +67,15 @@ def figure(m: Material, unit: Unit) -> DrawnFigure | None:
         ),
         figure=fig,
     )
+
+
+def _grid(shown: Sequence[tuple[str, str]]) -> list[list[tuple[str, str]]]:
+    """Classes in lines: one line a type of day where that fits, else as they come."""
+    kinds = list(dict.fromkeys(kind for _, kind in shown))
+    lines = [[name for name in shown if name[1] == kind] for kind in kinds]
+    if max(len(line) for line in lines) <= MOST_IN_LINE and len(lines) <= MOST_CLASSES // 2:
+        return lines
+    return [list(shown[first : first + MOST_IN_LINE]) for first in range(0, len(shown), MOST_IN_LINE)]
 
 
 def ratings_kw(unit: Unit) -> list[tuple[float, float]]:
@@ -74,6 +97,7 @@ def _panel(
     top: float,
     *,
     last: bool,
+    labelled: bool,
 ) -> None:
     length_h = m.interval_min / 60.0
     x = np.array([(row["interval"] + 0.5) * length_h for row in rows])
@@ -89,30 +113,30 @@ def _panel(
         labels.append((float(edge[at]), m.plain(100.0 * (1.0 - probability), 2) + NO_BREAK + "%"))
         below = edge
     ax.plot(x, below, color=INK, linewidth=0.5, linestyle=(0, (4, 2)))
-    _label_levels(ax, x[at], labels, top)
+    if labelled:
+        _label_levels(ax, x[at], labels, top)
     for text, kw in ratings:
         if kw < top:
             ax.axhline(kw, color=GREY, linewidth=0.8, linestyle=(0, (1, 1.6)), zorder=3)
             if last:
                 ax.text(24.4, kw, text, va="center", ha="left", clip_on=False)
     ax.set_ylim(0, top)
-    clock_axis(ax)
 
 
 def _label_levels(ax: Any, x: float, labels: Sequence[tuple[float, str]], top: float) -> None:
     """Names of the levels to the left of the highest hour, never closer than a line of text, with a thin leader."""
     to_left = x > 12.0
-    x_text = x - 4.5 if to_left else x + 4.5
+    x_text = x - 6.0 if to_left else x + 6.0
     y_text = -1.0
     for y, text in labels:
-        y_text = max(y, y_text + 0.062 * top)
+        y_text = max(y, y_text + 0.1 * top)
         ax.annotate(
             text,
             (x, y),
             xytext=(x_text, y_text + 0.02 * top),
             ha="right" if to_left else "left",
             va="center",
-            fontsize=7.0,
+            fontsize=7.5,
             arrowprops={"arrowstyle": "-", "linewidth": 0.35, "color": INK, "shrinkA": 1, "shrinkB": 0},
             bbox={"facecolor": "white", "edgecolor": "none", "pad": 0.6, "alpha": 1.0},
             zorder=4,

@@ -27,7 +27,7 @@ def figure(m: Material, unit: Unit) -> DrawnFigure | None:
     lowest = 10.0 ** np.floor(np.log10(floor / 12.0))
     lines = {name: values(curve, name)[whole] for name in MODELS if curve.get(name)}
     right = _right_edge(levels, lines, lowest, [kw for _, kw in ratings_kw(unit)])
-    with plate(84.0) as fig:
+    with plate(78.0) as fig:
         ax = axes_mm(fig, 19.0, 11.0, 40.0, 7.0)
         if curve.get("lower") and curve.get("upper"):
             low, high = (np.clip(values(curve, name)[whole], lowest / 100.0, 1.0) for name in ("lower", "upper"))
@@ -43,7 +43,7 @@ def figure(m: Material, unit: Unit) -> DrawnFigure | None:
         ax.set_ylim(lowest, 1.0)
         ax.set_xlim(levels[0], right)
         ax.axhspan(lowest, floor, color="#f0f0f0", zorder=-1)
-        ax.text(levels[0], floor * 0.8, " " + m.t(f"figure.{NAME}.floor"), va="top", ha="left", fontsize=7)
+        ax.text(levels[0], floor * 0.8, " " + m.t(f"figure.{NAME}.floor"), va="top", ha="left", fontsize=7.5)
         for rating, kw in ratings_kw(unit):
             if levels[0] < kw <= right:
                 ax.axvline(kw, color=GREY, linewidth=0.8, linestyle=DOTTED)
@@ -70,8 +70,8 @@ def whole_points(curve: Mapping[str, Any]) -> NDArray[np.bool_]:
 
 
 def pooled_floor(unit: Unit) -> float:
-    """Smallest share of all demand intervals that the record supports: one in the intervals that it holds. [-]"""
-    return 1.0 / (1.0 + sum(row.get("n_days") or 0 for row in unit.rows("hours")))
+    """Smallest share of all demand intervals that the record supports. [-]"""
+    return float((unit.part("curve") or {})["floor"])
 
 
 def values(curve: Mapping[str, Any], name: str) -> NDArray[np.float64]:

@@ -25,7 +25,7 @@ def figure(m: Material, unit: Unit) -> DrawnFigure | None:
     probability = _array(found["probability"])
     floor = _array(found["floor"])
     names = [", ".join(pair) for pair in zip(found["season"], found["day_type"], strict=True)]
-    with plate(12.0 + 6.0 * len(names) + 6.0) as fig:
+    with plate(16.0 + 5.4 * len(names)) as fig:
         width = (166.0 - 44.0 - 36.0 - 4.0 * (len(shown) - 1)) / len(shown)
         for place, index in enumerate(shown):
             left = 44.0 + place * (width + 4.0)

@@ -11,6 +11,7 @@ from loadsum.report.material import Material, Unit
 
 NAME = "hot-spot"
 DASHES: tuple[Any, ...] = ("solid", (0, (7, 2)), (0, (2.2, 1.3)), (0, (7, 1.6, 1.2, 1.6)), (0, (1, 1.4)))
+MOST_TICKS = 5
 
 
 def figure(m: Material, unit: Unit) -> DrawnFigure | None:
@@ -36,9 +37,11 @@ def figure(m: Material, unit: Unit) -> DrawnFigure | None:
                 ax.annotate(
                     m.kva(row["rating_kva"]),
                     (values[at], 100.0 * share[at]),
-                    xytext=(3, 2),
+                    xytext=(4, 1),
                     textcoords="offset points",
-                    fontsize=7,
+                    fontsize=7.5,
+                    bbox={"facecolor": "white", "edgecolor": "none", "pad": 0.8},
+                    zorder=3 + index,
                 )
         limit = (unit.part("thermal") or {}).get("hot_spot_limit_c")
         if limit is not None:
@@ -50,7 +53,7 @@ def figure(m: Material, unit: Unit) -> DrawnFigure | None:
                 xytext=(0, 2),
                 textcoords="offset points",
                 ha="center",
-                fontsize=7,
+                fontsize=7.5,
                 annotation_clip=False,
             )
         for ax in (left, right):
@@ -59,6 +62,7 @@ def figure(m: Material, unit: Unit) -> DrawnFigure | None:
         right.axvline(1.0, color=GREY, linewidth=0.8, linestyle=(0, (1, 1.6)))
         low, high = right.get_xlim()
         ticks = [t for t in (1e-5, 1e-4, 1e-3, 0.01, 0.1, 1.0, 10.0, 100.0) if low <= t <= high]
+        ticks = ticks[:: 1 + (len(ticks) - 1) // MOST_TICKS]
         right.set_xticks(ticks, [m.n.significant(t, 1) for t in ticks])
         right.set_xticks([], minor=True)
         left.set_ylabel(m.t(f"figure.{NAME}.axis_share"))

@@ -25,7 +25,7 @@ def figure(m: Material, unit: Unit) -> DrawnFigure | None:
     laws = (unit.part("diversity") or {}).get("laws") or ()
     for (colour, dashes), law in zip(LAWS, laws, strict=False):
         lines.append((str(law.get("name", "")), _array(law, "kw"), colour, dashes, 1.0))
-    with plate(62.0) as fig:
+    with plate(54.0) as fig:
         ax = axes_mm(fig, 19.0, 11.0, 44.0, 3.0)
         for _, values, colour, dashes, width in lines:
             ax.plot(n[: values.size], values, color=colour, linestyle=dashes, linewidth=width)
@@ -49,7 +49,7 @@ def figure(m: Material, unit: Unit) -> DrawnFigure | None:
     return DrawnFigure(
         name=unit.figure(NAME),
         title=m.t(f"figure.{NAME}.title"),
-        note=m.t(f"figure.{NAME}.note"),
+        note=m.t(f"figure.{NAME}.note") + " " + m.t(f"figure.{NAME}.laws" if laws else f"figure.{NAME}.no_laws"),
         alt=m.t(f"figure.{NAME}.alt", number=m.n.fixed(float(n[-1])), parts=", ".join(parts)),
         figure=fig,
     )

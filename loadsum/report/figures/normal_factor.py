@@ -3,7 +3,7 @@
 import numpy as np
 
 from loadsum.report.figures.exceedance_curve import pooled_floor, values, whole_points
-from loadsum.report.figures.plate import GREY, INK, MODELS, DrawnFigure, axes_mm, decades, plate
+from loadsum.report.figures.plate import INK, MODELS, DrawnFigure, axes_mm, decades, plate
 from loadsum.report.material import Material, Unit
 
 NAME = "normal-factor"
@@ -27,7 +27,7 @@ def figure(m: Material, unit: Unit) -> DrawnFigure | None:
     }
     lowest = max(min(float(line.min()) for line in lines.values()), 1e-4)
     highest = max(2.0, min(max(float(line.max()) for line in lines.values()), 1e3))
-    with plate(62.0) as fig:
+    with plate(52.0) as fig:
         ax = axes_mm(fig, 19.0, 11.0, 40.0, 4.0)
         ax.axhspan(0.9, 1.1, color="#e2e2e2", zorder=-1)
         ax.axhline(1.0, color=INK, linewidth=0.6)
@@ -52,7 +52,7 @@ def figure(m: Material, unit: Unit) -> DrawnFigure | None:
                 ha="left",
                 annotation_clip=False,
             )
-        ax.text(0.48, 1.13, m.t(f"figure.{NAME}.near"), va="bottom", ha="left", fontsize=7, color=GREY)
+        ax.text(0.48, 1.13, m.t(f"figure.{NAME}.near"), va="bottom", ha="left", fontsize=7.5)
         ax.set_xlabel(m.t(f"figure.{NAME}.axis_share"))
         ax.set_ylabel(m.t(f"figure.{NAME}.axis_factor"))
     parts = []

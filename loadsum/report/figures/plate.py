@@ -16,6 +16,7 @@ from matplotlib.figure import Figure
 from loadsum.report.typeface import FALLBACK_FAMILY, TEXT_FAMILY, font_files
 
 WIDTH_MM = 166.0
+ROOM_FOR_HOURS_MM = 40.0  # narrower axes name every twelfth hour only
 INK = "#111111"
 GREY = "#6b6b6b"
 PALE = "#d9d9d9"
@@ -114,7 +115,10 @@ def axes_mm(figure: Figure, left: float, bottom: float, right: float, top: float
 def clock_axis(ax: Any, *, last: bool = True) -> None:
     """Hours of the day along the bottom; ``last`` labels midnight at the right end as well."""
     ax.set_xlim(0, 24)
-    ax.set_xticks(range(0, 25, 6), [f"{h:02d}:00" if h < 24 or last else "" for h in range(0, 25, 6)])
+    every = 6 if 25.4 * ax.figure.get_size_inches()[0] * ax.get_position().width > ROOM_FOR_HOURS_MM else 12
+    ax.set_xticks(
+        range(0, 25, 6), [f"{h:02d}:00" if h % every == 0 and (h < 24 or last) else "" for h in range(0, 25, 6)]
+    )
 
 
 def decades(ax: Any, axis: str, lowest: float, highest: float, text: Any) -> None:

@@ -9,7 +9,7 @@ from loadsum.report.figures.plate import GREY, DrawnFigure, axes_mm, plate
 from loadsum.report.material import Material
 
 NAME = "quality-calendar"
-MOST_CUSTOMERS = 48
+MOST_CUSTOMERS = 30
 # Tone and hatch of each sign of the calendar, in the order of the key.
 LOOKS = {"f": ("#d2d2d2", ""), "e": ("#ffffff", "//////"), "p": ("#7d7d7d", ""), "-": ("#ffffff", "")}
 EPOCH = dt.date(1970, 1, 1)
@@ -26,14 +26,14 @@ def figure(m: Material) -> DrawnFigure | None:
     shown = [name for name in signs if name in set(shown)]
     days = int(calendar["days"])
     first = EPOCH + dt.timedelta(days=int(calendar["first_day"]))
-    pitch = 4.0 if len(shown) <= 16 else 2.6
+    pitch = 4.0 if len(shown) <= 16 else 3.2
     with plate(16.0 + pitch * len(shown)) as fig:
         ax = axes_mm(fig, 26.0, 7.0, 2.0, 8.0)
         for y, name in enumerate(shown):
             _row(ax, y, signs[name])
         ax.set_xlim(0, days)
         ax.set_ylim(len(shown), 0)
-        ax.set_yticks(np.arange(len(shown)) + 0.5, [name[:16] for name in shown], fontsize=8 if pitch > 3 else 6)
+        ax.set_yticks(np.arange(len(shown)) + 0.5, [name[:16] for name in shown], fontsize=8 if pitch > 3.5 else 7.5)
         ax.tick_params(axis="y", length=0)
         _months(m, ax, first, days)
         for side in ("left", "right", "top", "bottom"):

@@ -1,5 +1,8 @@
 """Scenarios side by side: expected hours above each rating."""
 
+from collections.abc import Mapping, Sequence
+from typing import Any
+
 import numpy as np
 
 from loadsum.report.figures.plate import GREY, INK, PALE, DrawnFigure, axes_mm, plate
@@ -8,6 +11,7 @@ from loadsum.report.material import Material, Unit
 NAME = "scenarios"
 SIGNS = ("o", "s", "D", "^", "v")
 LOWEST = 0.01
+NEAR = 0.45  # signs nearer than this share one label [decades]
 
 
 def figure(m: Material, unit: Unit) -> DrawnFigure | None:
@@ -48,15 +52,15 @@ def figure(m: Material, unit: Unit) -> DrawnFigure | None:
                     clip_on=False,
                 )
         first = [row for row in scenarios[0]["by_rating"] if row.get("hours_per_year") is not None]
-        for row in first:
+        for names, hours in _together(m, first):
             ax.annotate(
-                m.kva(row["rating_kva"]),
-                (max(row["hours_per_year"], LOWEST), 0),
-                xytext=(0, 7),
+                names,
+                (hours, 0),
+                xytext=(0 if hours > LOWEST else -5, 7),
                 textcoords="offset points",
-                ha="center",
+                ha="center" if hours > LOWEST else "left",
                 va="bottom",
-                fontsize=7,
+                fontsize=7.5,
                 annotation_clip=False,
             )
         if limit is not None:
@@ -66,7 +70,7 @@ def figure(m: Material, unit: Unit) -> DrawnFigure | None:
                 (limit, len(scenarios) - 0.5),
                 xytext=(2, 2),
                 textcoords="offset points",
-                fontsize=7,
+                fontsize=7.5,
             )
         ax.set_xscale("log")
         ax.set_xlim(LOWEST, 2.0 * highest)
@@ -75,7 +79,7 @@ def figure(m: Material, unit: Unit) -> DrawnFigure | None:
         ax.set_xticks([], minor=True)
         ax.set_ylim(len(scenarios) - 0.5, -0.5)
         ax.set_yticks(range(len(scenarios)), [str(s.get("name", ""))[:38] for s in scenarios])
-        ax.tick_params(axis="y", length=0)
+        ax.tick_params(axis="y", length=0, pad=7)
         ax.spines["left"].set_visible(False)
         ax.set_xlabel(m.t(f"figure.{NAME}.axis"))
     parts = [
@@ -91,3 +95,15 @@ def figure(m: Material, unit: Unit) -> DrawnFigure | None:
         alt=m.t(f"figure.{NAME}.alt", parts=" ".join(parts)),
         figure=fig,
     )
+
+
+def _together(m: Material, rows: Sequence[Mapping[str, Any]]) -> list[tuple[str, float]]:
+    """Names of the ratings by the place of their sign; those too near each other share one text."""
+    groups: list[tuple[list[Any], float]] = []
+    for row in sorted(rows, key=lambda row: float(row["hours_per_year"])):
+        hours = max(float(row["hours_per_year"]), LOWEST)
+        if groups and np.log10(hours / groups[-1][1]) < NEAR:
+            groups[-1][0].append(row["rating_kva"])
+        else:
+            groups.append(([row["rating_kva"]], hours))
+    return [(", ".join([*(m.plain(r) for r in ratings[:-1]), m.kva(ratings[-1])]), hours) for ratings, hours in groups]

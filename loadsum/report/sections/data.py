@@ -6,13 +6,17 @@ from loadsum.report.material import Material, Section
 from loadsum.report.sections.first_page import all_customers, coverage
 
 LONGEST_TABLE = 24
+MOST_OF_MANY = 12  # customers shown where not all are
 
 
 def section(m: Material) -> Section | None:
     """Customers, findings and coverage; long tables are cut and said to be in the attachment."""
     customers, findings = all_customers(m), m.rows("findings")
+    if len(customers) > LONGEST_TABLE:
+        customers = sorted(customers, key=lambda row: -(row.get("max_kw") or 0.0))
     if not customers and not findings:
         return None
+    shown = LONGEST_TABLE if len(customers) <= LONGEST_TABLE else MOST_OF_MANY
     content: dict[str, Any] = {
         "coverage": coverage(m),
         "customers": [
@@ -25,9 +29,9 @@ def section(m: Material) -> Section | None:
                 "max": m.n.fixed(row.get("max_kw"), 1),
                 "energy": m.n.fixed(row.get("annual_kwh")),
             }
-            for row in customers[:LONGEST_TABLE]
+            for row in customers[:shown]
         ],
-        "more_customers": max(len(customers) - LONGEST_TABLE, 0),
+        "more_customers": max(len(customers) - shown, 0),
         "findings": [
             {
                 "rule": row.get("rule", ""),

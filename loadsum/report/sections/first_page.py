@@ -3,6 +3,7 @@
 from collections.abc import Mapping, Sequence
 from typing import Any
 
+from loadsum.report.figures.exceedance_curve import pooled_floor
 from loadsum.report.material import Material, Unit
 from loadsum.report.notation import NO_BREAK
 from loadsum.report.sections.overview import table
@@ -11,6 +12,7 @@ from loadsum.report.sections.verdict import exceedance_of, exceedance_rows, meet
 MOST_ON_FIRST_PAGE = 8
 MOST_RATINGS = 6
 MOST_WARNINGS = 3
+HOURS_IN_YEAR = 8766.0
 
 
 def content(m: Material) -> dict[str, Any]:
@@ -158,11 +160,22 @@ def _rests_on(m: Material) -> list[str]:
     count = len(all_assumptions(m))
     if count:
         lines.append(m.t("first_page.assumptions", count=count))
+    lines.extend(_beyond(m))
     if not any(unit.part("evidence") for unit in m.units):
         lines.append(m.t("first_page.no_hold_out"))
     sentences = [text for unit in m.units for text, passed in _tested(unit) if passed]
     lines.extend([text for text in dict.fromkeys(sentences) if text][:2])
     return lines
+
+
+def _beyond(m: Material) -> list[str]:
+    """That expected hours so few come from the shape of the model, where page 1 prints such."""
+    if len(m.units) != 1 or not m.units[0].part("curve"):
+        return []
+    unit = m.units[0]
+    hours = pooled_floor(unit) * float((unit.part("coverage") or {}).get("covered_hours") or HOURS_IN_YEAR)
+    few = any((row.get("hours_per_year") or 0.0) < hours for row in exceedance_rows(unit.results))
+    return [m.t("first_page.beyond", hours=m.n.significant(hours, 1))] if few else []
 
 
 def _warnings(m: Material) -> list[str]:

@@ -34,10 +34,18 @@ def section(m: Material, unit: Unit) -> Section | None:
             "rare": [_rare(m, row, "day") for row in found.get("daily") or ()]
             + [_rare(m, row, "year") for row in found.get("annual") or ()],
             "levels": [_level(m, row) for row in found.get("levels") or ()],
-            "weather": m.t("peaks.weather", years=found["weather_years"]) if found.get("weather_years") else "",
+            "shifts": any(row.get("shift_kva") is not None for row in found.get("annual") or ()),
+            "weather": _weather(m, found.get("weather_years")),
         },
         figures=(unit.figure("rare-levels"),),
     )
+
+
+def _weather(m: Material, years: int | None) -> str:
+    """How many years of temperature the annual figures are averaged over."""
+    if not years:
+        return ""
+    return m.t("peaks.weather_once") if years == 1 else m.t("peaks.weather", years=years)
 
 
 def _sentence(text: Any) -> str:

@@ -31,7 +31,7 @@ def _row(m: Material, unit: Unit, row: Mapping[str, Any]) -> dict[str, Any]:
     return {
         "rating": m.plain(row.get("rating_kva")),
         "chosen": row.get("rating_kva") == (unit.part("selection") or {}).get("rating_kva"),
-        "of": m.t.name("loading", str(row.get("of"))),
+        "of": m.t.name("loading_short", str(row.get("of"))),
         "level": m.plain(row.get("level_kva"), 1),
         "hours": m.hours(row.get("hours_per_year")),
         "interval": m.between(row.get("hours_low"), row.get("hours_high"), m.hours),
