@@ -67,6 +67,10 @@ def parser() -> argparse.ArgumentParser:
     draft = command("draft", "look at a folder of meter files and write a study file and a customer table to fill in")
     draft.add_argument("folder", type=Path, metavar="FOLDER", help="folder of meter files; nothing is overwritten")
 
+    holdout = command("holdout", "test the demand model on readings it has not seen, in full: PDF, CSV and JSON")
+    holdout.add_argument("file", type=Path, metavar="FILE", help="study file (TOML)")
+    holdout.add_argument("--out", type=Path, required=True, metavar="DIR", help="folder for the test")
+
     compare = command("compare", "list what changed from one study to its revision, and why the verdict moved")
     compare.add_argument("old", type=Path, metavar="OLD", help="results.json of the study, or the folder that holds it")
     compare.add_argument("new", type=Path, metavar="NEW", help="the same of its revision")
@@ -124,12 +128,14 @@ def main(argv: Sequence[str] | None = None) -> int:
         # Many small products: threads of the linear algebra library cost several times what they save here.
         os.environ.setdefault("OMP_NUM_THREADS", "1")
         # The stages are imported here so that --help answers at once.
-        from loadsum import comparison, documents, pipeline
+        from loadsum import comparison, documents, heldout, pipeline
 
         if args.command == "inspect":
             text = pipeline.inspect(args.file, out=args.out, progress=progress)
         elif args.command == "draft":
             text = pipeline.draft(args.folder)
+        elif args.command == "holdout":
+            text = heldout.holdout(args.file, out=args.out, progress=progress)
         elif args.command == "compare":
             studies = (args.studies[0], args.studies[1]) if args.studies else None
             text = comparison.compare(args.old, args.new, progress=progress, studies=studies)

@@ -17,26 +17,22 @@ from loadsum.demand.modelparts import part_effects
 from loadsum.demand.normalfamily import normal_family
 from loadsum.demand.planned import Planned
 from loadsum.demand.served import (
-    cannot_be_studied,
-    held_out_settings,
     numbers_by_class,
     record_by_class,
     scaled,
-    served_by,
     settings_of,
     tested_group,
     with_more,
-    with_unmetered_block,
 )
 from loadsum.evidence.holdout import hold_out
 from loadsum.intake.customers import customer_findings
 from loadsum.intake.draft import draft_study
 from loadsum.intake.hourclass import Calendar, DayBlock, calendar, day_blocks, metered_years
 from loadsum.intake.load import Loaded, load_readings
-from loadsum.intake.readings import shared_resolution
 from loadsum.peak.dayandyear import day_and_year
 from loadsum.peak.diversity import diversity
 from loadsum.peak.exceedance import days_by_month, exceedance_hours
+from loadsum.preparation import prepared, tester
 from loadsum.progress import Progress
 from loadsum.report import document, revision
 from loadsum.report.archive import RESULTS_FILE, STUDY_FILE, Attachment
@@ -49,7 +45,6 @@ from loadsum.report.register import assumptions
 from loadsum.report.results import SCHEMA_VERSION, Program, StudyResults, TransformerResults, encode, to_json
 from loadsum.report.tables import coverage, curve, curve_levels, customer_rows, exceedance_rows, hour_rows
 from loadsum.report.workbook import workbook
-from loadsum.study.checks import billed_kwh
 from loadsum.study.load import load_study
 from loadsum.study.pseudonyms import key_beside, pseudonyms
 from loadsum.study.tables import Study
@@ -207,12 +202,7 @@ def compute(asked: Study, folder: Path, *, progress: Progress) -> StudyResults:
         units.append(one_transformer(asked, unit, loaded, blocks, days, years))
     return StudyResults(
         schema_version=SCHEMA_VERSION,
-        program=Program(
-            name="loadsum",
-            version=__version__,
-            python=platform.python_version(),
-            dependencies={name: metadata.version(name) for name in STANDS_ON},
-        ),
+        program=program(),
         study=asked.study,
         people=asked.person,
         seed=asked.study.seed,
@@ -221,6 +211,16 @@ def compute(asked: Study, folder: Path, *, progress: Progress) -> StudyResults:
         quality=quality_calendar(readings),
         months=energy_by_month(readings),
         transformers=tuple(units),
+    )
+
+
+def program() -> Program:
+    """This program, and what it stands on."""
+    return Program(
+        name="loadsum",
+        version=__version__,
+        python=platform.python_version(),
+        dependencies={name: metadata.version(name) for name in STANDS_ON},
     )
 
 
@@ -248,37 +248,14 @@ def one_transformer(
 ) -> TransformerResults:
     """Results of one transformer; where it cannot be studied, the reason."""
     readings = loaded.readings
-    usable = np.flatnonzero((np.isfinite(readings.kw) & ~readings.estimated).any(axis=1))
-    served = served_by(
-        unit.id,
-        len(asked.transformer) == 1,
-        asked.customer,
-        [readings.customers[c] for c in usable],
-        {customer.id: billed_kwh(customer) for customer in asked.customer},
-        head=unit.feeder_head,
-    )
-    reason = cannot_be_studied(served)
-    if reason:
-        return TransformerResults(id=unit.id, reason=reason, installed_kva=unit.installed_kva)
+    group_of = prepared(asked, unit, loaded, blocks)
+    if isinstance(group_of, str):
+        return TransformerResults(id=unit.id, reason=group_of, installed_kva=unit.installed_kva)
+    served, group, group_blocks, resolution = (group_of.served, group_of.group, group_of.blocks, group_of.resolution_kw)
     rng = np.random.default_rng(asked.study.seed)
-    allowance = 1.0 + unit.losses_allowance_pct / 100.0
-    group, group_blocks = with_unmetered_block(
-        served.group, [scaled(block, usable, allowance) for block in blocks], unit, readings.interval_min
-    )
     settings = settings_of(asked.model)
     judged, note = tested_group(group, bool(served.group.served.any()))
-    tested = hold_out(
-        group_blocks,
-        fit=lambda fitting: group_demand(
-            fitting,
-            interval_min=readings.interval_min,
-            power_factor=unit.power_factor,
-            settings=held_out_settings(settings, shared_resolution(readings) * allowance),
-            group=judged,
-        ),
-        served=judged.served,
-        note=note,
-    )
+    tested = hold_out(group_blocks, fit=tester(asked, unit, loaded, group_of, judged), served=judged.served, note=note)
 
     def modelled(changed: Group, changed_blocks: Sequence[DayBlock], resolution_kw: float) -> GroupDemand:
         return group_demand(
@@ -296,7 +273,6 @@ def one_transformer(
         changed, changed_blocks = with_more(group, group_blocks, planned, factors)
         return modelled(changed, changed_blocks, 0.0 if factors else resolution)
 
-    resolution = shared_resolution(readings) * allowance
     demand = modelled(group, group_blocks, resolution)
     if not demand.covered().any():
         reason = "the readings leave no demand interval with at least two days"
@@ -371,7 +347,7 @@ def one_transformer(
         selection=selection,
         peaks=together.peaks({f"{rating:g} kVA": rating * shown for rating in ratings}, rng),
         diversity=diversity(
-            [scaled(block, usable[served.group.served], allowance) for block in blocks],
+            [scaled(block, group_of.usable[served.group.served], group_of.allowance) for block in blocks],
             interval_min=readings.interval_min,
             power_factor=unit.power_factor,
             rng=rng,

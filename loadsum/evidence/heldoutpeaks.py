@@ -11,10 +11,11 @@ from loadsum.peak.copula import choose_copula, weather_free_sums
 from loadsum.peak.margins import margins
 from loadsum.peak.passing import Passing
 from loadsum.peak.runlengths import score_runs
-from loadsum.peak.weather import YearsOfDays
+from loadsum.peak.weather import DAYS, YearsOfDays
 
 DAILY_SHARES = (0.10, 0.05, 0.01)
 RUN_SHARE = 0.10
+ROUNDS = 20  # years that the held-out days are strung into, so that each counts alike to 1 in 20 or better
 FEWEST_DAYS = 20  # held-out days of a fold with every interval, fewer of which say nothing of daily peaks
 
 
@@ -79,10 +80,11 @@ def peak_scores(
         copula, _ = choose_copula(weather_free_sums(fold.demand), [week_of(b.day) for b in fold.demand.blocks])
         block = np.concatenate([np.full(int(rows.sum()), b) for b, rows in enumerate(whole)])
         warmth = _temperatures(fold, whole)
+        again = (np.arange(ROUNDS * DAYS) % block.size).reshape(ROUNDS, DAYS)  # the held-out days, over and over
         years = YearsOfDays(
-            year=np.zeros(1, dtype=np.int64),
-            block=block[None, :],
-            daily_c=None if warmth is None else np.concatenate(warmth)[None, :],
+            year=np.arange(ROUNDS),
+            block=block[again],
+            daily_c=None if warmth is None else np.concatenate(warmth)[again],
             by_interval_c=None,
         )
         tables = margins(fold.demand, copula, years=years)

@@ -12,7 +12,7 @@ from loadsum.report.archive import Attachment, fixed_time, manifest
 from loadsum.report.cleantext import CleanResults, clean
 from loadsum.report.material import Material, Section
 from loadsum.report.notation import NO_BREAK, Notation
-from loadsum.report.sections import first_page, sections
+from loadsum.report.sections import first_page, holdout, sections
 from loadsum.report.sections.foundations import parts_left_out
 from loadsum.report.sections.overview import units_in_detail
 from loadsum.report.standards import meet_both_standards
@@ -33,7 +33,7 @@ LONGEST_RUNNING_TITLE = 72
 MOST_LISTED_FIGURES = 16
 MOST_LINES_ON_FIRST_PAGE = 26
 
-__all__ = ["Composed", "compose", "material", "printed", "render", "templates_folder"]
+__all__ = ["Composed", "compose", "compose_test", "material", "printed", "render", "templates_folder"]
 
 
 @dataclass(frozen=True, slots=True, kw_only=True, eq=False)
@@ -141,32 +141,62 @@ def compose(
     env = environment(overrides)
     env.filters.update(css_string=css_string, strong=marked_up)
     first = first_page.content(m)
-    study = m.study
     html = env.get_template("report.html.j2").render(
-        t=m.t,
-        n=m.n,
+        **_every_page(m),
         results=m.results,
-        study={"title": "", "reference": "", "place": "", **study},
-        title=study.get("title") or m.t("document_kind"),
-        authors=", ".join(str(p["name"]) for p in m.rows("people") if p.get("name")),
-        program=_program(m),
-        created=fixed_time(str(study.get("date") or "")).strftime("%Y-%m-%dT%H:%M:%SZ"),
-        paper=PAPERS.get(study.get("page") or "A4", PAPERS["A4"]),
-        families=f'"{TEXT_FAMILY}", "{FALLBACK_FAMILY}"',
         first=first,
         tight=first_page.lines(first) > MOST_LINES_ON_FIRST_PAGE,
         unchecked=_unchecked(m, made),
         sections=made,
         figures=drawn,
-        numbers=Numbers(),
         listed_figures=_listed(made, drawn),
         terms=_terms(m),
         attached=sorted(a.name for a in listed),
         changes=[m.t(f"changed.{c.what}", where=c.where[:120], count=c.count) for c in cleaned.changes],
         logo=own_logo is not None,
-        **_running(m),
     )
     return Composed(html=html, assets=assets, attachments=listed, figures=drawn)
+
+
+def compose_test(results: Mapping[str, Any]) -> Composed:
+    """The full hold-out test as a document of its own, ready to be set.
+
+    Parameters
+    ----------
+    results : mapping
+        Study heading, program and, by transformer, the test.
+
+    Raises
+    ------
+    InputError
+        A character cannot be printed.
+    """
+    m, _ = material(results)
+    made = holdout.sections(m)
+    drawn = figures.of_a_test(m)
+    env = environment()
+    env.filters.update(css_string=css_string, strong=marked_up)
+    html = env.get_template("holdout.html.j2").render(**_every_page(m), sections=made, figures=drawn)
+    assets = {f"{name}.svg": ("image/svg+xml", figures.svg(figure.figure)) for name, figure in drawn.items()}
+    return Composed(html=html, assets=assets, attachments=(), figures=drawn)
+
+
+def _every_page(m: Material) -> dict[str, Any]:
+    """What the head of every document and its running lines need."""
+    study = m.study
+    return {
+        "t": m.t,
+        "n": m.n,
+        "study": {"title": "", "reference": "", "place": "", **study},
+        "title": study.get("title") or m.t("document_kind"),
+        "authors": ", ".join(str(p["name"]) for p in m.rows("people") if p.get("name")),
+        "program": _program(m),
+        "created": fixed_time(str(study.get("date") or "")).strftime("%Y-%m-%dT%H:%M:%SZ"),
+        "paper": PAPERS.get(study.get("page") or "A4", PAPERS["A4"]),
+        "families": f'"{TEXT_FAMILY}", "{FALLBACK_FAMILY}"',
+        "numbers": Numbers(),
+        **_running(m),
+    }
 
 
 def _unchecked(m: Material, made: Sequence[Section]) -> str:

@@ -55,6 +55,12 @@ def drawn(m: Material, units: Sequence[Unit]) -> dict[str, DrawnFigure]:
     return {figure.name: figure for figure in made if figure is not None}
 
 
+def of_a_test(m: Material) -> dict[str, DrawnFigure]:
+    """Figures of a hold-out test that is a document of its own, by name."""
+    made = [make(m, unit) for unit in m.units for make in OF_A_TEST]
+    return {figure.name: figure for figure in made if figure is not None}
+
+
 def files(figures: Mapping[str, DrawnFigure], drawings: Mapping[str, bytes]) -> dict[str, bytes]:
     """Every figure as SVG and as PNG at print size, by file name, for pasting into other documents.
 
@@ -72,4 +78,4 @@ def files(figures: Mapping[str, DrawnFigure], drawings: Mapping[str, bytes]) -> 
     return made
 
 
-__all__ = ["DrawnFigure", "drawn", "files", "png", "svg"]
+__all__ = ["DrawnFigure", "drawn", "files", "of_a_test", "png", "svg"]

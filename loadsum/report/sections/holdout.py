@@ -30,7 +30,7 @@ def _of_unit(m: Material, unit: Unit) -> list[Section]:
     if months:
         rows = [_part(m, row) for row in parts if row["by"] == "month left out"]
         content = {"rows": rows, "how": months["how"], "sentence": months["sentence"]}
-        made.append(_section(m, unit, "holdout-parts", "section_months", content))
+        made.append(_section(m, unit, "holdout-months", "section_months", content))
     sizes = [row for row in parts if row["by"] == "customers"]
     if sizes:
         content = {
