@@ -17,6 +17,7 @@ from loadsum.demand.planned import Planned, PlannedTerm, planned_terms, pooled, 
 from loadsum.demand.samplingerror import Resamples, resample_weeks
 from loadsum.demand.settings import ModelSettings
 from loadsum.demand.temperature import TemperatureResponse, take_out_temperature
+from loadsum.demand.temperaturepool import PooledResponse, pooled_response
 from loadsum.demand.temperaturespread import mixed_over, spread_taken_out
 from loadsum.intake.hourclass import DayBlock
 
@@ -106,7 +107,8 @@ def group_demand(
         )
         for block in blocks
     ]
-    made = [one.hours(rng) for one in built]
+    pooled = _pooled(built)
+    made = [one.hours(rng, pooled) for one in built]
     served_blocks = [
         replace(
             block,
@@ -128,6 +130,20 @@ def group_demand(
         settings=settings,
         diagnostics=tuple(found for _, found in made),
     )
+
+
+def _pooled(built: Sequence["_Block"]) -> list[PooledResponse | None]:
+    """Response to temperature in each interval of the day over all classes of days."""
+    intervals = built[0].block.kw.shape[2]
+    given = [
+        (one.block.kw, one.block.temperature_c)
+        for one in built
+        if one.settings.temperature and one.block.temperature_c is not None
+    ]
+    if len(given) < 2:
+        return [None] * intervals
+    warmth = [temperature for _, temperature in given]
+    return [pooled_response([kw[:, :, i] for kw, _ in given], warmth, built[0].weights()) for i in range(intervals)]
 
 
 def annual_energy(blocks: Sequence[DayBlock], interval_min: int) -> NDArray[np.float64]:
@@ -161,7 +177,9 @@ class _Block:
             np.add.at(weight, term.members, term.count * term.scale / term.members.size)
         return weight
 
-    def hours(self, rng: np.random.Generator | None) -> tuple[tuple[HourDemand | None, ...], BlockDiagnostics]:
+    def hours(
+        self, rng: np.random.Generator | None, pooled: Sequence[PooledResponse | None]
+    ) -> tuple[tuple[HourDemand | None, ...], BlockDiagnostics]:
         """Every interval, and the diagnostics of the class of days."""
         kw = self.block.kw
         intervals = kw.shape[2]
@@ -169,7 +187,7 @@ class _Block:
         counted = weight > 0.0
         known = np.isfinite(kw)
         enough = (known[self.group.served].sum(axis=1) >= FEWEST_DAYS).all(axis=0) & known[counted].any(axis=(0, 1))
-        adjusted, responses = self._without_temperature(weight)
+        adjusted, responses = self._without_temperature(weight, pooled)
         reach = self.settings.smoothing_h * 60.0 / self.interval_min
         together = self.group.served if self.group.served.sum() >= 2 else np.ones(kw.shape[0], dtype=bool)
         common = common_component(adjusted[together], reach)
@@ -204,7 +222,7 @@ class _Block:
         return np.maximum(common.correlation, 0.0)
 
     def _without_temperature(
-        self, weight: NDArray[np.float64]
+        self, weight: NDArray[np.float64], pooled: Sequence[PooledResponse | None]
     ) -> tuple[NDArray[np.float64], tuple[TemperatureResponse | None, ...]]:
         kw, temperature = self.block.kw, self.block.temperature_c
         intervals = kw.shape[2]
@@ -213,7 +231,7 @@ class _Block:
         adjusted = np.array(kw)
         responses = []
         for i in range(intervals):
-            adjusted[:, :, i], response = take_out_temperature(kw[:, :, i], temperature, weight)
+            adjusted[:, :, i], response = take_out_temperature(kw[:, :, i], temperature, weight, pooled[i])
             responses.append(response)
         return spread_taken_out(adjusted, temperature, weight, responses)
 

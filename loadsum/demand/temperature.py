@@ -9,10 +9,12 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 
+from loadsum.demand.degrees import degrees
 from loadsum.demand.lattice import LatticeMass
+from loadsum.demand.temperaturepool import PooledResponse, nothing_pooled
 
-HEATING_BASE_C = 15.0  # common practice without a source; the fit only needs the kink to lie near the true ones
-COOLING_BASE_C = 20.0  # common practice without a source
+FEWEST_DAYS = 10  # of a class of days, below which it has no response
+LEAST_DEGREES_K = 3.0  # spread of a column of degrees below which a class of days says nothing of its own
 LEAST_LEVEL = 0.2  # share of the mean level below which the spread falls no further
 
 
@@ -69,13 +71,6 @@ class TemperatureResponse:
         return np.asarray(np.einsum("nk,kl,nl->n", away, self.covariance, away), dtype=np.float64)
 
 
-def degrees(temperature_c: NDArray[np.float64]) -> NDArray[np.float64]:
-    """Heating and cooling degrees of a temperature, (n, 2) float64. [K]"""
-    return np.stack(
-        [np.maximum(HEATING_BASE_C - temperature_c, 0.0), np.maximum(temperature_c - COOLING_BASE_C, 0.0)], axis=1
-    )
-
-
 def stretched_mass(law: LatticeMass, stretch: float, shift_kw: float) -> LatticeMass:
     """A law stretched about its mean and shifted, stated to the lattice with mean kept.
 
@@ -106,7 +101,10 @@ def stretched_mass(law: LatticeMass, stretch: float, shift_kw: float) -> Lattice
 
 
 def take_out_temperature(
-    kw: NDArray[np.float64], temperature_c: NDArray[np.float64], weight: NDArray[np.float64]
+    kw: NDArray[np.float64],
+    temperature_c: NDArray[np.float64],
+    weight: NDArray[np.float64],
+    pooled: PooledResponse | None = None,
 ) -> tuple[NDArray[np.float64], TemperatureResponse | None]:
     """Readings of one demand interval with each customer's temperature response taken out, and the group's response.
 
@@ -118,54 +116,71 @@ def take_out_temperature(
         Lagged daily mean temperature; NaN where unknown. [°C]
     weight : (C,) float64
         How many times each customer counts in the group. [-]
+    pooled : PooledResponse or None
+        Response over all classes of days, from which this one departs as far as its own days show; None for none.
 
     Returns
     -------
     (C, D) float64
-        Readings as they would have been at the mean of the metered degrees. Readings on days of unknown temperature
-        are NaN. [kW]
+        Readings as they would have been at the mean of the metered degrees, scattered about it as if the slopes had
+        been known. Readings on days of unknown temperature are NaN. [kW]
     TemperatureResponse or None
         None where there are too few days or the temperature does not move.
     """
+    pooled = pooled or nothing_pooled(kw.shape[0])
     known = np.isfinite(temperature_c)
-    if known.sum() < 10:
-        return kw, None
-    away_all = degrees(np.where(known, temperature_c, 0.0))
-    columns = tuple(k for k in (0, 1) if np.ptp(away_all[known, k]) > 3.0 and (away_all[known, k] > 0.0).mean() > 0.15)
-    if not columns:
-        return kw, None
-    design = away_all[:, list(columns)]
-    centre = design[known].mean(axis=0)
-    away = np.where(known[:, None], design - centre, 0.0)
     counted = weight > 0.0
     total = weight[counted] @ kw[counted]
     used = known & np.isfinite(total)
-    if used.sum() < 10:
+    if used.sum() < FEWEST_DAYS:
         return kw, None
-    slope, covariance, keep, explained = _fit(away[used], total[used])
+    need = degrees(np.where(known, temperature_c, 0.0))
+    own = [k for k in (0, 1) if np.ptp(need[known, k]) > LEAST_DEGREES_K and (need[known, k] > 0.0).mean() > 0.15]
+    columns = [k for k in (0, 1) if k in own or (pooled.group_kw_per_k[k] != 0.0 and np.ptp(need[known, k]) > 0.0)]
+    if not columns:
+        return kw, None
+    centre = need[known].mean(axis=0)
+    away = np.where(known[:, None], need - centre, 0.0)
+    slope, covariance = np.array(pooled.group_kw_per_k), np.array(pooled.covariance)
+    left = total - away @ slope
+    keep = 0.0
+    if own:
+        more, of_more, keep = _fit(away[used][:, own], left[used])
+        slope[own] += more * keep
+        covariance[np.ix_(own, own)] = (1.0 - keep) * covariance[np.ix_(own, own)] + of_more
     adjusted = np.where(known, kw, np.nan)
     for c in range(kw.shape[0]):
-        own = known & np.isfinite(kw[c])
-        if own.sum() >= 10:
-            own_slope = np.linalg.lstsq(away[own] - away[own].mean(axis=0), kw[c, own] - kw[c, own].mean(), rcond=None)[
-                0
-            ]
-            adjusted[c] = adjusted[c] - away @ (own_slope * keep)
+        mine = known & np.isfinite(kw[c])
+        adjusted[c] -= away @ pooled.customer_kw_per_k[c]
+        if keep > 0.0 and mine.sum() >= FEWEST_DAYS:
+            x, y = away[mine][:, own], adjusted[c, mine]
+            departure = np.linalg.lstsq(x - x.mean(axis=0), y - y.mean(), rcond=None)[0] * keep
+            rest = adjusted[c] - away[:, own] @ departure
+            own_mean, free = float(rest[mine].mean()), mine.sum() - 1.0
+            adjusted[c] = own_mean + (rest - own_mean) * (free / max(free - keep * len(own), 1.0)) ** 0.5
     return adjusted, TemperatureResponse(
-        columns=columns,
-        centre=centre,
-        slope_kw_per_k=slope * keep,
-        covariance=covariance,
+        columns=tuple(columns),
+        centre=centre[columns].copy(),
+        slope_kw_per_k=slope[columns].copy(),
+        covariance=covariance[np.ix_(columns, columns)].copy(),
         lowest_c=float(temperature_c[known].min()),
         highest_c=float(temperature_c[known].max()),
-        explained=explained,
+        explained=_explained(total[used], away[used] @ slope),
     )
+
+
+def _explained(total: NDArray[np.float64], by_temperature: NDArray[np.float64]) -> float:
+    """Share of the sum's variance that a response explains. [-]"""
+    moved = total - total.mean()
+    left = moved - (by_temperature - by_temperature.mean())
+    whole = float(moved @ moved)
+    return max(1.0 - float(left @ left) / whole, 0.0) if whole > 0.0 else 0.0
 
 
 def _fit(
     away: NDArray[np.float64], total: NDArray[np.float64]
-) -> tuple[NDArray[np.float64], NDArray[np.float64], float, float]:
-    """Slopes, their covariance, the factor by which they are shrunk (1 - 1/F, at least 0) and the share explained."""
+) -> tuple[NDArray[np.float64], NDArray[np.float64], float]:
+    """Slopes, their covariance after shrinking, and the factor by which they are shrunk (1 - 1/F, at least 0)."""
     centred = away - away.mean(axis=0)
     moved = total - total.mean()
     slope = np.linalg.lstsq(centred, moved, rcond=None)[0]
@@ -175,5 +190,4 @@ def _fit(
     covariance = variance * np.linalg.pinv(centred.T @ centred)
     gained = float(moved @ moved - left @ left) / away.shape[1]
     keep = max(0.0, 1.0 - variance / gained) if gained > 0.0 else 0.0
-    explained = 1.0 - float(left @ left) / float(moved @ moved) if float(moved @ moved) > 0.0 else 0.0
-    return slope, covariance * keep, keep, explained * keep
+    return slope, covariance * keep, keep

@@ -1,7 +1,8 @@
 import numpy as np
 import pytest
 
-from loadsum.demand.temperature import degrees, take_out_temperature
+from loadsum.demand.degrees import degrees
+from loadsum.demand.temperature import take_out_temperature
 
 
 def heated(rng, customers=6, days=120, slope_kw_per_k=0.3):

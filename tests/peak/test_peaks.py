@@ -238,7 +238,8 @@ def test_paths_over_a_temperature_record_keep_the_expected_hours_and_their_own_w
             level = hour.quantile_kw(0.1)
             assert (drawn.kw[own, i] > level).mean() == pytest.approx(hour.exceedance(level).value, abs=0.02)
         slope = np.polyfit(drawn.ambient_c[own].mean(axis=1), drawn.kw[own, 8], 1)[0]
-        assert slope < 0.0 or demand.hours[b][8].response is None
+        response = demand.hours[b][8].response
+        assert slope < 0.0 or response is None or response.explained < 0.05
     found = peaks(
         tables,
         copula,
