@@ -133,6 +133,7 @@ def test_an_input_outside_the_folder_is_not_read(tmp_path: Path, study: dict[str
     (folder / "link.csv").symlink_to(secret)
     hostile = copy.deepcopy(study)
     digest = hashlib.sha256(INPUT).hexdigest()
+    hostile["program"]["version"] = "0.0.9"
     hostile["inputs"] = [{"name": name, "sha256": digest} for name in ("../secret.csv", str(secret), "link.csv")]
     path = tmp_path / "hostile.pdf"
     path.write_bytes(made(hostile))
@@ -177,6 +178,7 @@ def test_cutting_off_the_last_signature_leaves_a_name_missing(study: dict[str, A
     issued = copy.deepcopy(study)
     issued["study"]["status"] = "issued"
     issued["people"] = issued["people"][1:]
+    issued["program"]["version"] = "0.0.9"  # so that the pages, which are not in question here, are not drawn again
     once = sign(made(issued), role="checked", certificate=pkcs12_of("B. Checker"), passphrase=PASSPHRASE)
     twice = sign(once, role="responsible engineer", certificate=pkcs12_of("C. Engineer"), passphrase=PASSPHRASE)
     path = tmp_path / "signed.pdf"
@@ -299,7 +301,7 @@ def test_a_file_that_is_no_results_file_is_told(content: bytes, told: str, tmp_p
         read_results(path)
 
 
-def test_a_report_is_drawn_again_from_its_results_file(study: dict[str, Any], tmp_path: Path) -> None:
+def test_a_report_is_drawn_again_from_its_results_file(study: dict[str, Any], plain: bytes, tmp_path: Path) -> None:
     path = tmp_path / "results.json"
     path.write_text(json.dumps(study), encoding="utf-8")
-    assert made(read_results(path)) == made(study)
+    assert made(read_results(path)) == plain
