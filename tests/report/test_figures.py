@@ -30,22 +30,20 @@ def texts(figure: Any) -> list[tuple[str, Bbox]]:
         canvas = FigureCanvasAgg(figure)
         canvas.draw()
         renderer = canvas.get_renderer()
+        hidden = unseen(figure)
         found = [text for text in figure.findobj(Text) if text.get_visible() and text.get_text().strip()]
-        return [(text.get_text(), text.get_window_extent(renderer)) for text in found if in_sight(text)]
+        return [(text.get_text(), text.get_window_extent(renderer)) for text in found if id(text) not in hidden]
 
 
-def in_sight(text: Text) -> bool:
-    """Whether a text is drawn: labels of ticks beyond the limits are not."""
-    axes = text.axes
-    if axes is None:
-        return True
-    for axis in (axes.xaxis, axes.yaxis):
-        low, high = sorted(axis.get_view_interval())
-        drawn = [tick for tick in axis.get_major_ticks() if low <= tick.get_loc() <= high]
-        for tick in axis.majorTicks:
-            if text in (tick.label1, tick.label2):
-                return bool(axes.axison) and tick in drawn
-    return True
+def unseen(figure: Any) -> set[int]:
+    """Labels of ticks that are not drawn, by identity: those beyond the limits and those no longer in use."""
+    found = set()
+    for axes in figure.axes:
+        for axis in (axes.xaxis, axes.yaxis):
+            low, high = sorted(axis.get_view_interval())
+            drawn = [tick for tick in axis.get_major_ticks() if low <= tick.get_loc() <= high] if axes.axison else []
+            found |= {id(label) for t in axis.majorTicks if t not in drawn for label in (t.label1, t.label2)}
+    return found
 
 
 def test_no_text_of_a_figure_is_cut_at_its_edge(drawn: dict[str, figures.DrawnFigure]) -> None:
