@@ -106,4 +106,5 @@ def _together(m: Material, rows: Sequence[Mapping[str, Any]]) -> list[tuple[str,
             groups[-1][0].append(row["rating_kva"])
         else:
             groups.append(([row["rating_kva"]], hours))
-    return [(", ".join([*(m.plain(r) for r in ratings[:-1]), m.kva(ratings[-1])]), hours) for ratings, hours in groups]
+    ordered = [(sorted(ratings), hours) for ratings, hours in groups]
+    return [(", ".join([*(m.plain(r) for r in ratings[:-1]), m.kva(ratings[-1])]), hours) for ratings, hours in ordered]
