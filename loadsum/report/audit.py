@@ -13,6 +13,7 @@ from loadsum.report import renderer
 from loadsum.report.archive import MANIFEST, RESULTS_FILE, STUDY_FILE, results_digest
 from loadsum.report.differences import TOLERANCE, differences
 from loadsum.report.document import render
+from loadsum.report.limits import COMPUTING_S, DRAWING_S, TakesTooLongError, bounded, too_much
 from loadsum.report.received import Received, read_report
 from loadsum.report.sections.sign_off import signers
 from loadsum.report.signature import signatures
@@ -188,8 +189,18 @@ def _pages(received: Received, results: Mapping[str, Any], overrides: Path | Non
         found.checked.append("pages: drawn with templates that are not at hand; not drawn again")
         return
     others = [a for name, a in received.attachments.items() if name != MANIFEST]
+    excess = too_much(results)
+    if excess:
+        found.differs.append(
+            f"the attached results hold more than any report of this program: {excess}; not drawn again"
+        )
+        return
     try:
-        again = render(results, attachments=others, overrides=overrides)
+        with bounded(DRAWING_S):
+            again = render(results, attachments=others, overrides=overrides)
+    except (TakesTooLongError, MemoryError) as error:
+        found.differs.append(f"the attached results cannot be drawn within bounds: {str(error) or 'too much memory'}")
+        return
     except (LoadsumError, KeyError, TypeError, ValueError, AttributeError) as error:
         found.differs.append(f"the attached results cannot be drawn: {type(error).__name__}: {str(error)[:200]}")
         return
@@ -244,7 +255,12 @@ def _numbers(received: Received, results: Mapping[str, Any], inputs: Path, recom
         path = Path(place) / STUDY_FILE
         path.write_bytes(study.content)
         try:
-            again = recompute(path, inputs)
+            with bounded(COMPUTING_S):
+                again = recompute(path, inputs)
+        except (TakesTooLongError, MemoryError) as error:
+            told = str(error) or "too much memory"
+            found.differs.append(f"the attached study cannot be computed within bounds: {told}")
+            return
         except LoadsumError as error:
             found.differs.append(f"the attached study cannot be computed: {str(error)[:400]}")
             return

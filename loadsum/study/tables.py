@@ -249,7 +249,7 @@ class ModelKeys:
         at_least=-1.0,
         at_most=1.0,
     )
-    resamples: int = key("Resamples of whole weeks behind each interval.", default=200, at_least=0)
+    resamples: int = key("Resamples of whole weeks behind each interval.", default=200, at_least=0, at_most=100_000)
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)

@@ -1,6 +1,7 @@
 """Certificates made for the test that uses them."""
 
 import datetime as dt
+import functools
 
 from cryptography import x509
 from cryptography.hazmat.primitives import hashes
@@ -11,6 +12,7 @@ from cryptography.x509.oid import NameOID
 PASSPHRASE = "correct horse"
 
 
+@functools.cache
 def pkcs12_of(name: str) -> bytes:
     """A self-signed certificate and its key as PKCS#12."""
     key = rsa.generate_private_key(public_exponent=65537, key_size=2048)

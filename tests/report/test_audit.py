@@ -133,6 +133,7 @@ def test_an_input_outside_the_folder_is_not_read(tmp_path: Path, study: dict[str
     (folder / "link.csv").symlink_to(secret)
     hostile = copy.deepcopy(study)
     digest = hashlib.sha256(INPUT).hexdigest()
+    hostile["program"]["version"] = "0.0.9"
     hostile["inputs"] = [{"name": name, "sha256": digest} for name in ("../secret.csv", str(secret), "link.csv")]
     path = tmp_path / "hostile.pdf"
     path.write_bytes(made(hostile))
@@ -177,6 +178,7 @@ def test_cutting_off_the_last_signature_leaves_a_name_missing(study: dict[str, A
     issued = copy.deepcopy(study)
     issued["study"]["status"] = "issued"
     issued["people"] = issued["people"][1:]
+    issued["program"]["version"] = "0.0.9"  # so that the pages, which are not in question here, are not drawn again
     once = sign(made(issued), role="checked", certificate=pkcs12_of("B. Checker"), passphrase=PASSPHRASE)
     twice = sign(once, role="responsible engineer", certificate=pkcs12_of("C. Engineer"), passphrase=PASSPHRASE)
     path = tmp_path / "signed.pdf"
@@ -218,6 +220,53 @@ def test_active_content_is_named_even_inside_an_object_stream(plain: bytes) -> N
     assert set(read_report(target.getvalue()).active) == {"/JavaScript", "/JS", "/OpenAction"}
 
 
+@pytest.mark.parametrize(
+    ("part", "told"),
+    [
+        ({"assumptions": [{"name": "x"}] * 6000}, "6000 rows of assumptions"),
+        ({"quality": {"first_day": 0, "days": 1, "customers": {"C-1": [[10**12, "f"]]}}}, "more than 40000 days"),
+        ({"quality": {"first_day": 0, "days": 10**12, "customers": {"C-1": [[1, "f"]]}}}, "more than 40000 days"),
+    ],
+)
+def test_results_that_hold_more_than_any_report_are_not_drawn(
+    part: dict[str, Any], told: str, plain: bytes, study: dict[str, Any], tmp_path: Path
+) -> None:
+    import io
+
+    import pikepdf
+
+    hostile = {**study, **part}
+    content = json.dumps(hostile).encode()
+    with pikepdf.open(io.BytesIO(plain)) as pdf:
+        pdf.attachments["results.json"] = pikepdf.AttachedFileSpec(
+            pdf, content, filename="results.json", relationship=pikepdf.Name.Data
+        )
+        path = tmp_path / "hostile.pdf"
+        pdf.save(path)
+    assert any("hold more than any report" in line and told in line for line in audit(path).differs)
+
+
+def test_a_study_that_computes_without_end_is_stopped(
+    on_disk: Path, folder: Path, monkeypatch: pytest.MonkeyPatch
+) -> None:
+    monkeypatch.setattr("loadsum.report.audit.COMPUTING_S", 0.05)
+
+    def recompute(path: Path, inputs: Path) -> dict[str, Any]:
+        while True:
+            pass
+
+    found = audit(on_disk, inputs=folder, recompute=recompute)
+    assert found.differs == ["the attached study cannot be computed within bounds: stopped after 0.05 s"]
+
+
+def test_a_study_that_asks_for_endless_memory_is_stopped(on_disk: Path, folder: Path) -> None:
+    def recompute(path: Path, inputs: Path) -> dict[str, Any]:
+        return {"x": bytearray(2**36)}
+
+    found = audit(on_disk, inputs=folder, recompute=recompute)
+    assert found.differs == ["the attached study cannot be computed within bounds: too much memory"]
+
+
 def test_numbers_within_the_tolerance_are_the_same_and_beyond_it_are_not() -> None:
     a: dict[str, Any] = {"x": [1.0, None, "t"], "program": {"version": "1"}}
     assert differences(a, {"x": [1.0 + 5e-10, None, "t"], "program": {"version": "2"}}) == []
@@ -252,7 +301,7 @@ def test_a_file_that_is_no_results_file_is_told(content: bytes, told: str, tmp_p
         read_results(path)
 
 
-def test_a_report_is_drawn_again_from_its_results_file(study: dict[str, Any], tmp_path: Path) -> None:
+def test_a_report_is_drawn_again_from_its_results_file(study: dict[str, Any], plain: bytes, tmp_path: Path) -> None:
     path = tmp_path / "results.json"
     path.write_text(json.dumps(study), encoding="utf-8")
-    assert made(read_results(path)) == made(study)
+    assert made(read_results(path)) == plain

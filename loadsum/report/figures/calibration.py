@@ -23,7 +23,7 @@ def figure(m: Material, unit: Unit) -> DrawnFigure | None:
     if not models:
         return None
     with plate(58.0) as fig:
-        ax = axes_mm(fig, 19.0, 11.0, 44.0, 3.0)
+        ax = axes_mm(fig, 19.0, 12.0, 44.0, 3.0)
         ax.axhline(1.0, color=INK, linewidth=0.6)
         ends: list[tuple[float, str]] = []
         lowest, highest = 0.5, 2.0

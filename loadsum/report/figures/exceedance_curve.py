@@ -28,7 +28,7 @@ def figure(m: Material, unit: Unit) -> DrawnFigure | None:
     lines = {name: values(curve, name)[whole] for name in MODELS if curve.get(name)}
     right = _right_edge(levels, lines, lowest, [kw for _, kw in ratings_kw(unit)])
     with plate(78.0) as fig:
-        ax = axes_mm(fig, 19.0, 11.0, 40.0, 7.0)
+        ax = axes_mm(fig, 19.0, 12.0, 40.0, 7.0)
         if curve.get("lower") and curve.get("upper"):
             low, high = (np.clip(values(curve, name)[whole], lowest / 100.0, 1.0) for name in ("lower", "upper"))
             ax.fill_between(levels, low, high, color="#bdbdbd", linewidth=0)

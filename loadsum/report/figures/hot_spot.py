@@ -23,9 +23,9 @@ def figure(m: Material, unit: Unit) -> DrawnFigure | None:
     ]
     if not rows:
         return None
-    with plate(60.0) as fig:
-        left = axes_mm(fig, 16.0, 11.0, 90.0, 5.0)
-        right = axes_mm(fig, 93.0, 11.0, 13.0, 5.0)
+    with plate(54.0) as fig:
+        left = axes_mm(fig, 16.0, 12.0, 90.0, 5.0)
+        right = axes_mm(fig, 93.0, 12.0, 13.0, 5.0)
         for index, row in enumerate(rows[: len(DASHES)]):
             for ax, name in ((left, "hot_spot_quantiles_c"), (right, "ageing_quantiles_pu")):
                 values = _known(row, name)

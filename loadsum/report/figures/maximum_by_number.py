@@ -4,7 +4,7 @@ from typing import Any
 
 import numpy as np
 
-from loadsum.report.figures.plate import BLUE, GREEN, INK, ORANGE, PURPLE, DrawnFigure, axes_mm, plate
+from loadsum.report.figures.plate import BLUE, GREEN, INK, ORANGE, PURPLE, DrawnFigure, axes_mm, plate, spread
 from loadsum.report.material import Material, Unit
 
 NAME = "maximum-by-number"
@@ -25,20 +25,19 @@ def figure(m: Material, unit: Unit) -> DrawnFigure | None:
     laws = (unit.part("diversity") or {}).get("laws") or ()
     for (colour, dashes), law in zip(LAWS, laws, strict=False):
         lines.append((str(law.get("name", "")), _array(law, "kw"), colour, dashes, 1.0))
-    with plate(54.0) as fig:
-        ax = axes_mm(fig, 19.0, 11.0, 44.0, 3.0)
+    with plate(48.0) as fig:
+        ax = axes_mm(fig, 19.0, 12.0, 44.0, 3.0)
         for _, values, colour, dashes, width in lines:
             ax.plot(n[: values.size], values, color=colour, linestyle=dashes, linewidth=width)
         ax.set_xlim(float(n[0]), float(n[-1]))
         top = 1.05 * max(float(np.nanmax(values)) for _, values, *_ in lines)
         ax.set_ylim(0, top)
-        last = -1.0
-        for name, values, *_ in sorted(lines, key=lambda line: float(line[1][-1])):
-            last = max(float(values[-1]), last + 0.07 * top)
+        heights = spread([float(values[-1]) for _, values, *_ in lines], 0.105 * top, 0.0, 0.96 * top)
+        for (name, values, *_), height in zip(lines, heights, strict=True):
             ax.annotate(
                 name,
                 (float(n[-1]), float(values[-1])),
-                xytext=(float(n[-1] + 0.02 * (n[-1] - n[0])), last),
+                xytext=(float(n[-1] + 0.02 * (n[-1] - n[0])), height),
                 va="center",
                 ha="left",
                 annotation_clip=False,

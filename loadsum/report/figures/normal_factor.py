@@ -28,7 +28,7 @@ def figure(m: Material, unit: Unit) -> DrawnFigure | None:
     lowest = max(min(float(line.min()) for line in lines.values()), 1e-4)
     highest = max(2.0, min(max(float(line.max()) for line in lines.values()), 1e3))
     with plate(52.0) as fig:
-        ax = axes_mm(fig, 19.0, 11.0, 40.0, 4.0)
+        ax = axes_mm(fig, 19.0, 12.0, 40.0, 4.0)
         ax.axhspan(0.9, 1.1, color="#e2e2e2", zorder=-1)
         ax.axhline(1.0, color=INK, linewidth=0.6)
         for name, line in lines.items():

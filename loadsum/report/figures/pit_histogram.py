@@ -16,7 +16,7 @@ def figure(m: Material, unit: Unit) -> DrawnFigure | None:
     share = counts / counts.sum()
     tenths = np.arange(counts.size)
     with plate(40.0) as fig:
-        ax = axes_mm(fig, 19.0, 10.0, 44.0, 3.0)
+        ax = axes_mm(fig, 19.0, 12.0, 44.0, 3.0)
         ax.bar(tenths + 0.5, share, width=0.86, color="#9a9a9a", edgecolor=INK, linewidth=0.4)
         ax.axhline(1.0 / counts.size, color=INK, linewidth=0.8, linestyle=(0, (4, 2)))
         ax.annotate(

@@ -3,7 +3,7 @@
 import functools
 import io
 import math
-from collections.abc import Iterator
+from collections.abc import Iterator, Sequence
 from contextlib import contextmanager
 from dataclasses import dataclass
 from typing import Any
@@ -119,6 +119,30 @@ def clock_axis(ax: Any, *, last: bool = True) -> None:
     ax.set_xticks(
         range(0, 25, 6), [f"{h:02d}:00" if h % every == 0 and (h < 24 or last) else "" for h in range(0, 25, 6)]
     )
+
+
+def spread(places: Sequence[float], gap: float, lowest: float, highest: float) -> list[float]:
+    """Places of labels, in the order given, moved as little as keeps them ``gap`` apart and inside the plate.
+
+    Parameters
+    ----------
+    places : sequence of float
+        Where each label would stand.
+    gap : float
+        Least distance between two labels.
+    lowest, highest : float
+        Bounds of all labels; where they are too many for that, they go on below ``lowest``.
+    """
+    order = sorted(range(len(places)), key=lambda k: places[k])
+    moved = [0.0] * len(places)
+    last = lowest - gap
+    for k in order:
+        last = moved[k] = max(places[k], last + gap)
+    bound = highest
+    for k in reversed(order):
+        moved[k] = min(moved[k], bound)
+        bound = moved[k] - gap
+    return moved
 
 
 def decades(ax: Any, axis: str, lowest: float, highest: float, text: Any) -> None:

@@ -20,7 +20,7 @@ def figure(m: Material, unit: Unit) -> DrawnFigure | None:
         np.array([np.nan if row.get(k) is None else row[k] for row in rows], dtype=np.float64)
         for k in ("level_kva", "lowest_kva", "highest_kva")
     )
-    with plate(50.0) as fig:
+    with plate(44.0) as fig:
         ax = axes_mm(fig, 19.0, 8.0, 40.0, 3.0)
         ax.fill_between(x, low, high, color="#d6d6d6", linewidth=0)
         ax.plot(x, level, "-o", color=INK, linewidth=1.4, markersize=3.5)

@@ -30,7 +30,7 @@ def figure(m: Material, unit: Unit) -> DrawnFigure | None:
     ratings = list(dict.fromkeys(row["rating_kva"] for s in scenarios for row in s["by_rating"]))
     highest = max([10.0] + [row.get("hours_per_year") or 0.0 for s in scenarios for row in s["by_rating"]])
     with plate(22.0 + 8.0 * len(scenarios)) as fig:
-        ax = axes_mm(fig, 58.0, 11.0, 6.0, 9.0)
+        ax = axes_mm(fig, 58.0, 12.0, 6.0, 9.0)
         for y, scenario in enumerate(scenarios):
             ax.axhline(y, color=PALE, linewidth=0.5, zorder=0)
             for row in scenario["by_rating"]:
@@ -106,4 +106,5 @@ def _together(m: Material, rows: Sequence[Mapping[str, Any]]) -> list[tuple[str,
             groups[-1][0].append(row["rating_kva"])
         else:
             groups.append(([row["rating_kva"]], hours))
-    return [(", ".join([*(m.plain(r) for r in ratings[:-1]), m.kva(ratings[-1])]), hours) for ratings, hours in groups]
+    ordered = [(sorted(ratings), hours) for ratings, hours in groups]
+    return [(", ".join([*(m.plain(r) for r in ratings[:-1]), m.kva(ratings[-1])]), hours) for ratings, hours in ordered]

@@ -2,6 +2,7 @@
 
 from typing import Any
 
+from loadsum.report import renderer
 from loadsum.report.material import Material, Section
 from loadsum.report.notation import NO_BREAK
 from loadsum.report.sections.first_page import all_assumptions
@@ -96,7 +97,7 @@ def inputs_section(m: Material) -> Section | None:
             for row in inputs
         ],
         "program": f"{program.get('name', 'loadsum')} {program.get('version', '')}",
-        "versions": sorted((program.get("dependencies") or {}).items()),
+        "versions": sorted({**(program.get("dependencies") or {}), **renderer.versions()}.items()),
         "seed": m.results.get("seed"),
     }
     return Section(block="inputs", title=m.t("section.inputs"), content=content)
