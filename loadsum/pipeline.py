@@ -293,7 +293,7 @@ def one_transformer(
         record=loaded.record,
         reference=group_blocks,
     )
-    lived = life_of(unit, asked.criterion, together, ratings, rng)
+    lived, beside = life_of(unit, asked.criterion, together, ratings, rng)
     selection = evaluate(
         demand,
         ratings,
@@ -361,6 +361,7 @@ def one_transformer(
         scenarios=scenarios,
         headroom=rooms,
         thermal=lived,
+        thermal_beside=beside,
         losses=losses(
             demand,
             unit.ratings_kva,

@@ -215,6 +215,7 @@ class TransformerResults:
     scenarios: tuple[ScenarioResult, ...] = ()
     headroom: tuple[Headroom, ...] = ()
     thermal: Life | None = None
+    thermal_beside: Life | None = None
     losses: Losses | None = None
     evidence: HoldOut | None = None
     diagnostics: tuple[BlockDiagnostics, ...] = ()

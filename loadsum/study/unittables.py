@@ -56,6 +56,10 @@ class Transformer:
         default="",
         choices=("", "IEEE C57.91", "IEC 60076-7"),
     )
+    both_guides: bool = key(
+        "Shows the equations of the other guide beside, on the same drawn years; criteria go by `loading_guide`.",
+        default=False,
+    )
     paper: str = key(
         "Insulation paper of the windings; needed for temperatures, never assumed.",
         default="",

@@ -11,7 +11,8 @@ from loadsum.study.unittables import AllowedLoading, Criterion, Transformer
 from loadsum.transformer.life import QUANTILES, Life, LifeAtRating, life
 from loadsum.transformer.loading import allowed_pu
 from loadsum.transformer.selection import Figure, FigureSource
-from loadsum.transformer.thermalkeys import ambient_of, thermal_data
+from loadsum.transformer.thermal import Guide, ThermalData
+from loadsum.transformer.thermalkeys import ambient_of, data_for_other, other_guide, thermal_data
 
 YEARS = 200  # drawn for temperatures
 RAREST = 0.5 / QUANTILES  # smallest probability per year that the figures kept of them answer
@@ -48,15 +49,18 @@ def life_of(
     together: DayAndYear,
     ratings_kva: Sequence[float],
     rng: np.random.Generator,
-) -> Life | None:
-    """Temperatures and ageing of every rating; None where thermal data, ambient or readings are missing."""
+) -> tuple[Life | None, Life | None]:
+    """Temperatures and ageing of every rating, and by the other guide where asked for; from the same drawn years.
+
+    None where thermal data, ambient or readings are missing.
+    """
     data = thermal_data(unit)
     if data is None or not together.demand.covered().all():
-        return None
+        return None, None
     paths = together.paths(YEARS, rng)
     ambient, words = ambient_of(unit, paths)
     if ambient is None:
-        return None
+        return None, None
     limit = next((c.limit for c in criteria if c.quantity == "hot-spot temperature"), None)
     assumed = [
         words,
@@ -66,17 +70,26 @@ def life_of(
     ]
     if unit.derating_pu < 1.0:
         assumed.append(f"altitude and enclosure: {unit.derating_pu:g} of nameplate, stated")
-    return life(
-        paths,
-        ambient,
-        ratings_kva,
-        data,
-        unit.loading_guide,  # type: ignore[arg-type]
-        unit.paper,  # type: ignore[arg-type]
-        derating_pu=unit.derating_pu,
-        hot_spot_limit_c=limit,
-        assumed=assumed,
-    )
+    guide: Guide = unit.loading_guide  # type: ignore[assignment]
+
+    def by(which: Guide, own: ThermalData, also: Sequence[str]) -> Life:
+        return life(
+            paths,
+            ambient,
+            ratings_kva,
+            own,
+            which,
+            unit.paper,  # type: ignore[arg-type]
+            derating_pu=unit.derating_pu,
+            hot_spot_limit_c=limit,
+            assumed=[*assumed, *also],
+        )
+
+    beside = None
+    if unit.both_guides:
+        said = f"winding exponent restated from {guide}: 2 m stands for y; constants k11, k21, k22 as stated"
+        beside = by(other_guide(guide), data_for_other(data, guide), [said])
+    return by(guide, data, ()), beside
 
 
 def temperature_figures(lived: Life | None, missing: str) -> dict[str, FigureSource]:

@@ -18,10 +18,36 @@ def section(m: Material, unit: Unit) -> Section | None:
         content={
             "model": str(found.get("model") or ""),
             "rows": [_row(m, unit, row) for row in found["by_rating"]],
+            "beside": _beside(m, found, unit.part("thermal_beside")),
             "assumed": [str(text) for text in found.get("assumed") or ()],
         },
         figures=(unit.figure("hot-spot"),),
     )
+
+
+def _beside(m: Material, found: Mapping[str, Any], other: Mapping[str, Any] | None) -> dict[str, Any]:
+    """Both guides on the same drawn years, one row a rating; empty where the other was not asked for."""
+    if not other:
+        return {}
+    rows = [
+        {
+            "rating": m.plain(own["rating_kva"]),
+            "cells": [
+                form(row.get(part))
+                for part, form in (
+                    ("hot_spot_yearly_high_c", m.temperature),
+                    ("top_oil_yearly_high_c", m.temperature),
+                    ("probability_above_limit", m.n.percent),
+                    ("ageing_pu", m.n.percent),
+                )
+                for row in (own, its)
+            ],
+        }
+        for own, its in zip(found["by_rating"], other["by_rating"], strict=True)
+    ]
+    names = [str(one.get("model") or "").partition(",")[0] for one in (found, other)]
+    stated = [str(text) for text in other.get("assumed") or () if text not in (found.get("assumed") or ())]
+    return {"names": names, "rows": rows, "assumed": stated}
 
 
 def _row(m: Material, unit: Unit, row: Mapping[str, Any]) -> dict[str, Any]:
