@@ -12,6 +12,7 @@ from typing import Any
 from loadsum.errors import Fault, InputError, MissingExtraError
 from loadsum.report.received import Received, open_pdf, read_report, reading_faults
 from loadsum.report.sections.sign_off import signers
+from loadsum.report.stampfont import stamp_font
 from loadsum.report.typeface import REGULAR, character_name, font_files
 
 
@@ -74,7 +75,6 @@ def sign(content: bytes, *, role: str, certificate: bytes, passphrase: str) -> b
         The signing package is not installed.
     """
     try:
-        from pyhanko.pdf_utils.font.opentype import GlyphAccumulatorFactory
         from pyhanko.pdf_utils.text import TextBoxStyle
         from pyhanko.sign import signers as pdf_signers
         from pyhanko.sign.fields import SigSeedSubFilter
@@ -91,9 +91,7 @@ def sign(content: bytes, *, role: str, certificate: bytes, passphrase: str) -> b
         timestamp_format="%Y-%m-%d %H:%M %Z",
         border_width=0,
         background=None,
-        text_box_style=TextBoxStyle(
-            font=GlyphAccumulatorFactory(str(_font_for(text)), font_size=9), font_size=9, leading=12
-        ),
+        text_box_style=TextBoxStyle(font=stamp_font(_font_for(text), 9), font_size=9, leading=12),
     )
     about = pdf_signers.PdfSignatureMetadata(
         field_name=field, md_algorithm="sha256", subfilter=SigSeedSubFilter.PADES, name=_subject(engineer.signing_cert)

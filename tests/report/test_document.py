@@ -1,8 +1,11 @@
 import copy
+import difflib
 import io
 import random
 import re
+import subprocess
 from collections.abc import Sequence
+from pathlib import Path
 from typing import Any
 
 import pikepdf
@@ -11,6 +14,7 @@ import pytest
 from loadsum.report.archive import Attachment
 from loadsum.report.document import compose, render
 from tests.report.pdf_structure import elements, structure_faults
+from tests.report.tagged_text import tagged_words
 
 
 def test_a_report_on_a4_meets_the_structure_of_both_standards(report: bytes) -> None:
@@ -59,6 +63,18 @@ def test_running_titles_are_outside_the_reading_order(report: bytes) -> None:
         stream = pdf.pages[1].Contents.read_bytes()
     assert b"/Pagination" in stream
     assert {"/H1", "/P", "/Table", "/Figure", "/Form"} <= kinds
+
+
+def test_the_tags_and_the_extracted_text_give_the_words_in_the_same_order(report: bytes, tmp_path: Path) -> None:
+    path = tmp_path / "report.pdf"
+    path.write_bytes(report)
+    said = tagged_words(report)
+    done = subprocess.run(["pdftotext", "-raw", path, "-"], check=True, capture_output=True, text=True)
+    read = done.stdout.split()
+    alike = difflib.SequenceMatcher(None, said, read, autojunk=False).get_matching_blocks()
+    assert len(said) > 2000
+    assert sum(block.size for block in alike) >= 0.95 * len(said)
+    assert said.index("Question") < said.index("Finding") < said.index("Coverage") < said.index("Contents")
 
 
 @pytest.mark.parametrize("seed", range(6))

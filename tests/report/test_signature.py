@@ -12,6 +12,7 @@ from loadsum.report.archive import Attachment
 from loadsum.report.document import render
 from loadsum.report.received import read_report
 from loadsum.report.signature import sign, signatures
+from loadsum.report.stampfont import letter_by_letter
 from tests.report.certificates import PASSPHRASE, pkcs12_of
 from tests.report.invented_results import without_figures
 from tests.report.pdf_structure import structure_faults
@@ -29,6 +30,21 @@ def test_one_and_two_signatures_keep_both_standards_and_the_bytes_before(
 def test_signing_leaves_the_metadata_of_the_report_alone(issued: bytes, twice: bytes) -> None:
     with pikepdf.open(io.BytesIO(issued)) as before, pikepdf.open(io.BytesIO(twice)) as after:
         assert before.Root.Metadata.read_bytes() == after.Root.Metadata.read_bytes()
+
+
+def test_the_letters_of_a_stamp_are_listed_one_by_one(issued: bytes, once: bytes) -> None:
+    table = b"1 beginbfrange\n<001f> <0020> [<0064> <00660069>]\nendbfrange\n1 beginbfchar\n<0022> <0067>\nendbfchar"
+    assert letter_by_letter(table) == (
+        b"2 beginbfchar\n<001f> <0064>\n<0020> <00660069>\nendbfchar\n1 beginbfchar\n<0022> <0067>\nendbfchar"
+    )
+    with pikepdf.open(io.BytesIO(issued)) as before, pikepdf.open(io.BytesIO(once)) as after:
+        tables = [
+            thing.ToUnicode.read_bytes()
+            for thing in list(after.objects)[len(before.objects) :]
+            if isinstance(thing, pikepdf.Dictionary) and "/ToUnicode" in thing
+        ]
+    assert len(tables) == 1
+    assert b"beginbfrange" not in tables[0]
 
 
 def test_both_signatures_stand_and_name_their_signers(twice: bytes) -> None:

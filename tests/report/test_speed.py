@@ -38,3 +38,13 @@ def test_a_report_takes_at_most_three_times_the_renderer_alone_on_the_same_page_
     ratio = _best(lambda: render(results)) / _best(alone)
     print(f"report / renderer alone: {ratio:.2f}")
     assert ratio <= 3.0
+
+
+@pytest.mark.slow
+def test_a_report_of_24_transformers_takes_at_most_six_times_that_of_one(results: dict[str, Any]) -> None:
+    one = results["transformers"][0]
+    units = [{**one, "id": f"T-{number}"} for number in range(24)]
+    several = {**results, "transformers": units}
+    ratio = _best(lambda: render(several), 2) / _best(lambda: render(results), 2)
+    print(f"24 transformers / one: {ratio:.2f}")
+    assert ratio <= 6.0
