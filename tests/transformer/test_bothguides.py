@@ -40,4 +40,4 @@ def test_simple_lags_differ_only_in_how_the_oil_follows_the_ambient() -> None:
         )
         if not apart:
             assert one.hot_spot_c[0, 0] == pytest.approx(other.hot_spot_c[0, 0], abs=1e-3)
-        assert (abs(one.ageing_pu[0, 0] / other.ageing_pu[0, 0] - 1.0) > 0.02) is apart
+        assert bool(abs(one.ageing_pu[0, 0] / other.ageing_pu[0, 0] - 1.0) > 0.02) is apart
