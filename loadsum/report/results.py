@@ -160,6 +160,8 @@ class ExceedanceRow:
         The limit; the lowest of the seasons' where they differ. [kVA]
     hours_per_year, hours_low, hours_high : float
         Expected exceedance hours in the covered hours of a year, and their interval. [h]
+    hours_lower, hours_upper : float
+        Bracket of the expected hours that rounding readings to the lattice leaves. [h]
     highest_probability, highest_low, highest_high : float
         Largest probability of any demand interval, and its interval. [-]
     floor : float
@@ -176,6 +178,8 @@ class ExceedanceRow:
     hours_per_year: float
     hours_low: float
     hours_high: float
+    hours_lower: float
+    hours_upper: float
     highest_probability: float
     highest_low: float
     highest_high: float

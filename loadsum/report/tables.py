@@ -209,6 +209,8 @@ def exceedance_rows(
                 hours_per_year=level.year.expected_h,
                 hours_low=_or_nan(level.year.low_h),
                 hours_high=_or_nan(level.year.high_h),
+                hours_lower=level.year.lower_h,
+                hours_upper=level.year.upper_h,
                 highest_probability=_or_nan(largest.value if largest else None),
                 highest_low=_or_nan(largest.low if largest else None),
                 highest_high=_or_nan(largest.high if largest else None),

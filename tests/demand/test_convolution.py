@@ -80,6 +80,9 @@ ADVERSARIAL = {
         [sparse({7 * i: i + 1 for i in range(30)}), sparse({0: 999_999, 1: 1})],
         [20, 1],
     ),
+    "a second reading once in a million": ([sparse({0: 999_999, 1: 1})], [50]),
+    "two customers of whom one is rare and large": ([dwarfs(1)[0], sparse({0: 999_999, 700: 1})], [1, 1]),
+    "a gap of twenty thousand steps": ([*dwarfs(3), sparse({0: 50, 20_000: 1})], [1, 1, 1, 2]),
     "constants among the terms": (
         [sparse({5: 1}), sparse({0: 1, 10: 3}), sparse({100: 1}), *dwarfs(6)],
         [10, 5, 1] + [1] * 6,

@@ -323,6 +323,8 @@ def results() -> dict[str, Any]:
             "hours_per_year": total[i],
             "hours_low": 0.6 * total[i],
             "hours_high": 1.7 * total[i],
+            "hours_lower": 0.997 * total[i],
+            "hours_upper": 1.003 * total[i],
             "highest_probability": highest[i],
             "highest_low": 0.5 * highest[i],
             "highest_high": min(1.9 * highest[i], 1.0),

@@ -252,3 +252,30 @@ def test_a_failed_hold_out_test_is_a_caution_on_page_1(results: dict[str, Any]) 
 def test_the_caution_on_personal_data_says_what_the_document_really_shows(results: dict[str, Any]) -> None:
     assert "show customers under the identifiers of the study file" in page_text(results)
     assert "identifiers are replaced by pseudonyms" in page_text({**results, "pseudonymised": True})
+
+
+@pytest.mark.parametrize(
+    ("half_width", "said"),
+    [
+        (0.0, "Rounding: none that shows."),
+        (0.003, "within the 1 % aimed at"),
+        (0.02, "wider than the 1 % aimed at"),
+    ],
+)
+def test_the_report_says_how_far_rounding_leaves_the_hours_open(
+    half_width: float, said: str, results: dict[str, Any]
+) -> None:
+    results = copy.deepcopy(results)
+    for row in results["transformers"][0]["exceedance"]:
+        row["hours_lower"] = row["hours_per_year"] * (1.0 - half_width)
+        row["hours_upper"] = row["hours_per_year"] * (1.0 + half_width)
+    text = page_text(results)
+    assert said in text
+    assert ("leaves the expected hours open by" in text) == (half_width > 0.0)
+
+
+def test_results_without_a_rounding_bracket_say_nothing_of_it(results: dict[str, Any]) -> None:
+    results = copy.deepcopy(results)
+    for row in results["transformers"][0]["exceedance"]:
+        del row["hours_lower"], row["hours_upper"]
+    assert "steps of the calculation leaves" not in page_text(results)

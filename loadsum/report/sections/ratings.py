@@ -7,6 +7,10 @@ from loadsum.report.material import Material, Section, Unit
 from loadsum.report.notation import NO_BREAK
 from loadsum.report.sections.verdict import exceedance_rows, limit_text, meets_text, quantity_text
 
+WITHIN = 0.01  # width of the rounding bracket, relative to its upper end, that is asked of the study
+NO_WIDTH = 1e-9  # width below which nothing was rounded
+LEAST_H = 1e-4  # expected hours a year below which a bracket says nothing
+
 
 def section(m: Material, unit: Unit) -> Section | None:
     """Table of ratings and table of criteria of one transformer."""
@@ -19,6 +23,7 @@ def section(m: Material, unit: Unit) -> Section | None:
         title=m.t("section.ratings"),
         content={
             "rows": [_row(m, unit, row) for row in rows],
+            "rounding": rounding_text(m, rows),
             "several_loadings": len({row.get("of") for row in rows}) > 1,
             "criteria": criteria(m, unit),
             "ratings": [m.kva(rating) for rating in _ratings(unit)],
@@ -39,6 +44,23 @@ def _row(m: Material, unit: Unit, row: Mapping[str, Any]) -> dict[str, Any]:
         "where": m.hour_class(row.get("highest_at")),
         "normal": _factor(m, row.get("normal_factor")),
     }
+
+
+def rounding_text(m: Material, rows: Sequence[Mapping[str, Any]]) -> str:
+    """How far rounding to the lattice leaves the expected hours open; empty where the results do not say.
+
+    The widest bracket, relative to its upper end, of the rows whose upper end is not beyond all record.
+    """
+    ends = [(row.get("hours_lower"), row.get("hours_upper"), row) for row in rows]
+    known = [(low, high, row) for low, high, row in ends if low is not None and high is not None and high > LEAST_H]
+    if not known:
+        return ""
+    low, high, row = max(known, key=lambda one: (one[1] - one[0]) / one[1])
+    width = (high - low) / high
+    if width < NO_WIDTH:
+        return m.t("ratings.rounding_none")
+    said = {"width": m.n.significant(100.0 * width, 2), "level": m.kva(row.get("level_kva"))}
+    return m.t("ratings.rounding_within" if width <= WITHIN else "ratings.rounding_wide", **said)
 
 
 def _factor(m: Material, factor: float | None) -> str:
