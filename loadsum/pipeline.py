@@ -4,6 +4,7 @@ import json
 import logging
 import platform
 from collections.abc import Mapping, Sequence
+from dataclasses import replace
 from importlib import metadata
 from pathlib import Path
 from typing import Any
@@ -31,20 +32,22 @@ from loadsum.intake.hourclass import Calendar, DayBlock, calendar, day_blocks, m
 from loadsum.intake.load import Loaded, load_readings
 from loadsum.peak.dayandyear import day_and_year
 from loadsum.peak.diversity import diversity
-from loadsum.peak.exceedance import days_by_month, exceedance_hours
-from loadsum.preparation import prepared, tester
+from loadsum.peak.estimated import estimated_readings
+from loadsum.peak.exceedance import ExceedanceTable, days_by_month, exceedance_hours
+from loadsum.preparation import grouped, prepared, tester
 from loadsum.progress import Progress
 from loadsum.report import document, revision
 from loadsum.report.archive import RESULTS_FILE, STUDY_FILE, Attachment
 from loadsum.report.csvtables import csv_table
 from loadsum.report.energybymonth import energy_by_month
 from loadsum.report.hourmap import hour_map
+from loadsum.report.inspection import inspection
 from loadsum.report.outputs import write_outputs
 from loadsum.report.quality import quality_calendar
 from loadsum.report.register import assumptions
 from loadsum.report.results import SCHEMA_VERSION, Program, StudyResults, TransformerResults, encode, to_json
 from loadsum.report.tables import coverage, curve, curve_levels, customer_rows, exceedance_rows, hour_rows
-from loadsum.report.workbook import workbook
+from loadsum.report.workbook import result_tables, workbook
 from loadsum.study.load import load_study
 from loadsum.study.pseudonyms import key_beside, pseudonyms
 from loadsum.study.tables import Study
@@ -109,16 +112,6 @@ def study(path: Path, *, out: Path, progress: Progress, overrides: Sequence[str]
     return "\n".join(said)
 
 
-def result_tables(results: dict[str, Any]) -> dict[str, list[dict[str, Any]]]:
-    """The tables that people paste, by title; the transformer stands in the first column."""
-    units = results["transformers"]
-    by_unit = {
-        name: [{"transformer": unit["id"], **row} for unit in units for row in unit[name]]
-        for name in ("hours", "exceedance", "customers", "assumptions")
-    }
-    return {**by_unit, "findings": results["findings"]}
-
-
 def identifiers(asked: Study, results: dict[str, Any]) -> list[str]:
     """Every identifier of a customer that a study knows, listed or only metered."""
     metered = [row["customer"] for row in results["months"]]
@@ -170,15 +163,7 @@ def inspect(path: Path, *, out: Path | None, progress: Progress) -> str:
     rows = encode((*loaded.readings.findings, *customer_findings(asked, loaded.readings)))
     if out is not None:
         write_outputs(out, {"findings.csv": csv_table(rows)})
-    used = loaded.readings.rows_in - sum(row["excluded"] for row in rows)
-    lines = [f"{loaded.readings.rows_in} readings of {len(loaded.readings.customers)} customers, {used} used"]
-    for file in loaded.inputs:
-        lines.append(f"{file.name}: {file.format}, {file.layout}; {'; '.join(file.choices)}")
-    for row in rows:
-        place = ", ".join(part for part in (row["customer"], row["place"]) if part)
-        said = f"{row['message']}. {row['effect']}".rstrip()
-        lines.append(f"{row['severity']}: {row['rule']}{f' ({place})' if place else ''}: {said}")
-    return "\n".join(lines)
+    return inspection(loaded, rows)
 
 
 def draft(folder: Path) -> str:
@@ -257,12 +242,14 @@ def one_transformer(
     judged, note = tested_group(group, bool(served.group.served.any()))
     tested = hold_out(group_blocks, fit=tester(asked, unit, loaded, group_of, judged), served=judged.served, note=note)
 
-    def modelled(changed: Group, changed_blocks: Sequence[DayBlock], resolution_kw: float) -> GroupDemand:
+    def modelled(
+        changed: Group, changed_blocks: Sequence[DayBlock], resolution_kw: float, resamples: int = settings.resamples
+    ) -> GroupDemand:
         return group_demand(
             changed_blocks,
             interval_min=readings.interval_min,
             power_factor=unit.power_factor,
-            settings=settings,
+            settings=replace(settings, resamples=resamples),
             group=changed,
             resolution_kw=resolution_kw,
             record_c=record_by_class(loaded.record, days),
@@ -279,12 +266,20 @@ def one_transformer(
         return TransformerResults(id=unit.id, reason=reason, installed_kva=unit.installed_kva)
     ratings = ratings_of(unit)
     month_days = days_by_month(days, years)
-    above = {
-        of: exceedance_hours(
-            demand, {f"{rating:g} kVA": rating * share for rating in ratings}, "both", month_days=month_days
-        )
-        for of, share in loadings(demand, asked.allowed_loading).items()
-    }
+
+    def hours_above(model: GroupDemand) -> dict[str, ExceedanceTable]:
+        return {
+            of: exceedance_hours(
+                model, {f"{rating:g} kVA": rating * share for rating in ratings}, "both", month_days=month_days
+            )
+            for of, share in loadings(model, asked.allowed_loading).items()
+        }
+
+    def with_estimated() -> dict[str, ExceedanceTable]:
+        every = day_blocks(readings, days, years, loaded.temperature, estimated_too=True)
+        return hours_above(modelled(*grouped(group_of, unit, every, readings.interval_min), resolution, resamples=0))
+
+    above = hours_above(demand)
     together = day_and_year(
         demand,
         calendar=days,
@@ -343,6 +338,7 @@ def one_transformer(
         curve=curve(demand, curve_levels(demand, max(ratings) * unit.power_factor)),
         normal_family=normal_family(demand, {rating: rating * shown for rating in ratings}),
         exceedance=tuple(row for of, table in above.items() for row in exceedance_rows(demand, table, ratings, of)),
+        estimated=estimated_readings(readings, group_of.usable[served.group.served], ratings, above, with_estimated),
         hour_map=hour_map(demand.blocks, ratings, list(above.values())[-1].levels),
         selection=selection,
         peaks=together.peaks({f"{rating:g} kVA": rating * shown for rating in ratings}, rng),

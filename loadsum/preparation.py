@@ -1,7 +1,7 @@
 """The group of one transformer, made ready for the demand model: for a study and for its hold-out test alike."""
 
 from collections.abc import Callable, Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
 from numpy.typing import NDArray
@@ -69,17 +69,24 @@ def prepared(asked: Study, unit: Transformer, loaded: Loaded, blocks: Sequence[D
     if reason:
         return reason
     allowance = 1.0 + unit.losses_allowance_pct / 100.0
-    group, group_blocks = with_unmetered_block(
-        served.group, [scaled(block, usable, allowance) for block in blocks], unit, readings.interval_min
-    )
-    return Prepared(
+    made = Prepared(
         served=served,
         usable=usable,
         allowance=allowance,
-        group=group,
-        blocks=group_blocks,
+        group=served.group,
+        blocks=(),
         resolution_kw=shared_resolution(readings) * allowance,
     )
+    group, group_blocks = grouped(made, unit, blocks, readings.interval_min)
+    return replace(made, group=group, blocks=group_blocks)
+
+
+def grouped(
+    group_of: Prepared, unit: Transformer, blocks: Sequence[DayBlock], interval_min: int
+) -> tuple[Group, list[DayBlock]]:
+    """A group and its readings of other blocks of the same meters, losses and the unmetered block counted."""
+    metered = [scaled(block, group_of.usable, group_of.allowance) for block in blocks]
+    return with_unmetered_block(group_of.served.group, metered, unit, interval_min)
 
 
 def tester(

@@ -135,14 +135,21 @@ def lagged_daily_mean(record: TemperatureRecord) -> dict[int, float]:
 
 
 def day_blocks(
-    readings: Readings, calendar: Calendar, years: Sequence[int], temperature: TemperatureRecord | None = None
+    readings: Readings,
+    calendar: Calendar,
+    years: Sequence[int],
+    temperature: TemperatureRecord | None = None,
+    *,
+    estimated_too: bool = False,
 ) -> tuple[DayBlock, ...]:
     """Readings sorted into one block for each season and day type, in calendar order; blocks without days included.
 
-    Readings flagged as estimated are left out: they are never counted as observed.
+    Readings flagged as estimated are left out, since they are never counted as observed, unless they are asked for so
+    that what they would do can be told.
     """
     per_day = readings.intervals_per_day
-    kw = np.where(readings.estimated, np.nan, readings.kw)
+    left_out = np.zeros_like(readings.estimated) if estimated_too else readings.estimated
+    kw = np.where(left_out, np.nan, readings.kw)
     # A repeated hour goes to a second row of its day, so that no reading is lost and no two are averaged.
     key = readings.local_day * per_day + readings.interval_of_day
     order = np.argsort(key, kind="stable")
@@ -155,7 +162,7 @@ def day_blocks(
     reactive = None
     if readings.kvar is not None:
         reactive = np.full_like(full, np.nan)
-        reactive[:, row, readings.interval_of_day] = np.where(readings.estimated, np.nan, readings.kvar)
+        reactive[:, row, readings.interval_of_day] = np.where(left_out, np.nan, readings.kvar)
     day = rows // 2
     placed = [calendar.place(d) for d in day.tolist()]
     warmth = lagged_daily_mean(temperature) if temperature is not None else None

@@ -17,6 +17,7 @@ from loadsum.evidence.holdout import HoldOut
 from loadsum.intake.findings import Finding
 from loadsum.intake.inputs import InputFile
 from loadsum.peak.diversity import Diversity
+from loadsum.peak.estimated import EstimatedReadings
 from loadsum.peak.peaks import Peaks
 from loadsum.peak.scenarios import ScenarioResult
 from loadsum.report.energybymonth import CustomerMonths
@@ -212,6 +213,7 @@ class TransformerResults:
     curve: Curve | None = None
     normal_family: NormalFamily | None = None
     exceedance: tuple[ExceedanceRow, ...] = ()
+    estimated: EstimatedReadings | None = None
     hour_map: HourMap | None = None
     selection: Selection | None = None
     peaks: Peaks | None = None

@@ -51,13 +51,13 @@ def coverage(demand: GroupDemand, readings: Readings) -> Coverage:
 
 
 def customer_rows(readings: Readings, customers: Sequence[Customer]) -> tuple[CustomerRow, ...]:
-    """One row for each customer of the study, metered or not."""
+    """One row for each customer of the study, metered or not; what is estimated counts as no reading."""
     place = {name: index for index, name in enumerate(readings.customers)}
     rows = []
     for customer in customers:
         index = place.get(customer.id)
         kw = readings.kw[index] if index is not None else np.empty(0)
-        known = np.isfinite(kw)
+        known = np.isfinite(kw) & ~readings.estimated[index] if index is not None else np.empty(0, bool)
         mean = float(kw[known].mean()) if known.any() else float("nan")
         rows.append(
             CustomerRow(

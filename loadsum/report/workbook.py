@@ -13,6 +13,16 @@ LONGEST_TITLE = 31
 FIXED = dt.datetime(2000, 1, 1)  # every date inside the file, so that the same results give the same bytes
 
 
+def result_tables(results: dict[str, Any]) -> dict[str, list[dict[str, Any]]]:
+    """The tables that people paste, by title; the transformer stands in the first column."""
+    units = results["transformers"]
+    by_unit = {
+        name: [{"transformer": unit["id"], **row} for unit in units for row in unit[name]]
+        for name in ("hours", "exceedance", "customers", "assumptions")
+    }
+    return {**by_unit, "findings": results["findings"]}
+
+
 def workbook(tables: Mapping[str, Sequence[Mapping[str, Any]]]) -> bytes:
     """Tables as the sheets of a workbook: names, units, then one line a row.
 

@@ -25,6 +25,7 @@ def section(m: Material, unit: Unit) -> Section | None:
             "rows": [_row(m, unit, row) for row in rows],
             "rounding": rounding_text(m, rows),
             "several_loadings": len({row.get("of") for row in rows}) > 1,
+            "estimated": estimated(m, unit),
             "criteria": criteria(m, unit),
             "ratings": [m.kva(rating) for rating in _ratings(unit)],
         },
@@ -77,6 +78,33 @@ def _ratings(unit: Unit) -> Sequence[float]:
         for row in criterion.get("by_rating") or ()
     ]
     return list(dict.fromkeys(listed))
+
+
+def estimated(m: Material, unit: Unit) -> dict[str, Any] | None:
+    """Expected hours without the estimated readings and with them; None where there are none."""
+    found = unit.part("estimated")
+    if not found:
+        return None
+    share = found.get("share") or 0.0
+    return {
+        "said": m.t(
+            "ratings.estimated",
+            readings=m.n.fixed(found.get("readings")),
+            customers=m.n.fixed(found.get("customers")),
+            share=m.n.percent(share, 1) if share >= 0.0005 else "<" + NO_BREAK + m.n.percent(0.001, 1),
+            without=m.n.fixed(found.get("left_out_covered_h")),
+            taken=m.n.fixed(found.get("taken_in_covered_h")),
+        ),
+        "rows": [
+            {
+                "rating": m.plain(row.get("rating_kva")),
+                "of": m.t.name("loading", str(row.get("of"))),
+                "left_out": m.hours(row.get("left_out_h")),
+                "taken_in": m.hours(row.get("taken_in_h")),
+            }
+            for row in found.get("rows") or ()
+        ],
+    }
 
 
 def criteria(m: Material, unit: Unit) -> list[dict[str, Any]]:
