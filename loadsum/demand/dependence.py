@@ -8,6 +8,10 @@ from dataclasses import dataclass
 
 import numpy as np
 from numpy.typing import NDArray
+from scipy.stats import t as student
+
+FEWEST_WEEKS = 4  # weeks of readings below which the mean correlation gets no interval
+COVERS = 0.9  # share of cases in which the interval of the mean correlation is meant to hold the long-run value
 
 
 @dataclass(frozen=True, slots=True, kw_only=True, eq=False)
@@ -71,6 +75,33 @@ def common_component(kw: NDArray[np.float64], reach: float) -> CommonComponent:
         correlation=correlation,
         days=days,
     )
+
+
+def correlation_interval(kw: NDArray[np.float64], day: NDArray[np.int64], reach: float) -> tuple[float, float]:
+    """Interval of the mean correlation over the day, by leaving out one week at a time; NaN for too few weeks. [-]
+
+    Parameters
+    ----------
+    kw : (C, D, I) float64
+        Readings, as for :func:`common_component`. [kW]
+    day : (D,) int64
+        Local calendar day. [d]
+    reach : float
+        Standard deviation of the smoothing along the day. [intervals]
+    """
+    week = (day + 3) // 7
+    weeks = np.unique(week)
+    if weeks.size < FEWEST_WEEKS or kw.shape[0] < 2:
+        return float("nan"), float("nan")
+    found = np.array([_mean_correlation(kw[:, week != one], reach) for one in weeks])
+    here, n = _mean_correlation(kw, reach), weeks.size
+    spread = float(np.sqrt((n - 1) / n * np.sum((found - found.mean()) ** 2)))
+    half = float(student.ppf(0.5 + 0.5 * COVERS, n - 1)) * spread
+    return here - half, here + half
+
+
+def _mean_correlation(kw: NDArray[np.float64], reach: float) -> float:
+    return float(common_component(kw, reach).correlation.mean())
 
 
 def smoothing_weights(intervals: int, reach: float) -> NDArray[np.float64]:

@@ -9,7 +9,7 @@ from numpy.typing import NDArray
 from loadsum.demand.commonterm import skewness_along_day, variance_uncertainty_kw2, with_common_term
 from loadsum.demand.convolution import BracketedSum, DemandSum, plain_distributions
 from loadsum.demand.customerclass import ClassPool, borrowed, class_pool, weighted_variance
-from loadsum.demand.dependence import CommonComponent, common_component, mean_variance
+from loadsum.demand.dependence import CommonComponent, common_component, correlation_interval, mean_variance
 from loadsum.demand.hourly import BlockDiagnostics, GroupDemand, HourDemand, with_normal
 from loadsum.demand.lattice import LatticeMass, lattice_mass
 from loadsum.demand.latticestep import affordable_step
@@ -192,6 +192,8 @@ class _Block:
         together = self.group.served if self.group.served.sum() >= 2 else np.ones(kw.shape[0], dtype=bool)
         common = common_component(adjusted[together], reach)
         raw = common_component(kw[together], reach)
+        asked = self.settings.resamples > 0
+        spread = correlation_interval(kw[together], self.block.day, reach) if asked else (float("nan"), float("nan"))
         equivalent = np.einsum("c,cdi->di", weight[counted], adjusted[counted])
         observed = np.einsum("c,cdi->di", weight[counted], kw[counted])
         spread_of_mean = mean_variance(equivalent, self.block.day)
@@ -213,7 +215,7 @@ class _Block:
             else None
             for i in range(intervals)
         )
-        return made, self._diagnostics(made, raw, responses, weight)
+        return made, self._diagnostics(made, raw, responses, weight, spread)
 
     def _correlation(self, common: CommonComponent) -> NDArray[np.float64]:
         """Mean correlation between customers, not negative; the user's figure where it was given."""
@@ -380,6 +382,7 @@ class _Block:
         raw: CommonComponent,
         responses: tuple[TemperatureResponse | None, ...],
         weight: NDArray[np.float64],
+        correlation: tuple[float, float],
     ) -> BlockDiagnostics:
         present = [hour for hour in made if hour is not None]
         model = sum(hour.variance_kw2() - hour.mean_variance_kw2 for hour in present)
@@ -397,6 +400,8 @@ class _Block:
             day_type=self.block.day_type,
             days=int(self.block.day.size),
             correlation=float(raw.correlation.mean()),
+            correlation_low=correlation[0],
+            correlation_high=correlation[1],
             variance_ratio=model / observed if comparable and observed > 0.0 else float("nan"),
             temperature_explains=float(np.mean(explained)) if explained else 0.0,
             record_days_outside=outside,

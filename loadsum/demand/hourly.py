@@ -284,6 +284,8 @@ class BlockDiagnostics:
         Days of readings. [d]
     correlation : float
         Mean correlation between customers over the day, as metered. [-]
+    correlation_low, correlation_high : float
+        Its 90 % interval by leaving out one week at a time; NaN where weeks or customers are too few. [-]
     variance_ratio : float
         Variance of the model over that of the observed sum, summed over the day; NaN where the group is not the
         metered customers alone. [-]
@@ -299,6 +301,8 @@ class BlockDiagnostics:
     day_type: str
     days: int
     correlation: float
+    correlation_low: float
+    correlation_high: float
     variance_ratio: float
     temperature_explains: float
     record_days_outside: int

@@ -1,7 +1,7 @@
 import numpy as np
 import pytest
 
-from loadsum.demand.dependence import common_component, mean_variance, smoothing_weights
+from loadsum.demand.dependence import common_component, correlation_interval, mean_variance, smoothing_weights
 
 
 def test_the_mean_correlation_of_independent_customers_is_nought_on_average():
@@ -52,3 +52,19 @@ def test_the_mean_is_known_worse_where_weeks_differ():
     plain = mean_variance(by_day, day).mean()
     assert plain == pytest.approx(1.0 / 140, rel=0.35)
     assert mean_variance(by_day + by_week, day).mean() > 3.0 * plain
+
+
+def test_the_interval_of_the_mean_correlation_holds_the_truth_about_nine_times_in_ten():
+    held, runs = 0, 60
+    day = np.arange(70)
+    for seed in range(runs):
+        rng = np.random.default_rng(seed)
+        kw = np.sqrt(0.2) * rng.normal(size=(1, 70, 6)) + np.sqrt(0.8) * rng.normal(size=(5, 70, 6))
+        low, high = correlation_interval(kw, day, 1.5)
+        held += low <= 0.2 <= high
+    assert 0.8 <= held / runs <= 0.98
+
+
+def test_too_few_weeks_give_the_mean_correlation_no_interval():
+    kw = np.random.default_rng(1).normal(size=(5, 14, 6))
+    assert np.isnan(correlation_interval(kw, np.arange(14), 1.5)).all()

@@ -432,6 +432,8 @@ def results() -> dict[str, Any]:
                         "day_type": day_type,
                         "days": 60,
                         "correlation": 0.11,
+                        "correlation_low": 0.07,
+                        "correlation_high": 0.15,
                         "variance_ratio": 1.0,
                         "temperature_explains": 0.31,
                         "record_days_outside": 0,

@@ -41,6 +41,9 @@ def diagnostics_section(m: Material, unit: Unit) -> Section | None:
                     "class": ", ".join(str(row[k]) for k in ("season", "day_type") if row.get(k)),
                     "days": m.n.fixed(row.get("days")),
                     "correlation": m.n.fixed(row.get("correlation"), 2),
+                    "correlation_interval": m.between(
+                        row.get("correlation_low"), row.get("correlation_high"), lambda r: m.n.fixed(r, 2)
+                    ),
                     "variance": m.n.fixed(row.get("variance_ratio"), 2),
                     "temperature": m.n.percent(row.get("temperature_explains"), 2)
                     if row.get("temperature_explains")
