@@ -56,7 +56,8 @@ KNOWN = """
 - Without temperature, passes of the far levels come together in few weeks, so on the 25 loads the intervals of the 1
   and 0.1 % levels are wide, and their upper ends lie above what is wanted. Weather inside a season is the likely cause,
   which that file cannot show.
-- Half of held-out demand should lie above the 50 % level: on real homes fewer does. The middle of the law stands a little high.
+- Half of held-out demand should lie above the 50 % level; on real homes less does: the middle of the law stands a
+  little high.
 - Hours that temperature stretches are accurate to 1e-15 absolute, not 1e-10 relative, far in the tail.
 - None of this tests another year's weather, nor customers that were not metered.
 - The 17 homes are one small set from one place, and the groups drawn from them share members, so their intervals are
