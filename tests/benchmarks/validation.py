@@ -52,11 +52,11 @@ KNOWN = """
 - A class of days with few days (weekends of one season) is the weakest part: its tail rests on what is borrowed.
 - Intervals move and stretch the adopted model with resampled weeks; they do not draw new shapes of tail.
 - The 17 homes served both to choose the form of the model and to report it, so their rows flatter it. A study does not
-  choose its settings inside its own fitting weeks; on these sets other settings moved the loss by 1 % or so.
-- Without temperature, passes of the far levels come together: of 25 passes of the 0.1 % level in ten groups of the 25
-  loads, 12 fell into two weeks of the year. Weather inside a season is the likely cause, which that file cannot show.
-  So its intervals of the 1 and 0.1 % levels are wide, and reach above 1.5 and 0.2 %.
-- Half of held-out demand should lie above the 50 % level: on real homes 40 to 46 % does. The middle of the law stands a
+  choose its settings inside its own fitting weeks; the table above has what other settings would have done.
+- Without temperature, passes of the far levels come together in few weeks, so on the 25 loads the intervals of the 1
+  and 0.1 % levels are wide, and their upper ends lie above what is wanted. Weather inside a season is the likely cause,
+  which that file cannot show.
+- Half of held-out demand should lie above the 50 % level; on real homes less does: the middle of the law stands a
   little high.
 - Hours that temperature stretches are accurate to 1e-15 absolute, not 1e-10 relative, far in the tail.
 - None of this tests another year's weather, nor customers that were not metered.
