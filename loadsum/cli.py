@@ -9,7 +9,7 @@ from collections.abc import Sequence
 from pathlib import Path
 
 from loadsum import __version__
-from loadsum.errors import LoadsumError
+from loadsum.errors import Fault, InputError, LoadsumError
 from loadsum.progress import TerminalLine, silent
 
 EPILOG = """\
@@ -48,7 +48,9 @@ def parser() -> argparse.ArgumentParser:
         return sub
 
     study = command("study", "make a study: PDF report, results, hourly table and figures")
-    study.add_argument("file", type=Path, metavar="FILE", help="study file (TOML)")
+    study.add_argument("file", type=Path, metavar="FILE", help="study file (TOML), or a report that carries one (PDF)")
+    study.add_argument("--inputs", type=Path, metavar="FOLDER", help="folder of the input files, for a report")
+    study.add_argument("--key", type=Path, metavar="FILE", help="key file of the customers' pseudonyms, for a report")
     study.add_argument("--out", type=Path, required=True, metavar="DIR", help="folder for the results")
     study.add_argument(
         "--with",
@@ -149,6 +151,21 @@ def main(argv: Sequence[str] | None = None) -> int:
         elif args.command == "audit":
             found = documents.audited(args.report, inputs=args.inputs, key=args.key, templates=args.templates)
             text, status = found.text(), found.exit_status
+        elif args.file.suffix.lower() == ".pdf":
+            if args.inputs is None:
+                raise InputError(args.file.name, [Fault("--inputs", "missing; give the folder of the input files")])
+            text = documents.rerun(
+                args.file,
+                inputs=args.inputs,
+                key=args.key,
+                out=args.out,
+                overrides=args.overrides,
+                progress=progress,
+                xlsx=args.xlsx,
+            )
+        elif args.inputs is not None or args.key is not None:
+            option = "--inputs" if args.inputs is not None else "--key"
+            raise InputError(args.file.name, [Fault(option, "goes with a report (PDF); a study file names its own")])
         else:
             text = pipeline.study(args.file, out=args.out, progress=progress, overrides=args.overrides, xlsx=args.xlsx)
     except LoadsumError as error:

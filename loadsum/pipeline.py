@@ -49,6 +49,7 @@ from loadsum.report.results import SCHEMA_VERSION, Program, StudyResults, Transf
 from loadsum.report.tables import coverage, curve, curve_levels, customer_rows, exceedance_rows, hour_rows
 from loadsum.report.workbook import result_tables, workbook
 from loadsum.study.load import load_study
+from loadsum.study.overrides import with_values_noted
 from loadsum.study.pseudonyms import key_beside, pseudonyms
 from loadsum.study.tables import Study
 from loadsum.study.unittables import Transformer
@@ -90,26 +91,42 @@ def study(path: Path, *, out: Path, progress: Progress, overrides: Sequence[str]
     """
     progress("reading the study file", 0.0)
     asked = load_study(path, overrides)
-    results = encode(compute(asked, path.parent, progress=progress))
-    study_file = path.read_text(encoding="utf-8-sig")
+    before = load_study(path) if overrides else None
+    key, made = (b"", False) if asked.privacy.raw_identifiers else key_beside(path, asked.privacy.key_file)
+    study_file = with_values_noted(path.read_text(encoding="utf-8-sig"), overrides)
+    said = deliver(asked, path.parent, study_file, key, before=before, out=out, progress=progress, xlsx=xlsx)
+    if made:
+        said.append(f"customers have pseudonyms; keep their key: {path.parent / asked.privacy.key_file}")
+    return "\n".join(said)
+
+
+def deliver(
+    asked: Study,
+    folder: Path,
+    study_file: str,
+    key: bytes,
+    *,
+    before: Study | None,
+    out: Path,
+    progress: Progress,
+    xlsx: bool,
+) -> list[str]:
+    """Compute a study, write its outputs, and say how it differs from the study it was before, where one is given."""
+    results = encode(compute(asked, folder, progress=progress))
     said = [f"report: {out / 'report.pdf'}"]
-    if overrides:
-        before = encode(compute(load_study(path), path.parent, progress=progress))
-        said += [str(change) for change in revision.compare(before, results)] or ["no figure and no verdict changed"]
-        study_file += "".join(f"\n# with {text}" for text in overrides) + "\n"
+    if before is not None:
+        as_it_was = encode(compute(before, folder, progress=progress))
+        said += [str(change) for change in revision.compare(as_it_was, results)] or ["no figure and no verdict changed"]
     if not asked.privacy.raw_identifiers:
-        key, made = key_beside(path, asked.privacy.key_file)
         named = pseudonyms(identifiers(asked, results), key)
         results, study_file = {**named.results(results), "pseudonymised": True}, named.toml(study_file)
-        if made:
-            said.append(f"customers have pseudonyms; keep their key: {path.parent / asked.privacy.key_file}")
     progress("drawing the report", 0.8)
     results = json.loads(to_json(results))  # drawn from what is written, so that it can be drawn again
     files = outputs(results, study_file.encode())
     if xlsx:
         files["tables.xlsx"] = workbook(result_tables(results))
     write_outputs(out, files)
-    return "\n".join(said)
+    return said
 
 
 def identifiers(asked: Study, results: dict[str, Any]) -> list[str]:

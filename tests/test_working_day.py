@@ -107,6 +107,37 @@ def test_a_changed_assumption_lists_the_differences_it_makes(folder: Path, capsy
     assert b"# with transformer.power_factor=0.8" in attached["study.toml"].content
 
 
+def test_the_study_that_a_report_carries_is_made_again_with_a_changed_assumption(
+    folder: Path, capsys: pytest.CaptureFixture[str]
+) -> None:
+    report, key = str(folder / "old" / "report.pdf"), str(folder / "study.key")
+    given = ["--with", "transformer.power_factor=0.8", "--inputs", str(folder), "--key", key]
+    assert main(["study", report, *given, "--out", str(folder / "reviewed")]) == 0
+    said = capsys.readouterr().out
+    assert "assumption: power factor of the group: 1 -> 0.8" in said
+    assert re.search(r"verdict: transformer, 10 kVA, exceedance hours per year of nameplate: ", said)
+    assert not re.search(r"^(input|readings|customer|finding|criterion): ", said, re.MULTILINE)
+    old, new = (
+        json.loads((folder / name / "results.json").read_text(encoding="utf-8")) for name in ("old", "reviewed")
+    )
+    assert new["transformers"][0]["power_factor"] == 0.8
+    assert [row["id"] for row in new["transformers"][0]["customers"]] == [
+        row["id"] for row in old["transformers"][0]["customers"]
+    ]
+    audit = ["audit", str(folder / "reviewed" / "report.pdf"), "--inputs", str(folder), "--key", key]
+    assert main(audit) == 0, capsys.readouterr().out  # the changed value is part of what the report carries
+
+
+def test_a_report_without_its_inputs_or_key_is_the_users_fault(
+    folder: Path, capsys: pytest.CaptureFixture[str]
+) -> None:
+    report, out = str(folder / "old" / "report.pdf"), ["--out", str(folder / "none")]
+    assert main(["study", report, *out]) == 2
+    assert "--inputs: missing; give the folder of the input files" in capsys.readouterr().err
+    assert main(["study", report, "--inputs", str(folder), *out]) == 2
+    assert "--key: the report's customers stand under pseudonyms" in capsys.readouterr().err
+
+
 def test_an_unknown_key_of_a_changed_assumption_is_the_users_fault(
     folder: Path, capsys: pytest.CaptureFixture[str]
 ) -> None:

@@ -6,7 +6,7 @@ from collections.abc import Callable, Mapping, Sequence
 from dataclasses import dataclass
 from typing import Any
 
-from loadsum.study.tables import Study
+from loadsum.study.unittables import Transformer
 
 # Tables of the study file whose change can move a verdict.
 STUDY_CAUSES = ("customer", "season", "day_types", "model", "transformer", "allowed_loading", "criterion")
@@ -285,11 +285,34 @@ def shares(causes: Sequence[str], figure: Callable[[frozenset[str]], float]) -> 
     )
 
 
-def judged(study: Study) -> tuple[str, float]:
-    """The transformer and rating whose room is shared out among the causes: the first of the study, the unit in service
-    or else the largest rating compared. [-, kVA]"""
-    unit = study.transformer[0]
-    return unit.id, unit.installed_kva or max(unit.ratings_kva, default=0.0)
+def moved(old: Mapping[str, Any], new: Mapping[str, Any]) -> tuple[str, ...]:
+    """Transformers of both results whose choice, or whose answer to a criterion at a rating, is not as it was.
+
+    Parameters
+    ----------
+    old, new : mapping
+        Results as read from results.json.
+    """
+    before, after = (
+        {unit["id"]: _answers(unit) for unit in results.get("transformers") or ()} for results in (old, new)
+    )
+    return tuple(name for name in after if name in before and after[name] != before[name])
+
+
+def _answers(unit: Mapping[str, Any]) -> tuple[object, ...]:
+    """What was decided on a transformer, without the figures behind it."""
+    choice = unit.get("selection") or {}
+    decided = [
+        (row["quantity"], row["of"], row.get("season"), at["rating_kva"], at.get("outcome", at.get("meets")))
+        for row in choice.get("criteria") or ()
+        for at in row["by_rating"]
+    ]
+    return unit.get("reason") or "", choice.get("verdict"), choice.get("rating_kva"), tuple(decided)
+
+
+def judged_rating(unit: Transformer) -> float:
+    """Rating whose room is shared out among the causes: the unit in service, or the largest compared. [kVA]"""
+    return unit.installed_kva or max(unit.ratings_kva, default=0.0)
 
 
 def room_at(selection: Mapping[str, Any] | None, rating_kva: float) -> float:

@@ -8,6 +8,7 @@ from typing import Any
 
 from loadsum.errors import Fault, InputError
 
+NOTED = "# Values that stood for those above when the study was made:"
 STEP = re.compile(r"([A-Za-z_]\w*)(?:\[(\d+)\])?")
 
 
@@ -48,6 +49,21 @@ def with_overrides(tree: dict[str, Any], overrides: Sequence[str]) -> dict[str, 
     if faults:
         raise InputError("command line", faults)
     return changed
+
+
+def with_values_noted(study_file: str, overrides: Sequence[str]) -> str:
+    """The text of a study file with the values that stood for some of its own noted at its end."""
+    if not overrides:
+        return study_file
+    lines = [f"# with {text}" for text in overrides]
+    return "\n".join([study_file.rstrip("\n"), *([] if noted_values(study_file) else ["", NOTED]), *lines]) + "\n"
+
+
+def noted_values(study_file: str) -> tuple[str, ...]:
+    """The ``key=value`` texts noted at the end of a study file that a report carries."""
+    _, heading, noted = study_file.rpartition(f"\n{NOTED}\n")
+    lines = noted.splitlines() if heading else []
+    return tuple(line.removeprefix("# with ") for line in lines if line.startswith("# with "))
 
 
 def toml_value(text: str) -> Any:
