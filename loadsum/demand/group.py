@@ -13,11 +13,11 @@ from loadsum.demand.dependence import CommonComponent, common_component, correla
 from loadsum.demand.hourly import BlockDiagnostics, GroupDemand, HourDemand, with_normal
 from loadsum.demand.lattice import LatticeMass, lattice_mass
 from loadsum.demand.latticestep import affordable_step
-from loadsum.demand.planned import Planned, PlannedTerm, planned_terms, pooled, total_variance, within
+from loadsum.demand.planned import Planned, PlannedTerm, annual_energy, planned_terms, pooled, total_variance, within
 from loadsum.demand.samplingerror import Resamples, resample_weeks
 from loadsum.demand.settings import ModelSettings
 from loadsum.demand.temperature import TemperatureResponse, take_out_temperature
-from loadsum.demand.temperaturepool import PooledResponse, pooled_response
+from loadsum.demand.temperaturepool import PooledResponse, pooled_over
 from loadsum.demand.temperaturespread import mixed_over, spread_taken_out
 from loadsum.intake.hourclass import DayBlock
 
@@ -107,7 +107,8 @@ def group_demand(
         )
         for block in blocks
     ]
-    pooled = _pooled(built)
+    nothing: list[PooledResponse | None] = [None] * blocks[0].kw.shape[2]
+    pooled = pooled_over(blocks, built[0].weights()) if settings.temperature else nothing
     made = [one.hours(rng, pooled) for one in built]
     served_blocks = [
         replace(
@@ -130,31 +131,6 @@ def group_demand(
         settings=settings,
         diagnostics=tuple(found for _, found in made),
     )
-
-
-def _pooled(built: Sequence["_Block"]) -> list[PooledResponse | None]:
-    """Response to temperature in each interval of the day over all classes of days."""
-    intervals = built[0].block.kw.shape[2]
-    given = [
-        (one.block.kw, one.block.temperature_c)
-        for one in built
-        if one.settings.temperature and one.block.temperature_c is not None
-    ]
-    if len(given) < 2:
-        return [None] * intervals
-    warmth = [temperature for _, temperature in given]
-    return [pooled_response([kw[:, :, i] for kw, _ in given], warmth, built[0].weights()) for i in range(intervals)]
-
-
-def annual_energy(blocks: Sequence[DayBlock], interval_min: int) -> NDArray[np.float64]:
-    """Energy of each metered customer per average year, over the classes of days with readings, (C,) float64. [kWh]"""
-    total = np.zeros(blocks[0].kw.shape[0])
-    for block in blocks:
-        known = np.isfinite(block.kw)
-        count = known.sum(axis=1)
-        mean = np.divide(np.where(known, block.kw, 0.0).sum(axis=1), count, out=np.zeros(count.shape), where=count > 0)
-        total += block.days_per_year * mean.sum(axis=1) * interval_min / 60.0
-    return total
 
 
 @dataclass(frozen=True, slots=True, kw_only=True, eq=False)

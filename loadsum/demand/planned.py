@@ -6,6 +6,8 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 
+from loadsum.intake.hourclass import DayBlock
+
 
 @dataclass(frozen=True, slots=True, kw_only=True)
 class Planned:
@@ -43,6 +45,17 @@ class PlannedTerm:
     count: int
     members: NDArray[np.int64]
     scale: NDArray[np.float64]
+
+
+def annual_energy(blocks: Sequence[DayBlock], interval_min: int) -> NDArray[np.float64]:
+    """Energy of each metered customer per average year, over the classes of days with readings, (C,) float64. [kWh]"""
+    total = np.zeros(blocks[0].kw.shape[0])
+    for block in blocks:
+        known = np.isfinite(block.kw)
+        count = known.sum(axis=1)
+        mean = np.divide(np.where(known, block.kw, 0.0).sum(axis=1), count, out=np.zeros(count.shape), where=count > 0)
+        total += block.days_per_year * mean.sum(axis=1) * interval_min / 60.0
+    return total
 
 
 def planned_terms(

@@ -11,6 +11,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from loadsum.demand.degrees import degrees
+from loadsum.intake.hourclass import DayBlock
 from loadsum.intake.readings import read_only
 
 FEWEST_DAYS = 20  # days of all classes together below which nothing is pooled
@@ -46,6 +47,24 @@ def nothing_pooled(customers: int) -> PooledResponse:
     return PooledResponse(
         group_kw_per_k=np.zeros(2), covariance=np.zeros((2, 2)), customer_kw_per_k=np.zeros((customers, 2))
     )
+
+
+def pooled_over(blocks: Sequence[DayBlock], weight: NDArray[np.float64]) -> list[PooledResponse | None]:
+    """Slopes of every interval of the day over all classes of days; None where fewer than two have temperatures.
+
+    Parameters
+    ----------
+    blocks : sequence of DayBlock
+        Readings by class of days.
+    weight : (C,) float64
+        How many times each customer counts in the group. [-]
+    """
+    intervals = blocks[0].kw.shape[2]
+    given = [(block.kw, block.temperature_c) for block in blocks if block.temperature_c is not None]
+    if len(given) < 2:
+        return [None] * intervals
+    warmth = [temperature for _, temperature in given]
+    return [pooled_response([kw[:, :, i] for kw, _ in given], warmth, weight) for i in range(intervals)]
 
 
 def pooled_response(
