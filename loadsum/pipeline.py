@@ -17,6 +17,7 @@ from loadsum.demand.hourly import GroupDemand
 from loadsum.demand.modelparts import part_effects
 from loadsum.demand.normalfamily import normal_family
 from loadsum.demand.planned import Planned
+from loadsum.demand.reactive import power_factor_when_high
 from loadsum.demand.served import (
     numbers_by_class,
     record_by_class,
@@ -342,17 +343,18 @@ def one_transformer(
         customers=numbers_by_class(served.customers),
         rebuild=rebuilt,
     )
+    power_factor = power_factor_when_high(demand)
     shown = list(loadings(demand, asked.allowed_loading).values())[-1]
     return TransformerResults(
         id=unit.id,
         installed_kva=unit.installed_kva,
         phases=unit.phases,
-        power_factor=unit.power_factor,
+        power_factor=power_factor,
         ratings_kva=tuple(ratings),
         coverage=coverage(demand, readings),
         customers=customer_rows(readings, served.customers),
         hours=hour_rows(demand),
-        curve=curve(demand, curve_levels(demand, max(ratings) * unit.power_factor)),
+        curve=curve(demand, curve_levels(demand, max(ratings) * power_factor)),
         normal_family=normal_family(demand, {rating: rating * shown for rating in ratings}),
         exceedance=tuple(row for of, table in above.items() for row in exceedance_rows(demand, table, ratings, of)),
         estimated=estimated_readings(readings, group_of.usable[served.group.served], ratings, above, with_estimated),

@@ -14,6 +14,7 @@ from loadsum.demand.hourly import BlockDiagnostics, GroupDemand, HourDemand, wit
 from loadsum.demand.lattice import LatticeMass, lattice_mass
 from loadsum.demand.latticestep import affordable_step
 from loadsum.demand.planned import Planned, PlannedTerm, annual_energy, planned_terms, pooled, total_variance, within
+from loadsum.demand.reactive import power_factors
 from loadsum.demand.samplingerror import Resamples, resample_weeks
 from loadsum.demand.settings import ModelSettings
 from loadsum.demand.temperature import TemperatureResponse, take_out_temperature
@@ -174,6 +175,7 @@ class _Block:
         observed = np.einsum("c,cdi->di", weight[counted], kw[counted])
         spread_of_mean = mean_variance(equivalent, self.block.day)
         lean = skewness_along_day(equivalent, reach)
+        power_factor = self._power_factors()
         nothing: tuple[Resamples | None, ...] = (None,) * intervals
         resamples = nothing if rng is None else resample_weeks(observed, self.block.day, self.settings.resamples, rng)
         made = tuple(
@@ -186,12 +188,19 @@ class _Block:
                 float(spread_of_mean[i]),
                 responses[i],
                 resamples[i],
+                float(power_factor[i]),
             )
             if enough[i]
             else None
             for i in range(intervals)
         )
         return made, self._diagnostics(made, raw, responses, weight, spread)
+
+    def _power_factors(self) -> NDArray[np.float64]:
+        """Power factor of each interval, metered only where everyone served is."""
+        served, kvar = self.group.served, self.block.kvar
+        reactive = None if kvar is None or self.terms or not served.any() else kvar[served].sum(axis=0)
+        return power_factors(self.block.kw[served].sum(axis=0), reactive, self.power_factor)
 
     def _correlation(self, common: CommonComponent) -> NDArray[np.float64]:
         """Mean correlation between customers, not negative; the user's figure where it was given."""
@@ -223,6 +232,7 @@ class _Block:
         mean_variance_kw2: float,
         response: TemperatureResponse | None,
         resamples: Resamples | None,
+        power_factor: float,
     ) -> HourDemand:
         """One demand interval; ``adjusted`` is (C, D)."""
         served = np.flatnonzero(self.group.served)
@@ -291,7 +301,7 @@ class _Block:
             response=response,
             independent=plain_distributions(BracketedSum(down=nearest, up=nearest))[0],
             covariance_variance_kw2=target_raw,
-            power_factor=self.power_factor,
+            power_factor=power_factor,
             mean_variance_kw2=mean_variance_kw2 if self.settings.mean_uncertainty else 0.0,
             can_export=can_export,
             own_terms=len(counts),

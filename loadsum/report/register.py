@@ -4,6 +4,7 @@ from collections.abc import Sequence
 
 from loadsum.demand.hourly import GroupDemand
 from loadsum.demand.modelparts import PARTS, PartEffect
+from loadsum.demand.reactive import metered_power_factors
 from loadsum.demand.served import Served
 from loadsum.study.assumptions import Assumption
 from loadsum.study.record import transformer_record
@@ -15,6 +16,7 @@ from loadsum.transformer.thermalkeys import NO_AMBIENT, thermal_data
 
 FILE = "study file"
 DEFAULT = "program default"
+READINGS = "meter readings"
 
 
 THERMAL = {
@@ -37,12 +39,16 @@ def assumptions(
     parts: Sequence[PartEffect] = (),
 ) -> tuple[Assumption, ...]:
     """Everything the study of one transformer takes as given, and what the choice does where that was worked out."""
+    metered = metered_power_factors(demand, unit.power_factor)
     listed = [
         Assumption(
             name="power factor of the group",
-            value=f"{unit.power_factor:g}",
-            source=unit.power_factor_source or "no source given",
-            decided_by=FILE,
+            value=f"{unit.power_factor:g}" if metered is None else f"{metered[0]:.3f} to {metered[1]:.3f}",
+            source=(unit.power_factor_source or "no source given")
+            if metered is None
+            else f"metered reactive demand of everyone served, in proportion to the active one in each interval of a"
+            f" class of days; {unit.power_factor:g}, as stated, where it is missing",
+            decided_by=FILE if metered is None else READINGS,
             effect=power_factor_effect(turning),
         ),
         Assumption(
