@@ -15,6 +15,7 @@ from loadsum.demand.hourly import BlockDiagnostics
 from loadsum.evidence.holdout import HoldOut
 from loadsum.intake.findings import Finding
 from loadsum.intake.inputs import InputFile
+from loadsum.intake.reconcile import Reconciliation
 from loadsum.peak.diversity import Diversity
 from loadsum.peak.estimated import EstimatedReadings
 from loadsum.peak.peaks import Peaks
@@ -241,6 +242,7 @@ class StudyResults:
     quality: QualityCalendar
     transformers: tuple[TransformerResults, ...]
     months: tuple[CustomerMonths, ...] = ()
+    reconciliation: tuple[Reconciliation, ...] = ()
     pseudonymised: bool = False
 
 

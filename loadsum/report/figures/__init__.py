@@ -13,6 +13,7 @@ from loadsum.report.figures import (
     normal_factor,
     quality_calendar,
     rare_levels,
+    reconciliation,
     scenarios,
 )
 from loadsum.report.figures.plate import DrawnFigure, png, svg
@@ -34,7 +35,7 @@ OF_ONE_OF_SEVERAL: Sequence[Callable[[Material, Unit], DrawnFigure | None]] = (
     exceedance_map.figure,
     exceedance_curve.figure,
 )
-OF_THE_STUDY: Sequence[Callable[[Material], DrawnFigure | None]] = (quality_calendar.figure,)
+OF_THE_STUDY: Sequence[Callable[[Material], DrawnFigure | None]] = (quality_calendar.figure, reconciliation.figure)
 
 
 def drawn(m: Material, units: Sequence[Unit]) -> dict[str, DrawnFigure]:
