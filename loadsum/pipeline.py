@@ -213,6 +213,7 @@ def compute(asked: Study, folder: Path, *, progress: Progress) -> StudyResults:
         findings=(*readings.findings, *customer_findings(asked, readings)),
         quality=quality_calendar(readings),
         months=energy_by_month(readings),
+        reconciliation=loaded.reconciliation,
         transformers=tuple(units),
     )
 

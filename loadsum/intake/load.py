@@ -13,11 +13,12 @@ from loadsum.intake.align import Matrix, aligned
 from loadsum.intake.clock import grid_phase_s, local_calendar, zone
 from loadsum.intake.findings import Finding
 from loadsum.intake.grouprules import judged
+from loadsum.intake.hourclass import calendar
 from loadsum.intake.inputs import InputFile, digest, matching
 from loadsum.intake.profile import read_profiles
 from loadsum.intake.readers.formats import read_file
 from loadsum.intake.readings import Readings, TemperatureRecord
-from loadsum.intake.reconcile import Reconciliation, reconciled
+from loadsum.intake.reconcile import Clock, Reconciliation, groups_of, observed, reconciled
 from loadsum.intake.resolution import resolution
 from loadsum.intake.timed import Timed
 from loadsum.intake.vee import Held
@@ -39,8 +40,8 @@ class Loaded:
         Outdoor temperature on the metered days.
     record : TemperatureRecord or None
         Longer record over which the year is mixed; None where none was given.
-    reconciliation : Reconciliation or None
-        Sum of the customers against a meter of the group; None where none was given.
+    reconciliation : tuple of Reconciliation
+        Sum of the customers against each meter of a group; empty where none was given or too little is metered.
     profiles : mapping of str to (D, I) float64
         Demand of one device by the name of its profile file. [kW]
     """
@@ -49,7 +50,7 @@ class Loaded:
     inputs: tuple[InputFile, ...]
     temperature: TemperatureRecord | None
     record: TemperatureRecord | None
-    reconciliation: Reconciliation | None = None
+    reconciliation: tuple[Reconciliation, ...] = ()
     profiles: Mapping[str, NDArray[np.float64]] = field(default_factory=dict)
 
 
@@ -117,7 +118,15 @@ def load_readings(study: Study, folder: Path) -> Loaded:
         limits=study.findings,
     )
     kw, doubts = judged(held, matrix.readings_behind)
-    comparison, compared = reconciled(matrix.customers, kw, matrix.start_utc, interval, head, interval_min)
+    comparison: tuple[Reconciliation, ...] = ()
+    compared: tuple[Finding, ...] = ()
+    if head is not None:
+        comparison, compared = reconciled(
+            observed(matrix.customers, matrix.start_utc, kw, matrix.estimated),
+            observed(head.customers, head.start_utc, head.kw, head.estimated),
+            groups_of(study, matrix.customers, head.customers),
+            _clock(study, day, interval),
+        )
     readings = Readings(
         customers=matrix.customers,
         start_utc=matrix.start_utc,
@@ -144,6 +153,21 @@ def load_readings(study: Study, folder: Path) -> Loaded:
 def inspect_findings(study: Study, folder: Path) -> Loaded:
     """What intake has to say about the files of a study; the same reading as that of the study itself."""
     return load_readings(study, folder)
+
+
+def _clock(study: Study, day: NDArray[np.int64], interval: NDArray[np.int64]) -> Clock:
+    """Season, day type and interval of the day of each interval."""
+    distinct, where = np.unique(day, return_inverse=True)
+    years = sorted({int(year) + 1970 for year in distinct.astype("datetime64[D]").astype("datetime64[Y]").astype(int)})
+    days = calendar(study.season, study.day_types, years)
+    kinds = len(days.day_types)
+    numbers = np.array([season * kinds + kind for season, kind in (days.place(d) for d in distinct.tolist())])
+    return Clock(
+        interval_min=study.study.demand_interval_min,
+        interval_of_day=interval,
+        day_class=numbers[where],
+        names=tuple((season, kind) for season in days.season_names for kind in days.day_types),
+    )
 
 
 def _matrix(parts: list[Timed], interval_min: int, phase_s: int) -> Matrix:

@@ -16,6 +16,7 @@ from loadsum.demand.normalfamily import NormalFamily
 from loadsum.evidence.holdout import HoldOut
 from loadsum.intake.findings import Finding
 from loadsum.intake.inputs import InputFile
+from loadsum.intake.reconcile import Reconciliation
 from loadsum.peak.diversity import Diversity
 from loadsum.peak.estimated import EstimatedReadings
 from loadsum.peak.peaks import Peaks
@@ -248,6 +249,7 @@ class StudyResults:
     quality: QualityCalendar
     transformers: tuple[TransformerResults, ...]
     months: tuple[CustomerMonths, ...] = ()
+    reconciliation: tuple[Reconciliation, ...] = ()
     pseudonymised: bool = False
 
 

@@ -5,10 +5,8 @@ import dataclasses
 import numpy as np
 import pytest
 
-from loadsum.intake.align import Matrix
 from loadsum.intake.findings import Finding
 from loadsum.intake.grouprules import RULES, judged
-from loadsum.intake.reconcile import reconciled
 from loadsum.intake.vee import Held
 from loadsum.study.tables import FindingLimits
 
@@ -143,35 +141,3 @@ def test_a_rule_that_the_user_excludes_by_leaves_its_readings_out_once():
 @pytest.mark.parametrize("rule", RULES)
 def test_every_rule_bears_readings_that_are_all_missing(rule):
     assert not [doubt for doubt in rule(held(np.full((6, HOURS), np.nan))) if doubt.slots.size]
-
-
-def head(kw: np.ndarray) -> Matrix:
-    return Matrix(
-        customers=("head",),
-        start_utc=np.arange(HOURS, dtype=np.int64) * 3600,
-        kw=kw[None, :],
-        kvar=None,
-        estimated=np.zeros((1, HOURS), bool),
-        readings_behind=np.ones((1, HOURS), np.int16),
-        findings=(),
-    )
-
-
-def test_reconciliation_gives_the_unaccounted_share_by_hour():
-    kw = sound()
-    lamp = np.where(np.arange(HOURS) % 24 < 6, 2.0, 0.0)
-    result, found = reconciled(
-        tuple("ABCDEF"), kw, np.arange(HOURS) * 3600, np.arange(HOURS) % 24, head(kw.sum(axis=0) + lamp), 60
-    )
-    np.testing.assert_allclose(result.unaccounted_kw, np.where(np.arange(24) < 6, 2.0, 0.0), atol=1e-9)
-    assert result.unaccounted_share == pytest.approx(lamp.sum() / (kw.sum() + lamp.sum()))
-    assert [f.rule for f in found] == ["reconciliation"]
-
-
-def test_a_customer_of_another_transformer_is_suspected_by_name():
-    kw = sound()
-    _, found = reconciled(
-        tuple("ABCDEF"), kw, np.arange(HOURS) * 3600, np.arange(HOURS) % 24, head(1.03 * kw[1:].sum(axis=0)), 60
-    )
-    assert [f.customer for f in found if f.rule == "suspected wrong link"] == ["A"]
-    assert found[0].severity == "caution"

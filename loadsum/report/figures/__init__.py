@@ -14,6 +14,7 @@ from loadsum.report.figures import (
     pit_histogram,
     quality_calendar,
     rare_levels,
+    reconciliation,
     scenarios,
 )
 from loadsum.report.figures.plate import DrawnFigure, png, svg
@@ -37,7 +38,7 @@ OF_ONE_OF_SEVERAL: Sequence[Callable[[Material, Unit], DrawnFigure | None]] = (
     exceedance_curve.figure,
 )
 OF_A_TEST: Sequence[Callable[[Material, Unit], DrawnFigure | None]] = (calibration.figure, pit_histogram.figure)
-OF_THE_STUDY: Sequence[Callable[[Material], DrawnFigure | None]] = (quality_calendar.figure,)
+OF_THE_STUDY: Sequence[Callable[[Material], DrawnFigure | None]] = (quality_calendar.figure, reconciliation.figure)
 
 
 def drawn(m: Material, units: Sequence[Unit]) -> dict[str, DrawnFigure]:

@@ -13,6 +13,7 @@ from loadsum.report.sections import (
     overview,
     peaks,
     ratings,
+    reconciliation,
     sign_off,
     thermal,
 )
@@ -38,6 +39,7 @@ OF_ONE_OF_SEVERAL: Sequence[Callable[[Material, Unit], Section | None]] = (
 )
 OF_THE_STUDY: Sequence[Callable[[Material], Section | None]] = (
     data.section,
+    reconciliation.section,
     foundations.method_section,
     foundations.assumptions_section,
     foundations.cautions_section,
