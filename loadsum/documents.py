@@ -13,6 +13,7 @@ from loadsum.progress import Progress, silent
 from loadsum.report import document, signature
 from loadsum.report.archive import STUDY_FILE
 from loadsum.report.audit import Audit, audit
+from loadsum.report.delivered import attachments
 from loadsum.report.outputs import write_outputs
 from loadsum.report.received import read_report, read_results
 from loadsum.report.results import encode
@@ -26,7 +27,7 @@ def redraw(results: Path, *, out: Path, templates: Path | None) -> str:
     """Draw a report from results.json without computing anything again; returns what to tell the user."""
     found = read_results(results)
     study = results.parent / "study.toml"
-    attached = pipeline.attachments(found, study.read_bytes() if study.exists() else None)
+    attached = attachments(found, study.read_bytes() if study.exists() else None)
     write_outputs(out.parent, {out.name: document.render(found, attachments=attached, overrides=templates)})
     return f"report: {out}"
 

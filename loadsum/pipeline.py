@@ -26,6 +26,7 @@ from loadsum.demand.served import (
     tested_group,
     with_more,
 )
+from loadsum.demand.settings import ModelSettings
 from loadsum.evidence.holdout import hold_out
 from loadsum.intake.customers import customer_findings
 from loadsum.intake.draft import draft_study
@@ -37,9 +38,9 @@ from loadsum.peak.estimated import estimated_readings
 from loadsum.peak.exceedance import ExceedanceTable, days_by_month, exceedance_hours
 from loadsum.preparation import grouped, prepared, tester
 from loadsum.progress import Progress
-from loadsum.report import document, revision
-from loadsum.report.archive import RESULTS_FILE, STUDY_FILE, Attachment
+from loadsum.report import revision
 from loadsum.report.csvtables import csv_table
+from loadsum.report.delivered import outputs
 from loadsum.report.energybymonth import energy_by_month
 from loadsum.report.hourmap import hour_map
 from loadsum.report.inspection import inspection
@@ -61,6 +62,7 @@ from loadsum.transformer.losses import losses
 from loadsum.transformer.ratings import ratings_of
 from loadsum.transformer.selection import evaluate
 from loadsum.transformer.sensitivity import sensitivity
+from loadsum.transformer.whatmoves import what_moves
 
 log = logging.getLogger(__name__)
 
@@ -134,43 +136,6 @@ def identifiers(asked: Study, results: dict[str, Any]) -> list[str]:
     """Every identifier of a customer that a study knows, listed or only metered."""
     metered = [row["customer"] for row in results["months"]]
     return list(dict.fromkeys([*metered, *(customer.id for customer in asked.customer)]))
-
-
-def tables_of(results: dict[str, Any]) -> dict[str, bytes]:
-    """Results and their tables as files, by name."""
-    hours = [{"transformer": unit["id"], **row} for unit in results["transformers"] for row in unit["hours"]]
-    people = [{"transformer": unit["id"], **row} for unit in results["transformers"] for row in unit["customers"]]
-    return {
-        RESULTS_FILE: to_json(results).encode(),
-        "hours.csv": csv_table(hours),
-        "findings.csv": csv_table(results["findings"]),
-        "customers.csv": csv_table(people),
-    }
-
-
-def attachments(results: dict[str, Any], study_file: bytes | None) -> list[Attachment]:
-    """What the report carries beside its pages."""
-    tables = tables_of(results)
-    attached = [
-        Attachment(name=RESULTS_FILE, content=tables[RESULTS_FILE], description="Results"),
-        Attachment(
-            name="hours.csv", content=tables["hours.csv"], description="Demand in every interval of every class"
-        ),
-        Attachment(name="findings.csv", content=tables["findings.csv"], description="Findings on the readings"),
-        Attachment(name="customers.csv", content=tables["customers.csv"], description="Customers with their demand"),
-    ]
-    if study_file is not None:
-        attached.insert(
-            0, Attachment(name=STUDY_FILE, content=study_file, description="Study file", relationship="Source")
-        )
-    return attached
-
-
-def outputs(results: dict[str, Any], study_file: bytes) -> dict[str, bytes]:
-    """Everything that a study leaves behind, by name relative to its folder."""
-    report = document.compose(results, attachments=attachments(results, study_file))
-    drawn = {f"figures/{name}": content for name, content in report.figure_files().items()}
-    return {"report.pdf": document.printed(report, results), STUDY_FILE: study_file, **tables_of(results), **drawn}
 
 
 def inspect(path: Path, *, out: Path | None, progress: Progress) -> str:
@@ -262,13 +227,13 @@ def one_transformer(
     tested = hold_out(group_blocks, fit=tester(asked, unit, loaded, group_of, judged), served=judged.served, note=note)
 
     def modelled(
-        changed: Group, changed_blocks: Sequence[DayBlock], resolution_kw: float, resamples: int = settings.resamples
+        changed: Group, changed_blocks: Sequence[DayBlock], resolution_kw: float, using: ModelSettings = settings
     ) -> GroupDemand:
         return group_demand(
             changed_blocks,
             interval_min=readings.interval_min,
             power_factor=unit.power_factor,
-            settings=replace(settings, resamples=resamples),
+            settings=using,
             group=changed,
             resolution_kw=resolution_kw,
             record_c=record_by_class(loaded.record, days),
@@ -279,10 +244,6 @@ def one_transformer(
         changed, changed_blocks = with_more(group, group_blocks, planned, factors)
         return modelled(changed, changed_blocks, 0.0 if factors else resolution)
 
-    demand = modelled(group, group_blocks, resolution)
-    if not demand.covered().any():
-        reason = "the readings leave no demand interval with at least two days"
-        return TransformerResults(id=unit.id, reason=reason, installed_kva=unit.installed_kva)
     ratings = ratings_of(unit)
     month_days = days_by_month(days, years)
 
@@ -296,7 +257,15 @@ def one_transformer(
 
     def with_estimated() -> dict[str, ExceedanceTable]:
         every = day_blocks(readings, days, years, loaded.temperature, estimated_too=True)
-        return hours_above(modelled(*grouped(group_of, unit, every, readings.interval_min), resolution, resamples=0))
+        given = grouped(group_of, unit, every, readings.interval_min)
+        return hours_above(modelled(*given, resolution, replace(settings, resamples=0)))
+
+    metered = group_of.usable[served.group.served]
+    taken_in = with_estimated() if readings.estimated[metered].any() else {}  # its model is gone before the next
+    demand = modelled(group, group_blocks, resolution)
+    if not demand.covered().any():
+        reason = "the readings leave no demand interval with at least two days"
+        return TransformerResults(id=unit.id, reason=reason, installed_kva=unit.installed_kva)
 
     above = hours_above(demand)
     together = day_and_year(
@@ -334,7 +303,7 @@ def one_transformer(
             record_c=record_by_class(loaded.record, days),
         ),
         settings,
-        selection.rating_kva or unit.installed_kva or max(ratings),
+        judged_kva := selection.rating_kva or unit.installed_kva or max(ratings),
     )
     scenarios, rooms = load_to_come(
         asked,
@@ -358,9 +327,10 @@ def one_transformer(
         curve=curve(demand, curve_levels(demand, max(ratings) * power_factor)),
         normal_family=normal_family(demand, {rating: rating * shown for rating in ratings}),
         exceedance=tuple(row for of, table in above.items() for row in exceedance_rows(demand, table, ratings, of)),
-        estimated=estimated_readings(readings, group_of.usable[served.group.served], ratings, above, with_estimated),
+        estimated=estimated_readings(readings, metered, ratings, above, lambda: taken_in),
         hour_map=hour_map(demand.blocks, ratings, list(above.values())[-1].levels),
         selection=selection,
+        what_moves=what_moves(demand, judged_kva, asked.allowed_loading, parts, power_factor=power_factor),
         peaks=together.peaks({f"{rating:g} kVA": rating * shown for rating in ratings}, rng),
         diversity=diversity(
             [scaled(block, group_of.usable[served.group.served], group_of.allowance) for block in blocks],

@@ -142,6 +142,6 @@ def affordable_step(readings: Sequence[NDArray[np.float64]], spread_kw: float, r
     reach = sum(float(np.ptp(row)) for row in readings)
     coarsest = max(reach / GROUP_POINTS, 1e-5)
     if resolution_kw > 0.0:
-        fine = max(0.001 * spread_kw, coarsest)
+        fine = max(0.0015 * spread_kw, coarsest)
         return resolution_kw / max(int(np.ceil(resolution_kw / fine)), 1) if fine < resolution_kw else resolution_kw
     return max(0.003 * spread_kw / len(readings), coarsest)

@@ -30,6 +30,7 @@ from loadsum.transformer.headroom import Headroom
 from loadsum.transformer.life import Life
 from loadsum.transformer.losses import Losses
 from loadsum.transformer.selection import Selection
+from loadsum.transformer.whatmoves import WhatMoves
 
 SCHEMA_VERSION = 1
 
@@ -217,6 +218,7 @@ class TransformerResults:
     estimated: EstimatedReadings | None = None
     hour_map: HourMap | None = None
     selection: Selection | None = None
+    what_moves: WhatMoves | None = None
     peaks: Peaks | None = None
     diversity: Diversity | None = None
     scenarios: tuple[ScenarioResult, ...] = ()

@@ -16,12 +16,14 @@ from loadsum.report.figures import (
     rare_levels,
     reconciliation,
     scenarios,
+    what_moves,
 )
 from loadsum.report.figures.plate import DrawnFigure, png, svg
 from loadsum.report.material import Material, Unit
 
 OF_A_TRANSFORMER: Sequence[Callable[[Material, Unit], DrawnFigure | None]] = (
     criterion_margins.figure,
+    what_moves.figure,
     exceedance_map.figure,
     demand_by_hour.figure,
     exceedance_curve.figure,

@@ -29,7 +29,7 @@ def section(m: Material, unit: Unit) -> Section | None:
             "criteria": criteria(m, unit),
             "ratings": [m.kva(rating) for rating in _ratings(unit)],
         },
-        figures=(unit.figure("criterion-margins"),),
+        figures=(unit.figure("criterion-margins"), unit.figure("what-moves")),
     )
 
 
