@@ -25,6 +25,17 @@ def differences(part: Timed, digits: int, findings: list[Finding]) -> Timed:
     """
     if part.start_s.size == 0:
         return part
+    if part.kvar is not None:
+        findings.extend(
+            left_out(
+                part,
+                np.isfinite(part.kvar),
+                "reactive register",
+                "reading(s) of reactive demand beside a register of energy are not differenced",
+                "they are not used: apparent power goes by the stated power factor",
+                excluded=False,
+            )
+        )
     order = np.lexsort((part.line, part.start_s, part.customer))
     part = Timed(
         name=part.name,

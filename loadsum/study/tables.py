@@ -68,6 +68,9 @@ class MeterFiles:
     encoding: str = key("Text encoding; UTF-8 unless a byte-order mark says otherwise.", default="")
     customer_column: str = key("Header of the column with the customer's identifier.", default="")
     time_column: str = key("Header of the column with the time stamp.", default="")
+    time_of_day_column: str = key(
+        "Column of the time of day, where date and time stand in columns of their own.", default="", example='"Time"'
+    )
     value_column: str = key("Header of the column with the reading.", default="")
     kvar_column: str = key("Header of the column with reactive energy or power.", default="")
     export_column: str = key(

@@ -36,8 +36,17 @@ def zipped(**members: bytes) -> bytes:
         ("a.csv", b"\xef\xbb\xbf" + LONG.replace("B", "Bj\xf8rn").encode("latin-1"), "cannot be read as utf-8-sig"),
         ("a.csv", b"customer,time,kwh\n", "holds no table of readings"),
         ("a.csv", (",".join(f"c{n}" for n in range(1_000_000)) + "\n1\n").encode(), "more than 20000 columns"),
+        (
+            "a.csv",
+            b"Meter export\nmade today\n" + LONG.encode(),
+            "a.csv:3: has 3 fields where the lines before have 1; if the file begins with title lines, remove them",
+        ),
         ("a.csv", b"time,A,A\n2031-01-01,1,2\n", "a.csv:1: two columns are called 'A'"),
-        ("a.csv", LONG.replace("05:00,5", "05:00,5,7").encode("utf-16"), "Expected 3 fields in line 7, saw 4"),
+        (
+            "a.csv",
+            LONG.replace("05:00,5", "05:00,5,7").encode("utf-16"),
+            "a.csv:7: has 4 fields where the lines before have 3; if the file begins with title lines",
+        ),
         ("a.csv", LONG.replace("2031", "0001").encode(), "a.csv:2: '0001-01-01T00:00' is no stamp of 1970 to 2100"),
         ("a.csv", LONG.replace("2031", "9999").encode(), "is no stamp of 1970 to 2100"),
         ("a.csv.gz", gzip.compress(LONG.encode())[:-20], "cannot be unpacked"),

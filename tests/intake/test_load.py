@@ -184,6 +184,33 @@ def test_registers_are_differenced_with_rollover_and_a_closing_read(tmp_path):
     assert accounted(loaded)
 
 
+def test_a_reactive_column_beside_a_register_is_said_not_to_be_used(tmp_path):
+    rows = "".join(f"A,2031-01-01T{h:02d}:00,{h},{h}\n" for h in range(6))
+    loaded = load(tmp_path, "customer,time,kwh,kvarh\n" + rows, quantity="register", kvar_column="kvarh")
+    (finding,) = (one for one in loaded.readings.findings if one.rule == "reactive register")
+    assert (finding.count, finding.excluded) == (6, 0)
+    assert loaded.readings.kvar is None or np.isnan(loaded.readings.kvar).all()
+
+
+def test_empty_columns_at_the_end_are_no_customers(tmp_path):
+    wide = "time,007,B,,\n" + "".join(f"2031-01-01T{h:02d}:00,{h},{h + 1},,\n" for h in range(24))
+    loaded = load(tmp_path, wide)
+    assert loaded.readings.customers == ("007", "B")
+    assert accounted(loaded)
+    one = "time,007,B,\n" + "".join(f"2031-01-01T{h:02d}:00,{h},{h + 1},\n" for h in range(24))
+    (tmp_path / "again").mkdir()
+    np.testing.assert_array_equal(load(tmp_path / "again", one).readings.kw, loaded.readings.kw)
+
+
+def test_date_and_time_of_day_in_columns_of_their_own_are_one_stamp(tmp_path):
+    rows = "".join(f"{d:02d}/02/2031,{h:02d}:00,{h}\n" for d in (13, 14) for h in range(24))
+    rows = rows.replace("\n", ",A\n")
+    keys = {"time_column": "Date", "time_of_day_column": "Time", "customer_column": "Meter", "value_column": "kWh"}
+    loaded = load(tmp_path, "Date,Time,kWh,Meter\n" + rows, **keys)
+    np.testing.assert_array_equal(loaded.readings.kw[0], np.tile(np.arange(24.0), 2))
+    assert any("Date and Time together" in choice for choice in loaded.inputs[0].choices)
+
+
 def test_exported_energy_counts_as_negative_and_kvar_is_kept(tmp_path):
     lines = LONG.splitlines()
     text = "\n".join([lines[0] + ",out,kvarh", *(line + ",2,0.5" for line in lines[1:])]) + "\n"

@@ -54,6 +54,7 @@ def read_table(frame: pd.DataFrame, name: str, source: MeterFiles, said: list[st
     delimiter : str
         Field separator, by which a decimal comma is told apart.
     """
+    frame = _with_whole_stamps(frame, name, source, said)
     columns = [str(column) for column in frame.columns]
     layout = _layout(columns, source, said)
     first_line = 1 if source.header == "no" else 2
@@ -71,6 +72,19 @@ def read_table(frame: pd.DataFrame, name: str, source: MeterFiles, said: list[st
     return _raw(picked, name, decimal, source, layout, said)
 
 
+def _with_whole_stamps(frame: pd.DataFrame, name: str, source: MeterFiles, said: list[str]) -> pd.DataFrame:
+    """A table whose dates carry the time of day that stood in a column of its own."""
+    clock = source.time_of_day_column
+    if not clock:
+        return frame
+    columns = [str(column) for column in frame.columns]
+    column_named(columns, clock, (), "time_of_day_column", name, said)
+    date = _time_column([column for column in columns if column != clock], name, source, said)
+    whole = frame[date].str.strip() + " " + frame[clock].str.strip()
+    said.append(f"stamps are {date} and {clock} together")
+    return frame.assign(**{date: whole.str.strip()}).drop(columns=clock)
+
+
 def customer_of_file(name: str, source: MeterFiles) -> str:
     """Customer of a file that holds one customer: stated, or the file's own name."""
     return PurePath(name).name.split(".")[0] if source.customer == "file name" else source.customer
@@ -79,7 +93,14 @@ def customer_of_file(name: str, source: MeterFiles) -> str:
 def _quickly(content: bytes, name: str, source: MeterFiles) -> RawReadings | None:
     """Readings of a plain file by the fast reader; None where the file is not plain, or the reader not installed."""
     head = content[:HEAD_BYTES]
-    if source.encoding or source.header == "no" or source.decimal == "," or source.first_stamp or b"\n" not in head:
+    if (
+        source.time_of_day_column
+        or source.encoding
+        or source.header == "no"
+        or source.decimal == ","
+        or source.first_stamp
+        or b"\n" not in head
+    ):
         return None
     try:
         text = head[: head.rindex(b"\n")].decode("ascii")
@@ -87,7 +108,7 @@ def _quickly(content: bytes, name: str, source: MeterFiles) -> RawReadings | Non
         return None
     delimiter = source.delimiter or guessed_delimiter(text)
     columns = [column.strip() for column in next(csv.reader([text.split("\n", 1)[0]], delimiter=delimiter), [])]
-    if len(set(columns)) != len(columns) or not 2 <= len(columns) <= MOST_COLUMNS:
+    if "" in columns or len(set(columns)) != len(columns) or not 2 <= len(columns) <= MOST_COLUMNS:
         return None
     said = [_delimiter_said(delimiter, source)]
     layout = _layout(columns, source, said)
@@ -153,14 +174,14 @@ def table_of(text: str, name: str, delimiter: str, source: MeterFiles) -> pd.Dat
             quoting=csv.QUOTE_MINIMAL,
         )
     except (pd.errors.ParserError, pd.errors.EmptyDataError, csv.Error, ValueError) as error:
-        raise InputError(name, [Fault(name, f"is not delimited text: {str(error).strip()}")]) from error
+        raise InputError(name, [_unparsed(name, str(error).strip())]) from error
     if source.header == "no":
         frame.columns = [f"column {n + 1}" for n in range(frame.shape[1])]
     else:
         names = [str(column).strip() for column in frame.iloc[0].fillna("")]
         frame = frame.iloc[1:].reset_index(drop=True)
         frame.columns = names
-    frame = frame.fillna("")  # fields that a short row lacks
+    frame = _without_empty_end(frame.fillna(""))  # fields that a short row lacks are empty
     if frame.empty or (frame.shape[1] < 2 and not source.first_stamp):
         raise InputError(
             name, [Fault(name, "holds no table of readings: need a header, a column of stamps and one of values")]
@@ -169,6 +190,26 @@ def table_of(text: str, name: str, delimiter: str, source: MeterFiles) -> pd.Dat
         twice = frame.columns[frame.columns.duplicated()][0]
         raise InputError(name, [Fault(f"{name}:1", f"two columns are called {twice!r}")])
     return frame
+
+
+def _unparsed(name: str, error: str) -> Fault:
+    """Why a text is no table, with its line where that is told."""
+    told = re.search(r"Expected (\d+) fields in line (\d+), saw (\d+)", error)
+    if told is None:
+        return Fault(name, f"is not delimited text: {error}")
+    return Fault(
+        f"{name}:{told[2]}",
+        f"has {told[3]} fields where the lines before have {told[1]}; if the file begins with title lines, remove "
+        "them, and check the delimiter",
+    )
+
+
+def _without_empty_end(frame: pd.DataFrame) -> pd.DataFrame:
+    """A table without the columns at its end that have neither a name nor an entry."""
+    count = frame.shape[1]
+    while count > 1 and frame.columns[count - 1] == "" and not frame.iloc[:, count - 1].str.strip().any():
+        count -= 1
+    return frame.iloc[:, :count]
 
 
 def _long_columns(

@@ -4,6 +4,7 @@ from collections.abc import Mapping
 from typing import Any
 
 from loadsum.report.material import Material, Section, Unit
+from loadsum.report.notation import NO_BREAK
 
 
 def map_section(m: Material, unit: Unit) -> Section | None:
@@ -43,7 +44,7 @@ def diagnostics_section(m: Material, unit: Unit) -> Section | None:
                     "correlation": m.n.fixed(row.get("correlation"), 2),
                     "correlation_interval": m.between(
                         row.get("correlation_low"), row.get("correlation_high"), lambda r: m.n.fixed(r, 2)
-                    ),
+                    ).replace(" ", NO_BREAK),
                     "variance": m.n.fixed(row.get("variance_ratio"), 2),
                     "temperature": m.n.percent(row.get("temperature_explains"), 2)
                     if row.get("temperature_explains")
