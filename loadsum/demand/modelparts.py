@@ -9,7 +9,7 @@ from loadsum.demand.hourly import GroupDemand
 from loadsum.demand.settings import ModelSettings
 from loadsum.intake.hourclass import DayBlock
 
-MOST_HOURS = 48  # demand intervals of all classes of days that the comparison is made on
+MOST_HOURS = 32  # demand intervals of all classes of days that the comparison is made on
 COARSE_KW = 0.02  # lattice of the comparison
 NONE_H = 1e-4  # hours a year below which a comparison says nothing
 

@@ -13,7 +13,7 @@ from loadsum.peak.copula import DayCopula
 from loadsum.peak.margins import Margins
 from loadsum.peak.weather import YearsOfDays
 
-GRID = 17  # levels of a curve
+GRID = 13  # levels of a curve
 
 Period = Literal["day", "year"]
 

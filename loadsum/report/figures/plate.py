@@ -178,5 +178,7 @@ def png(figure: Figure, dots_per_inch: int = 300) -> bytes:
     """The drawing as PNG at print size."""
     with mpl.rc_context(SETTINGS):
         target = io.BytesIO()
-        figure.savefig(target, format="png", dpi=dots_per_inch, metadata={"Software": None})
+        figure.savefig(
+            target, format="png", dpi=dots_per_inch, metadata={"Software": None}, pil_kwargs={"compress_level": 2}
+        )
     return target.getvalue()
