@@ -13,12 +13,14 @@ LOWEST = 0.01
 
 
 def figure(m: Material, unit: Unit) -> DrawnFigure | None:
-    """Expected hours when each thing is moved, beside those of the study."""
+    """Expected hours when each thing is moved, beside those of the study; none where hardly any come of it."""
     found = unit.part("what_moves")
     if not found or not found.get("moves"):
         return None
     moves, base = found["moves"], found["base_h"]
     hours = [base, *(move[end] for move in moves for end in ("low_h", "high_h"))]
+    if max(hours) < 2.0 * LOWEST:
+        return None
     lowest = max(min(hours), LOWEST)
     with plate(20.0 + 6.5 * len(moves)) as fig:
         ax = axes_mm(fig, 58.0, 11.0, 8.0, 6.0)

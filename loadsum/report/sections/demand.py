@@ -6,6 +6,8 @@ from typing import Any
 from loadsum.report.material import Material, Section, Unit
 from loadsum.report.notation import NO_BREAK
 
+MANY_TIMES = 1e6
+
 
 def map_section(m: Material, unit: Unit) -> Section | None:
     """Hour by season: exceedance map and quantiles of demand."""
@@ -105,8 +107,15 @@ def _normal_row(m: Material, row: Mapping[str, Any]) -> dict[str, str]:
         "independent": m.n.percent(row["normal_independent"]),
         "cumulants": m.t("curve.below_zero") if cumulants is not None and cumulants < 0.0 else m.n.percent(cumulants),
         "saddlepoint": m.n.percent(row.get("saddlepoint")),
-        "times": m.n.none if times is None else m.t("curve.times", factor=m.n.significant(times, 2)),
+        "times": _times(m, times),
     }
+
+
+def _times(m: Material, times: float | None) -> str:
+    """How many times too small, as far as a figure says more than a word."""
+    if times is None or times > MANY_TIMES:
+        return m.t("curve.times_many")
+    return m.t("curve.times", factor=m.n.significant(times, 2))
 
 
 def _where(m: Material, row: Mapping[str, Any]) -> str:
